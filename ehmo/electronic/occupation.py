@@ -1,0 +1,69 @@
+"""Filling of orbitals: aufbau, Pauli, and equal shares within degenerate sets."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from ehmo.conventions import DEGENERACY_TOLERANCE_EV
+from ehmo.errors import ElectronCountError
+
+FloatArray = NDArray[np.float64]
+
+
+def fill(energies_eV: FloatArray, n_electrons: int, unpaired: int) -> FloatArray:
+    """Occupation of every orbital by alpha and by beta electrons.
+
+    Both spins use the same orbitals. Where a spin runs out of electrons within a degenerate set, the set shares
+    them evenly, so that rounding never breaks the symmetry.
+
+    Parameters
+    ----------
+    energies_eV : (n_mo,) ndarray
+        Ascending orbital energies [eV].
+    n_electrons, unpaired : int
+        All electrons, and alpha minus beta.
+
+    Returns
+    -------
+    occupations : (2, n_mo) ndarray
+        Alpha, beta; each between 0 and 1.
+
+    Raises
+    ------
+    ElectronCountError
+        If the electrons do not fit.
+    """
+    if (n_electrons - unpaired) % 2 or not 0 <= unpaired <= n_electrons:
+        raise ElectronCountError(f"{n_electrons} valence electrons cannot have {unpaired} unpaired")
+    n_alpha = (n_electrons + unpaired) // 2
+    if n_alpha > len(energies_eV):
+        raise ElectronCountError(
+            f"{n_alpha} electrons of one spin do not fit into {len(energies_eV)} orbitals",
+            mend="raise the charge or lower the unpaired electrons",
+        )
+    occupations = np.zeros((2, len(energies_eV)))
+    _fill_spin(occupations[0], energies_eV, n_alpha)
+    if unpaired:
+        _fill_spin(occupations[1], energies_eV, n_alpha - unpaired)
+    else:
+        occupations[1] = occupations[0]
+    return occupations
+
+
+def _fill_spin(occupation: FloatArray, energies: FloatArray, n_electrons: int) -> None:
+    if n_electrons == 0:
+        return
+    first, stop = frontier_set(energies, n_electrons - 1, DEGENERACY_TOLERANCE_EV)
+    occupation[:first] = 1.0
+    occupation[first:stop] = (n_electrons - first) / (stop - first)
+
+
+def frontier_set(energies: FloatArray, index: int, tolerance: float) -> tuple[int, int]:
+    """Range [first, stop) of levels joined to one level by gaps below the tolerance."""
+    first, stop = index, index + 1
+    while first > 0 and energies[first] - energies[first - 1] < tolerance:
+        first -= 1
+    while stop < len(energies) and energies[stop] - energies[stop - 1] < tolerance:
+        stop += 1
+    return first, stop

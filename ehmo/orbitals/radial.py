@@ -1,0 +1,84 @@
+"""Contracted Slater-type radial functions and their one-centre integrals."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from math import factorial, sqrt
+
+from basis_params import Shell
+
+Primitive = tuple[int, float, float]
+"""Principal quantum number n, exponent zeta [bohr^-1], weight of r^(n-1) exp(-zeta r)."""
+
+
+@dataclass(frozen=True, slots=True)
+class RadialFunction:
+    """Normalised radial function R(r) = sum of weight r^(n-1) exp(-zeta r), with its angular momentum.
+
+    Attributes
+    ----------
+    l : int
+        Angular momentum quantum number.
+    primitives : tuple of (int, float, float)
+        n, zeta and weight of each term; the weight holds the normalisation.
+    """
+
+    l: int
+    primitives: tuple[Primitive, ...]
+
+    def overlap(self, other: RadialFunction) -> float:
+        """One-centre radial integral of two functions, int R1 R2 r^2 dr."""
+        return sum(
+            weight1 * weight2 * factorial(n1 + n2) / (zeta1 + zeta2) ** (n1 + n2 + 1)
+            for n1, zeta1, weight1 in self.primitives
+            for n2, zeta2, weight2 in other.primitives
+        )
+
+
+def radial_function(shell: Shell) -> RadialFunction:
+    """Radial function of a tabulated shell, normalised exactly.
+
+    Printed coefficients have four digits; the small rest that the norm rule lets pass is scaled away here.
+    """
+    return _normalised(
+        shell.l,
+        tuple(
+            (shell.n, zeta, coefficient * (2 * zeta) ** (shell.n + 0.5) / sqrt(factorial(2 * shell.n)))
+            for zeta, coefficient in zip(shell.zetas, shell.coefficients, strict=True)
+        ),
+    )
+
+
+def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction, ...]:
+    """Radial functions of one atom, outer shells made orthogonal to inner ones of the same l.
+
+    Slater functions such as 6p and 7p overlap on their own atom, while their tabulated energies are those of
+    orthogonal atomic orbitals. Schmidt orthogonalisation, inner shell first, restores that: on-site blocks of
+    S and H are diagonal.
+
+    Parameters
+    ----------
+    shells : sequence of Shell
+        Shells of one element.
+
+    Returns
+    -------
+    functions : tuple of RadialFunction
+        In the order of `shells`.
+    """
+    functions: dict[int, RadialFunction] = {}
+    for index in sorted(range(len(shells)), key=lambda i: (shells[i].l, shells[i].n)):
+        function = radial_function(shells[index])
+        for inner in [f for f in functions.values() if f.l == function.l]:
+            projection = function.overlap(inner)
+            removed = tuple((n, zeta, -projection * weight) for n, zeta, weight in inner.primitives)
+            function = RadialFunction(function.l, function.primitives + removed)
+        functions[index] = _normalised(function.l, function.primitives)
+    return tuple(functions[index] for index in range(len(shells)))
+
+
+def _normalised(l: int, primitives: tuple[Primitive, ...]) -> RadialFunction:
+    raw = RadialFunction(l, primitives)
+    scale = 1 / sqrt(raw.overlap(raw))
+    return RadialFunction(l, tuple((n, zeta, weight * scale) for n, zeta, weight in primitives))

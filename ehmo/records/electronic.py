@@ -1,0 +1,60 @@
+"""Result of the orbital calculation."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from ehmo.records.arrays import FloatArray, frozen_floats
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class ElectronicState:
+    """Orbitals, their filling and the charges they give.
+
+    Attributes
+    ----------
+    energies_eV : (n_mo,) ndarray
+        Orbital energies, ascending [eV].
+    coefficients : (n_ao, n_mo) ndarray
+        Column k is orbital k; C^T S C = 1.
+    occupations : (2, n_mo) ndarray
+        Alpha and beta occupation of each orbital.
+    charges : (n_atoms,) ndarray
+        Mulliken charges, positive = electron poor [e].
+    energy_eV : float
+        Tr(P H0) plus the charge term; no core repulsion [eV].
+    charge_model : str
+        "fixed" or "self-consistent".
+    iterations : int
+        Diagonalisations.
+    charge_residual : float
+        Largest change of a charge in the last iteration, 0 for fixed charges [e].
+    """
+
+    energies_eV: FloatArray
+    coefficients: FloatArray
+    occupations: FloatArray
+    charges: FloatArray
+    energy_eV: float
+    charge_model: str
+    iterations: int
+    charge_residual: float
+
+    def __post_init__(self) -> None:
+        n_mo = len(self.energies_eV)
+        put = object.__setattr__
+        put(self, "energies_eV", frozen_floats(self.energies_eV, (n_mo,), "energies_eV"))
+        put(self, "coefficients", frozen_floats(self.coefficients, (n_mo, n_mo), "coefficients"))
+        put(self, "occupations", frozen_floats(self.occupations, (2, n_mo), "occupations"))
+        put(self, "charges", frozen_floats(self.charges, (None,), "charges"))
+
+    @property
+    def homo(self) -> int:
+        """Index of the highest orbital that holds electrons."""
+        return int((self.occupations[0] > 0).nonzero()[0][-1])
+
+    @property
+    def lumo(self) -> int | None:
+        """Index of the lowest empty orbital; None if every orbital is filled."""
+        empty = (self.occupations[0] == 0).nonzero()[0]
+        return int(empty[0]) if len(empty) else None
