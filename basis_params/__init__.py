@@ -1,5 +1,6 @@
 """Parameter sets and atomic data of ehmo: reviewable tables, every row with its source."""
 
+from basis_params.atomic_orbitals import AtomicOrbitalData, atomic_orbital
 from basis_params.atoms import AtomData, atom, atom_symbols, ionisation_energy
 from basis_params.catalogue import available_sets, load, load_set, read_table
 from basis_params.faults import ParameterFileError
@@ -15,6 +16,7 @@ from basis_params.writer import format_table
 
 __all__ = [
     "AtomData",
+    "AtomicOrbitalData",
     "ElementParameters",
     "MissingElementError",
     "ModelSettings",
@@ -24,6 +26,7 @@ __all__ = [
     "Shell",
     "atom",
     "atom_symbols",
+    "atomic_orbital",
     "available_sets",
     "format_table",
     "ionisation_energy",

@@ -212,7 +212,9 @@ def _contraction(
     symbol: str, n: int, row: Row, faults: FaultList
 ) -> tuple[tuple[float, ...], tuple[float, ...]]:
     """Exponents and coefficients of one row, held against the norm rule."""
-    before, zetas, coefficients = len(faults.faults), [], []
+    before = len(faults.faults)
+    zetas: list[float] = []
+    coefficients: list[float] = []
     for i in "123":
         zeta, c = row.cells.get(f"zeta{i}", ""), row.cells.get(f"c{i}", "")
         if not zeta and not c:

@@ -1,0 +1,47 @@
+"""Bonding calculator for metal-oxo compounds.
+
+``ehmo.read`` takes a file to a fragment, ``ehmo.bond_report`` takes a fragment to a bond report; both are loaded
+on first use, so that ``import ehmo`` costs nothing.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+if TYPE_CHECKING:
+    from ehmo.calculate import bond_report
+    from ehmo.errors import EhmoError
+    from ehmo.records.fragment import Fragment
+    from ehmo.records.options import Options
+    from ehmo.records.report import BondReport
+    from ehmo.structure import read, read_frames
+
+__version__ = "0.1.0"
+
+_HOMES = {
+    "BondReport": "ehmo.records.report",
+    "EhmoError": "ehmo.errors",
+    "Fragment": "ehmo.records.fragment",
+    "Options": "ehmo.records.options",
+    "bond_report": "ehmo.calculate",
+    "read": "ehmo.structure",
+    "read_frames": "ehmo.structure",
+}
+
+__all__ = [
+    "BondReport",
+    "EhmoError",
+    "Fragment",
+    "Options",
+    "__version__",
+    "bond_report",
+    "read",
+    "read_frames",
+]
+
+
+def __getattr__(name: str) -> Any:
+    if name in _HOMES:
+        return getattr(import_module(_HOMES[name]), name)
+    raise AttributeError(f"module 'ehmo' has no attribute {name!r}")

@@ -3,6 +3,17 @@
 from __future__ import annotations
 
 
+def visible(text: str) -> str:
+    r"""Text on one line with control characters shown, so that names from files cannot steer a terminal.
+
+    Examples
+    --------
+    >>> visible("red \x1b[31m")
+    'red \\x1b[31m'
+    """
+    return "".join(char if char.isprintable() else char.encode("unicode_escape").decode("ascii") for char in text)
+
+
 class EhmoError(Exception):
     """Base of every error that ehmo raises on purpose.
 
@@ -24,7 +35,7 @@ class EhmoError(Exception):
 
     def __str__(self) -> str:
         text = f"{self.place}: {self.fault}" if self.place else self.fault
-        return f"{text}; {self.mend}" if self.mend else text
+        return visible(f"{text}; {self.mend}" if self.mend else text)
 
 
 class InputError(EhmoError):

@@ -6,7 +6,7 @@ rounding; nothing is tabulated by hand.
 
 from __future__ import annotations
 
-from functools import lru_cache
+from functools import cache, lru_cache
 from math import factorial, pi, sqrt
 
 import numpy as np
@@ -78,16 +78,14 @@ def legendre_derivative(l: int, order: int) -> FloatArray:
     coefficients = np.zeros(l + 1)
     for k in range(l // 2 + 1):
         coefficients[l - 2 * k] = (
-            (-1) ** k
-            * factorial(2 * l - 2 * k)
-            / (2**l * factorial(k) * factorial(l - k) * factorial(l - 2 * k))
+            (-1) ** k * factorial(2 * l - 2 * k) / (2**l * factorial(k) * factorial(l - k) * factorial(l - 2 * k))
         )
     for _ in range(order):
         coefficients = coefficients[1:] * np.arange(1, len(coefficients))
     return coefficients
 
 
-@lru_cache(maxsize=None)
+@cache
 def product_integrals(l_first: int, l_second: int) -> FloatArray:
     """Integrals of three real harmonics over the sphere (real Gaunt coefficients).
 
@@ -176,7 +174,7 @@ def harmonic_rotations(rotations: FloatArray, l: int) -> FloatArray:
     return inverse @ values.reshape(len(rotations), len(points), 2 * l + 1)
 
 
-@lru_cache(maxsize=None)
+@cache
 def _sample_directions(l: int) -> tuple[FloatArray, FloatArray]:
     """Directions that determine degree l, and the pseudo-inverse of the harmonics on them."""
     cosines, _ = np.polynomial.legendre.leggauss(l + 2)
@@ -190,4 +188,5 @@ def _sample_directions(l: int) -> tuple[FloatArray, FloatArray]:
         ],
         axis=1,
     )
-    return points, np.linalg.pinv(real_harmonics(points, l)[:, l * l :])
+    inverse = np.asarray(np.linalg.pinv(real_harmonics(points, l)[:, l * l :]), dtype=np.float64)
+    return points, inverse

@@ -1,10 +1,10 @@
 """Atoms in the average of a configuration: scalar-relativistic restricted Hartree-Fock over ANO-RCC.
 
-Every open shell holds q electrons spread evenly over its 2l+1 orbitals. An electron of that shell meets the q - 1
-others with the mean interaction of two electrons of the shell, which in terms of the shell's spherical density is
-(q - 1) (4l+2)/(4l+1) (J - K/2) for one electron instead of the q (J - K/2) of a plain fractional occupation
-(Slater, Quantum Theory of Atomic Structure, 1960, average energy of a configuration; memory). Orbital energies are
-therefore minus the frozen-orbital ionisation energies of the average, without self-interaction.
+Every open shell holds q electrons spread evenly over its 2l+1 orbitals. An electron of that shell meets the
+q - 1 others with the mean interaction of two electrons of the shell: with J and K of the spherical density of
+one electron that is (q - 1) (4l+2)/(4l+1) (J - K/2), where a plain fractional occupation has q (J - K/2)
+(Slater, Quantum Theory of Atomic Structure, 1960, average energy of a configuration; memory). So the orbital
+energies are minus the frozen-orbital ionisation energies of the average, without self-interaction.
 """
 
 from __future__ import annotations
@@ -22,7 +22,6 @@ Array = NDArray[np.float64]
 Configuration = Mapping[tuple[int, int], float]
 
 HARTREE_EV = nist.HARTREE2EV
-MAX_L = 3
 MAX_CYCLES = 200
 GRADIENT_TOLERANCE = 1e-7
 DIIS_VECTORS = 8
@@ -69,9 +68,9 @@ def radial_grid(points: int = 4000, r_min: float = 1e-6, r_max: float = 80.0) ->
     return r, weights
 
 
-def build_atom(symbol: str) -> gto.Mole:
-    """Return the atom with the s, p, d and f functions of the full ANO-RCC basis."""
-    shells = [shell for shell in gto.basis.load("ano", symbol) if shell[0] <= MAX_L]
+def build_atom(symbol: str, max_l: int) -> gto.Mole:
+    """Return the atom with the functions of the full ANO-RCC basis up to `max_l`."""
+    shells = [shell for shell in gto.basis.load("ano", symbol) if shell[0] <= max_l]
     return gto.M(atom=f"{symbol} 0 0 0", basis={symbol: shells}, spin=None, verbose=0, max_memory=3000)
 
 
@@ -81,14 +80,18 @@ class AverageAtom:
     Parameters
     ----------
     symbol : str
+    max_l : int
+        Highest angular quantum number that any configuration fills; functions above it would stay empty.
     """
 
-    def __init__(self, symbol: str) -> None:
-        self.mol = build_atom(symbol)
+    def __init__(self, symbol: str, max_l: int) -> None:
+        self.mol = build_atom(symbol, max_l)
         self.core = scf.RHF(self.mol).sfx2c1e().get_hcore()
         self.overlap = self.mol.intor("int1e_ovlp")
         self.eri = self.mol.intor("int2e", aosym="s8")
         self.index = self._functions_by_l()
+        coulomb, exchange = scf.hf.dot_eri_dm(self.eri, scf.hf.init_guess_by_atom(self.mol), hermi=1)
+        self.guess = self.core + coulomb - 0.5 * exchange
 
     def _functions_by_l(self) -> dict[int, NDArray[np.int64]]:
         """Return per l the (n_radial, 2l+1) positions of its functions."""
@@ -104,10 +107,10 @@ class AverageAtom:
     def _radial_block(self, matrix: Array, l: int) -> Array:
         """Return the block of l of a spherical operator, averaged over m."""
         rows = self.index[l].T
-        return np.mean([matrix[np.ix_(row, row)] for row in rows], axis=0)
+        return np.asarray(np.mean([matrix[np.ix_(row, row)] for row in rows], axis=0))
 
     def _density(self, l: int, vector: Array, electrons: float) -> Array:
-        density = np.zeros_like(self.core)
+        density = np.zeros((self.mol.nao, self.mol.nao))
         for row in self.index[l].T:
             density[np.ix_(row, row)] = np.outer(vector, vector) * electrons / (2 * l + 1)
         return density
@@ -115,8 +118,8 @@ class AverageAtom:
     def _fock(self, configuration: Configuration, orbitals: Mapping[int, Array]) -> dict[int, Array]:
         """Return one Fock block per l whose eigenvectors are the stationary orbitals.
 
-        The part that only an open shell a feels, delta, enters its own block and, weighted so that the condition
-        <c|F|a> = 0 is that of the energy, the coupling to the closed shells c of the same l.
+        The part that only an open shell a feels, delta, enters its own block and, weighted so that the
+        condition <c|F|a> = 0 is that of the energy, the coupling to the closed shells c of the same l.
         """
         shells = {
             (n, l): self._density(l, orbitals[l][:, n - l - 1], q) for (n, l), q in configuration.items() if q
@@ -135,7 +138,7 @@ class AverageAtom:
     def _with_open_shell(
         self, fock: Array, delta: Array, l: int, vectors: Array, position: int, filling: float
     ) -> Array:
-        """Add the operator of one open shell (`filling` electrons per orbital) in the basis of the orbitals."""
+        """Add the operator of one open shell that holds `filling` electrons per orbital."""
         d = vectors.T @ delta @ vectors
         own = np.zeros_like(d)
         own[position, position:] = d[position, position:]
@@ -153,9 +156,7 @@ class AverageAtom:
             If the self-consistent field does not converge.
         """
         overlaps = {l: self._radial_block(self.overlap, l) for l in self.index}
-        coulomb, exchange = scf.hf.dot_eri_dm(self.eri, scf.hf.init_guess_by_atom(self.mol), hermi=1)
-        guess = self.core + coulomb - 0.5 * exchange
-        focks = {l: self._radial_block(guess, l) for l in self.index}
+        focks = {l: self._radial_block(self.guess, l) for l in self.index}
         history: list[tuple[Array, Array]] = []
         for _ in range(MAX_CYCLES):
             solutions = {l: eigh(focks[l], overlaps[l]) for l in focks}
@@ -167,10 +168,12 @@ class AverageAtom:
             history = [*history, (block_diag(*fresh.values()), error)][-DIIS_VECTORS:]
             mixed = _extrapolate(history)
             focks = _split(mixed, fresh)
-        raise RuntimeError(f"{self.mol.atom_symbol(0)} {dict(configuration)}: no convergence in {MAX_CYCLES} cycles")
+        raise RuntimeError(
+            f"{self.mol.atom_symbol(0)} {dict(configuration)}: no convergence in {MAX_CYCLES} cycles"
+        )
 
     def _gradient(self, fock: Array, vectors: Array, l: int, configuration: Configuration) -> Array:
-        """Return the Fock couplings between shells of different filling, back in the functions of the basis."""
+        """Return the Fock couplings between shells of different filling, as a matrix over the basis."""
         filling = np.array([configuration.get((k + l + 1, l), 0.0) for k in range(vectors.shape[1])])
         coupling = vectors.T @ fock @ vectors
         coupling[filling[:, None] == filling[None, :]] = 0.0

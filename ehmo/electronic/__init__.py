@@ -1,0 +1,1 @@
+"""Hamiltonian, eigensolver, occupation and self-consistent charges."""

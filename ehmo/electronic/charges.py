@@ -10,17 +10,15 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ehmo.electronic.eigen import solve
 from ehmo.electronic.mixing import AndersonMixer
 from ehmo.electronic.occupation import fill
 from ehmo.errors import ConvergenceError
+from ehmo.records.arrays import FloatArray
 from ehmo.records.basis import Basis
 from ehmo.records.electronic import ElectronicState
 from ehmo.units import COULOMB_EV_A
-
-FloatArray = NDArray[np.float64]
 
 CHARGE_TOLERANCE = 1e-8
 """Largest change of a charge at convergence [e]."""
@@ -115,9 +113,7 @@ def self_consistent_charges(
     )
 
 
-def mulliken_charges(
-    coefficients: FloatArray, overlap: FloatArray, filling: FloatArray, basis: Basis
-) -> FloatArray:
+def mulliken_charges(coefficients: FloatArray, overlap: FloatArray, filling: FloatArray, basis: Basis) -> FloatArray:
     """Core charge minus gross population of each atom.
 
     Parameters

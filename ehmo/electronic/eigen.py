@@ -3,14 +3,13 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 from scipy.linalg import lapack
 
 from ehmo.conventions import atom_label
 from ehmo.errors import OverlapError
+from ehmo.records.arrays import FloatArray
 from ehmo.records.basis import Basis
-
-FloatArray = NDArray[np.float64]
+from ehmo.records.electronic import OverlapSpectrum
 
 SMALLEST_OVERLAP_EIGENVALUE = 1e-7
 """Below this the functions count as linearly dependent."""
@@ -39,26 +38,44 @@ def solve(hamiltonian: FloatArray, overlap: FloatArray, basis: Basis) -> tuple[F
         If the overlap matrix is not positive definite.
     """
     # The transpose of a C-ordered symmetric matrix is itself in the order LAPACK wants: no copy but LAPACK's own.
-    energies, vectors, info = lapack.dsygvd(hamiltonian.T, overlap.T)
+    energies, vectors, info = lapack.dsygvd(hamiltonian.T, overlap.T, uplo="L")
     if info:
-        refuse_dependent_functions(overlap, basis)
+        overlap_spectrum(overlap, basis)
         raise OverlapError(
-            f"the eigensolver failed (LAPACK dsygvd, info {info})", mend="check the geometry for atoms too close together"
+            f"the eigensolver failed (LAPACK dsygvd, info {info})",
+            mend="check the geometry for atoms too close together",
         )
     return energies, vectors
 
 
-def refuse_dependent_functions(overlap: FloatArray, basis: Basis) -> None:
-    """Raise `OverlapError` with the functions involved if the smallest overlap eigenvalue is too small."""
+def overlap_spectrum(overlap: FloatArray, basis: Basis) -> OverlapSpectrum:
+    """Eigen-decomposition of the overlap matrix, refused if functions are linearly dependent.
+
+    Parameters
+    ----------
+    overlap : (n_ao, n_ao) ndarray
+        S.
+    basis : Basis
+        Names the functions in the message.
+
+    Returns
+    -------
+    spectrum : OverlapSpectrum
+
+    Raises
+    ------
+    OverlapError
+        If the smallest eigenvalue is below `SMALLEST_OVERLAP_EIGENVALUE`.
+    """
     eigenvalues, vectors = np.linalg.eigh(overlap)
-    if eigenvalues[0] >= SMALLEST_OVERLAP_EIGENVALUE:
-        return
-    leading = np.argsort(-np.abs(vectors[:, 0]))[:3]
-    names = ", ".join(
-        f"{basis.function_label(int(i))} of {atom_label(basis.symbols[basis.atom_of[i]], int(basis.atom_of[i]))}"
-        for i in leading
-    )
-    raise OverlapError(
-        f"the basis functions are linearly dependent (smallest overlap eigenvalue {eigenvalues[0]:.1e}, mostly {names})",
-        mend="check that these atoms are not too close, or use a set with tighter exponents",
-    )
+    if eigenvalues[0] < SMALLEST_OVERLAP_EIGENVALUE:
+        names = ", ".join(
+            f"{basis.function_label(int(i))} of {atom_label(basis.symbols[basis.atom_of[i]], int(basis.atom_of[i]))}"
+            for i in np.argsort(-np.abs(vectors[:, 0]))[:3]
+        )
+        raise OverlapError(
+            f"the basis functions are linearly dependent (smallest overlap eigenvalue {eigenvalues[0]:.1e}, "
+            f"mostly {names})",
+            mend="check that these atoms are not too close, or use a set with tighter exponents",
+        )
+    return OverlapSpectrum(overlap, eigenvalues, vectors)

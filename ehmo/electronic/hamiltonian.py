@@ -3,11 +3,9 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
+from ehmo.records.arrays import FloatArray
 from ehmo.records.basis import Basis
-
-FloatArray = NDArray[np.float64]
 
 
 def wolfsberg_helmholz(

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
-FloatArray = NDArray[np.float64]
+from ehmo.records.arrays import FloatArray
+
+_RIDGE = 1e-14
 
 
 class AndersonMixer:
@@ -25,22 +26,27 @@ class AndersonMixer:
     .. [1] anderson1965: D. G. Anderson, J. Assoc. Comput. Mach. 12, 547 (1965).
     """
 
-    def __init__(self, start: FloatArray, *, damping: float = 0.3, depth: int = 6) -> None:
+    def __init__(self, start: FloatArray, *, damping: float = 0.5, depth: int = 5) -> None:
         self.value = start
         self._damping = damping
         self._depth = depth
-        self._values: list[FloatArray] = []
-        self._residuals: list[FloatArray] = []
+        self._steps: list[tuple[FloatArray, FloatArray]] = []
+        self._last: tuple[FloatArray, FloatArray] | None = None
 
     def update(self, image: FloatArray) -> None:
         """Take f(value) and move `value` to the next guess."""
-        self._values = [*self._values[-self._depth :], self.value]
-        self._residuals = [*self._residuals[-self._depth :], image - self.value]
-        value, residual = self._values[-1], self._residuals[-1]
-        if len(self._values) > 1:
-            residual_steps = np.diff(self._residuals, axis=0).T
-            value_steps = np.diff(self._values, axis=0).T
-            weights = np.linalg.lstsq(residual_steps, residual, rcond=1e-12)[0]
-            value = value - value_steps @ weights
-            residual = residual - residual_steps @ weights
+        value, residual = self.value, image - self.value
+        if self._last is not None:
+            step = value - self._last[0], residual - self._last[1]
+            self._steps = [*self._steps[-self._depth + 1 :], step]
+        self._last = value, residual
+        if self._steps:
+            value_steps = np.array([step[0] for step in self._steps])
+            residual_steps = np.array([step[1] for step in self._steps])
+            gram = residual_steps @ residual_steps.T
+            # Steps that repeat one another would make the equations singular; the ridge is far below their scale.
+            gram[np.diag_indices_from(gram)] += _RIDGE * np.trace(gram)
+            weights = np.linalg.solve(gram, residual_steps @ residual)
+            value = value - weights @ value_steps
+            residual = residual - weights @ residual_steps
         self.value = value + self._damping * residual

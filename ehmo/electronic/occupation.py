@@ -3,12 +3,10 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ehmo.conventions import DEGENERACY_TOLERANCE_EV
 from ehmo.errors import ElectronCountError
-
-FloatArray = NDArray[np.float64]
+from ehmo.records.arrays import FloatArray
 
 
 def fill(energies_eV: FloatArray, n_electrons: int, unpaired: int) -> FloatArray:

@@ -1,0 +1,1 @@
+"""Slater-type basis functions and their overlap matrices."""

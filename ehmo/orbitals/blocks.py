@@ -9,16 +9,13 @@ by one matrix product for all pairs of the same kind.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import cache
 from math import pi, sqrt
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ehmo.harmonics import product_integrals
-
-FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.intp]
+from ehmo.records.arrays import FloatArray, IntArray
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -54,7 +51,7 @@ class BlockStructure:
     l_max: int
 
 
-@lru_cache(maxsize=None)
+@cache
 def block_structure(first: tuple[int, ...], second: tuple[int, ...]) -> BlockStructure:
     """Structure for an atom with shells of the l in `first` and one with those in `second`."""
     first_start = np.cumsum([0] + [2 * l + 1 for l in first])
@@ -77,9 +74,9 @@ def block_structure(first: tuple[int, ...], second: tuple[int, ...]) -> BlockStr
                     radial_column.append(radial_start + k)
                     angular_column.append(column)
                     row = np.zeros(shape)
-                    row[
-                        first_start[i] : first_start[i + 1], second_start[j] : second_start[j + 1]
-                    ] = gaunt[:, :, column]
+                    row[first_start[i] : first_start[i + 1], second_start[j] : second_start[j + 1]] = gaunt[
+                        :, :, column
+                    ]
                     coupling_rows.append(row.ravel())
     return BlockStructure(
         np.array(channel_m, dtype=np.intp),

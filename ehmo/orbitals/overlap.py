@@ -6,7 +6,6 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ehmo.conventions import atom_label
 from ehmo.errors import InputError
@@ -14,10 +13,8 @@ from ehmo.harmonics import real_harmonics
 from ehmo.orbitals.blocks import BlockStructure
 from ehmo.orbitals.pairs import OrbitalPlan, PairGroup
 from ehmo.orbitals.tables import SHORTEST_BOHR, table_positions
+from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.units import BOHR_A
-
-FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.intp]
 
 _CHUNK = 4096  # pairs per step: keeps the temporaries in cache and far below one matrix
 

@@ -7,16 +7,13 @@ from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
-from numpy.typing import NDArray
 
-from basis_params import MissingElementError, ParameterTable, Shell
-from ehmo.errors import ParameterError
+from basis_params import ParameterTable, Shell
 from ehmo.orbitals.blocks import BlockStructure, block_structure
+from ehmo.orbitals.parameters import element_parameters
 from ehmo.orbitals.tables import overlap_table
+from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.records.basis import Basis
-
-FloatArray = NDArray[np.float64]
-IntArray = NDArray[np.intp]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -101,15 +98,11 @@ def orbital_plan(symbols: tuple[str, ...], table: ParameterTable) -> OrbitalPlan
             seconds.append(second)
             kind, coefficients = _stacked_tables(symbols, shells, first, second)
             groups.append(
-                PairGroup(
-                    slice(start, start + len(first)), block_structure(layout_a, layout_b), kind, coefficients
-                )
+                PairGroup(slice(start, start + len(first)), block_structure(layout_a, layout_b), kind, coefficients)
             )
             start += len(first)
     empty = [np.zeros(0, dtype=np.intp)]
-    return OrbitalPlan(
-        basis, np.concatenate(firsts or empty), np.concatenate(seconds or empty), tuple(groups)
-    )
+    return OrbitalPlan(basis, np.concatenate(firsts or empty), np.concatenate(seconds or empty), tuple(groups))
 
 
 def build_basis(symbols: tuple[str, ...], table: ParameterTable) -> Basis:
@@ -119,10 +112,7 @@ def build_basis(symbols: tuple[str, ...], table: ParameterTable) -> Basis:
     rows: list[tuple[int, int, int, int]] = []
     core_charges: list[float] = []
     for atom, symbol in enumerate(symbols):
-        try:
-            element = table.element(symbol)
-        except MissingElementError as missing:
-            raise ParameterError(str(missing)) from None
+        element = element_parameters(table, symbol)
         core_charges.append(float(element.valence_electrons))
         for index, shell in enumerate(element.shells):
             kind = types.setdefault((symbol, index), len(types))

@@ -7,16 +7,14 @@ the closed A_n, B_n formulas nothing cancels when exponents are close or distanc
 
 from __future__ import annotations
 
-from functools import lru_cache
+from functools import cache
 from math import factorial, sqrt
 
 import numpy as np
-from numpy.typing import NDArray
 
 from ehmo.harmonics import legendre_derivative
 from ehmo.orbitals.radial import RadialFunction
-
-FloatArray = NDArray[np.float64]
+from ehmo.records.arrays import FloatArray
 
 NU_NODES = 48
 """Enough for |zeta_a - zeta_b| R up to about 120, past which the overlap is below 1e-10 anyway."""
@@ -83,13 +81,13 @@ def _polar(l: int, m: int, cosines: FloatArray) -> FloatArray:
     return values
 
 
-@lru_cache(maxsize=None)
+@cache
 def _laguerre(n: int) -> tuple[FloatArray, FloatArray]:
     nodes, weights = np.polynomial.laguerre.laggauss(n)
     return nodes, weights
 
 
-@lru_cache(maxsize=None)
+@cache
 def _legendre(n: int) -> tuple[FloatArray, FloatArray]:
     nodes, weights = np.polynomial.legendre.leggauss(n)
     return nodes, weights

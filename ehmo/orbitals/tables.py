@@ -17,8 +17,7 @@ from ehmo.conventions import NEGLECTED_OVERLAP
 from ehmo.errors import ParameterError
 from ehmo.orbitals.quadrature import channel_overlaps
 from ehmo.orbitals.radial import orthogonal_radial_functions
-
-FloatArray = NDArray[np.float64]
+from ehmo.records.arrays import FloatArray
 
 SHORTEST_BOHR = 0.7
 """Atoms closer than this are refused as overlapping [bohr]."""
@@ -61,9 +60,7 @@ def overlap_table(first: tuple[Shell, ...], second: tuple[Shell, ...]) -> Overla
     ParameterError
         If an exponent is so small that the overlap does not die out within the table.
     """
-    functions = [
-        (a, b) for a in orthogonal_radial_functions(first) for b in orthogonal_radial_functions(second)
-    ]
+    functions = [(a, b) for a in orthogonal_radial_functions(first) for b in orthogonal_radial_functions(second)]
     nodes = np.cos(np.pi * (np.arange(DEGREE + 1) + 0.5) / (DEGREE + 1))
     to_powers = np.linalg.inv(np.vander(nodes, increasing=True))
     pieces: list[FloatArray] = []
@@ -78,7 +75,8 @@ def overlap_table(first: tuple[Shell, ...], second: tuple[Shell, ...]) -> Overla
             break
     else:
         raise ParameterError(
-            "an exponent is too small: its overlaps reach past 250 bohr", mend="use exponents above 0.1 bohr^-1"
+            "an exponent is too small: its overlaps reach past 250 bohr",
+            mend="use exponents above 0.1 bohr^-1",
         )
     coefficients = to_powers @ np.concatenate(pieces)
     coefficients.setflags(write=False)

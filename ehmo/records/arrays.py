@@ -42,16 +42,16 @@ def frozen_ints(values: ArrayLike, shape: tuple[int | None, ...], name: str) -> 
     return _frozen(np.asarray(values, dtype=np.intp), values, shape, name)
 
 
-def _frozen(
-    array: NDArray[_Scalar], given: ArrayLike, shape: tuple[int | None, ...], name: str
-) -> NDArray[_Scalar]:
-    fits = array.ndim == len(shape) and all(
-        want is None or want == have for want, have in zip(shape, array.shape, strict=True)
-    )
-    if not fits:
-        raise ValueError(f"{name} has shape {array.shape}, expected {shape}")
+def _frozen(array: NDArray[_Scalar], given: ArrayLike, shape: tuple[int | None, ...], name: str) -> NDArray[_Scalar]:
+    if array.shape != shape:
+        _check_shape(array.shape, shape, name)
     if array.flags.writeable:
         if array is given:
             array = array.copy()
-        array.setflags(write=False)
+        array.flags.writeable = False
     return array
+
+
+def _check_shape(have: tuple[int, ...], want: tuple[int | None, ...], name: str) -> None:
+    if len(have) != len(want) or any(w is not None and w != h for h, w in zip(have, want, strict=True)):
+        raise ValueError(f"{name} has shape {have}, expected {want}")

@@ -43,6 +43,8 @@ class Basis:
     """(n_ao,) Shell type of each function."""
     shell_start: IntArray = field(init=False)
     """(n_shells,) First function of each shell."""
+    layouts: tuple[tuple[int, ...], ...] = field(init=False)
+    """Angular momentum quantum number l of each shell, per atom."""
     atom_start: IntArray = field(init=False)
     """(n_atoms + 1,) First function of each atom, then the number of functions."""
 
@@ -62,6 +64,10 @@ class Basis:
         put(self, "shell_start", frozen_ints(starts[:-1], (n_shells,), "shell_start"))
         atom_start = np.searchsorted(self.atom_of, np.arange(len(self.symbols) + 1))
         put(self, "atom_start", frozen_ints(atom_start, (len(self.symbols) + 1,), "atom_start"))
+        layouts: list[list[int]] = [[] for _ in self.symbols]
+        for atom, l in zip(self.shell_atom, self.shell_l, strict=True):
+            layouts[atom].append(int(l))
+        put(self, "layouts", tuple(map(tuple, layouts)))
 
     def __len__(self) -> int:
         return len(self.shell_of)
@@ -69,10 +75,6 @@ class Basis:
     def functions_of(self, atom: int) -> slice:
         """Range of the functions of one atom."""
         return slice(int(self.atom_start[atom]), int(self.atom_start[atom + 1]))
-
-    def angular_momenta_of(self, atom: int) -> tuple[int, ...]:
-        """Angular momentum quantum number l of each shell of one atom."""
-        return tuple(int(l) for l in self.shell_l[self.shell_atom == atom])
 
     def shell_label(self, shell: int) -> str:
         """Label of a shell without its atom, such as ``3d``."""

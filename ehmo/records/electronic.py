@@ -58,3 +58,29 @@ class ElectronicState:
         """Index of the lowest empty orbital; None if every orbital is filled."""
         empty = (self.occupations[0] == 0).nonzero()[0]
         return int(empty[0]) if len(empty) else None
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OverlapSpectrum:
+    """Overlap matrix with its eigenvalues and eigenvectors.
+
+    Attributes
+    ----------
+    matrix : (n_ao, n_ao) ndarray
+        S.
+    eigenvalues : (n_ao,) ndarray
+        Ascending, all positive.
+    vectors : (n_ao, n_ao) ndarray
+        Column k belongs to eigenvalue k.
+    """
+
+    matrix: FloatArray
+    eigenvalues: FloatArray
+    vectors: FloatArray
+
+    def __post_init__(self) -> None:
+        n_ao = len(self.matrix)
+        put = object.__setattr__
+        put(self, "matrix", frozen_floats(self.matrix, (n_ao, n_ao), "matrix"))
+        put(self, "eigenvalues", frozen_floats(self.eigenvalues, (n_ao,), "eigenvalues"))
+        put(self, "vectors", frozen_floats(self.vectors, (n_ao, n_ao), "vectors"))

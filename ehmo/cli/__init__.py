@@ -1,0 +1,68 @@
+"""Command line: one module per command; a handler returns text, printing happens here once."""
+
+from __future__ import annotations
+
+import argparse
+import os
+import sys
+from collections.abc import Callable, Sequence
+
+from ehmo import __version__
+from ehmo.cli import bond, demo, params
+from ehmo.errors import EhmoError, visible
+
+Handler = Callable[[argparse.Namespace], str]
+
+USAGE_ERROR = 2
+INTERRUPTED = 130
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one command.
+
+    Parameters
+    ----------
+    arguments : sequence of str, optional
+        Command-line words; those of the process by default.
+
+    Returns
+    -------
+    status : int
+        0, or 2 after an error that was explained on the standard error stream.
+    """
+    for stream in (sys.stdout, sys.stderr):
+        # A terminal that cannot show a letter gets a question mark instead of a traceback.
+        stream.reconfigure(errors="replace")  # type: ignore[union-attr]
+    try:
+        chosen = _parser().parse_args(arguments)
+        handler: Handler = chosen.handler
+        sys.stdout.write(handler(chosen))
+        sys.stdout.flush()
+    except EhmoError as error:
+        print(f"ehmo: {error}", file=sys.stderr)
+        return USAGE_ERROR
+    except BrokenPipeError:
+        # The reader of a pipe, such as head, has seen enough; the interpreter must not complain at exit.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except KeyboardInterrupt:
+        return INTERRUPTED
+    return 0
+
+
+class _Parser(argparse.ArgumentParser):
+    def error(self, message: str) -> None:  # type: ignore[override]
+        """One line and the mend, like every other error of the program."""
+        print(f"ehmo: {visible(message)}; see {self.prog} --help", file=sys.stderr)
+        raise SystemExit(USAGE_ERROR)
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = _Parser(
+        prog="ehmo",
+        description="What is this metal-oxygen bond? Bond orders, channels, populations and orbitals.",
+    )
+    parser.add_argument("--version", action="version", version=f"ehmo {__version__}")
+    commands = parser.add_subparsers(metavar="COMMAND", required=True)
+    for module in (bond, demo, params):
+        module.add_command(commands)
+    return parser

@@ -1,0 +1,110 @@
+"""``ehmo bond``: bond report of a structure file."""
+
+from __future__ import annotations
+
+import argparse
+from typing import TYPE_CHECKING, Any
+
+from ehmo.cli.output import write_whole
+from ehmo.errors import InputError
+
+if TYPE_CHECKING:
+    from ehmo.records.options import Options
+    from ehmo.records.report import BondReport
+
+_SWITCH = {"on": True, "off": False}
+
+
+def add_command(commands: Any) -> None:
+    """Add the command to the program's parser."""
+    parser = commands.add_parser(
+        "bond",
+        help="bond report of a structure file (XYZ, extended XYZ, CIF)",
+        description="Bond report of every metal-donor bond in a structure file.",
+    )
+    parser.add_argument("file", metavar="FILE", help="XYZ, extended XYZ or CIF file")
+    add_calculation_options(parser)
+    parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
+    parser.set_defaults(handler=run)
+
+
+def add_calculation_options(parser: argparse.ArgumentParser) -> None:
+    """Options of every command that calculates."""
+    parser.add_argument("--charge", type=int, metavar="Q", help="total charge (default: from the file, or a guess)")
+    parser.add_argument(
+        "--unpaired", type=int, metavar="N", help="unpaired electrons (default: from the file, or a guess)"
+    )
+    parser.add_argument("--params", default="standard", metavar="NAME|FILE", help="parameter set (default: standard)")
+    parser.add_argument(
+        "--charges",
+        choices=("fixed", "self-consistent"),
+        default="self-consistent",
+        help="whether charges act back on the orbital energies (default: self-consistent)",
+    )
+    constants = parser.add_argument_group("constants of the Hamiltonian", "default: those of the parameter set")
+    constants.add_argument("--K", type=float, metavar="K", help="Wolfsberg-Helmholz constant")
+    for channel in ("sigma", "pi", "delta"):
+        constants.add_argument(f"--K-{channel}", type=float, metavar="K", help=f"the same for {channel} overlaps alone")
+    constants.add_argument("--K-decay", type=float, metavar="D", help="decay of K with distance [1/Å]")
+    constants.add_argument("--weighting", choices=tuple(_SWITCH), help="weighting of K by the difference in energy")
+    constants.add_argument("--lambda", type=float, dest="lambda_", metavar="L", help="weight of the charge potential")
+    limits = parser.add_argument_group("limits")
+    limits.add_argument("--max-atoms", type=int, default=5000, metavar="N", help="atoms allowed in a file (5000)")
+    limits.add_argument("--max-functions", type=int, default=4000, metavar="N", help="basis functions allowed (4000)")
+    limits.add_argument(
+        "--max-iterations",
+        type=int,
+        default=100,
+        metavar="N",
+        help="iterations allowed for the charges (100)",
+    )
+
+
+def calculation_options(chosen: argparse.Namespace) -> Options:
+    """Options record of the parsed words."""
+    from ehmo.records.options import Options
+
+    return Options(
+        charge=chosen.charge,
+        unpaired_electrons=chosen.unpaired,
+        charge_model=chosen.charges,
+        K=chosen.K,
+        weighting=None if chosen.weighting is None else _SWITCH[chosen.weighting],
+        K_sigma=chosen.K_sigma,
+        K_pi=chosen.K_pi,
+        K_delta=chosen.K_delta,
+        K_decay_per_A=chosen.K_decay,
+        lambda_=chosen.lambda_,
+        max_iterations=chosen.max_iterations,
+        max_functions=chosen.max_functions,
+    )
+
+
+def run(chosen: argparse.Namespace) -> str:
+    """Report of each structure in the file."""
+    from ehmo.calculate import bond_report
+    from ehmo.orbitals.parameters import load_parameters
+    from ehmo.structure import read_frames
+
+    options = calculation_options(chosen)
+    table = load_parameters(chosen.params)
+    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms)
+    reports = [bond_report(fragment, table, options) for fragment in fragments]
+    return present(reports, chosen.json)
+
+
+def present(reports: list[BondReport], json_path: str | None) -> str:
+    """Text for the terminal; the JSON document goes to its file, or replaces the text."""
+    if json_path is not None:
+        from ehmo.report.document import json_text
+
+        document = json_text(reports)
+        if json_path == "-":
+            return document
+        if not json_path:
+            raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
+        write_whole(json_path, document)
+    from ehmo.report.text import bond_text
+
+    rule = "\n" + "=" * 100 + "\n\n"
+    return rule.join(bond_text(report) for report in reports)

@@ -1,0 +1,36 @@
+"""``ehmo demo``: the main job on a built-in invented complex."""
+
+from __future__ import annotations
+
+import argparse
+from importlib import resources
+from typing import Any
+
+from ehmo.cli import bond
+
+STORY = """\
+An imaginary pottery fires a blue-green glaze. The film is taken to hold the complex VO(OCH3)Cl(OH2)2: one oxo,
+one methoxo, one chlorido and two aqua ligands on one vanadium. Geometry and story are invented. The same report
+for a file of your own: ehmo bond FILE
+
+"""
+
+
+def add_command(commands: Any) -> None:
+    """Add the command to the program's parser."""
+    parser = commands.add_parser(
+        "demo",
+        help="bond report of a built-in invented complex",
+        description="Runs the main job on a built-in invented complex.",
+    )
+    bond.add_calculation_options(parser)
+    parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead")
+    parser.set_defaults(handler=run)
+
+
+def run(chosen: argparse.Namespace) -> str:
+    """Story and report."""
+    with resources.as_file(resources.files("ehmo.cli").joinpath("data", "demo.xyz")) as path:
+        chosen.file = str(path)
+        text = bond.run(chosen)
+    return text if chosen.json == "-" else STORY + text

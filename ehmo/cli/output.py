@@ -1,0 +1,53 @@
+"""Files written whole or not at all."""
+
+from __future__ import annotations
+
+import os
+import tempfile
+from pathlib import Path
+
+from ehmo.errors import InputError
+
+
+def write_whole(path: str | Path, text: str) -> None:
+    """Write a text file so that a failure leaves no half of it behind.
+
+    The text goes to a temporary file in the same folder, which then takes the name of the target.
+
+    Parameters
+    ----------
+    path : str or Path
+        Target.
+    text : str
+        Content, written as UTF-8.
+
+    Raises
+    ------
+    InputError
+        If the folder is missing, not writable, or the disk is full.
+    """
+    target = Path(path)
+    temporary: str | None = None
+    try:
+        with tempfile.NamedTemporaryFile(
+            "w", encoding="utf-8", dir=target.parent, prefix=f".{target.name}.", delete=False
+        ) as file:
+            temporary = file.name
+            file.write(text)
+        _give_usual_permissions(temporary)
+        Path(temporary).replace(target)
+    except OSError as fault:
+        if temporary is not None:
+            Path(temporary).unlink(missing_ok=True)
+        raise InputError(
+            f"cannot write the file ({fault.strerror or fault})",
+            place=str(target),
+            mend="choose a folder that exists, is writable and has room",
+        ) from fault
+
+
+def _give_usual_permissions(path: str) -> None:
+    """Temporary files are private; the result should have the permissions of any new file."""
+    mask = os.umask(0)
+    os.umask(mask)
+    Path(path).chmod(0o666 & ~mask)

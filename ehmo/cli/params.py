@@ -1,0 +1,138 @@
+"""``ehmo params``: the parameter sets, their rows and their audits."""
+
+from __future__ import annotations
+
+import argparse
+import textwrap
+from typing import TYPE_CHECKING, Any
+
+from ehmo.errors import ParameterError, visible
+from ehmo.records.table import aligned
+
+if TYPE_CHECKING:
+    from basis_params import ParameterTable
+
+
+def add_command(commands: Any) -> None:
+    """Add the command to the program's parser."""
+    parser = commands.add_parser(
+        "params",
+        help="list, show or check parameter sets",
+        description="Parameter sets: shipped ones by name, your own by file.",
+    )
+    actions = parser.add_subparsers(metavar="ACTION", required=True)
+    listed = actions.add_parser("list", help="names of the shipped sets and the elements they cover")
+    listed.set_defaults(handler=run_list)
+    shown = actions.add_parser("show", help="rows of a set with their sources")
+    shown.add_argument("set", metavar="NAME|FILE", help="shipped set or table file")
+    shown.add_argument("elements", metavar="ELEMENT", nargs="*", help="only these elements")
+    shown.set_defaults(handler=run_show)
+    checked = actions.add_parser("check", help="audit a set against norms and free atoms")
+    checked.add_argument("set", metavar="NAME|FILE", help="shipped set or table file")
+    checked.set_defaults(handler=run_check)
+
+
+def run_list(_: argparse.Namespace) -> str:
+    """Shipped sets, one paragraph each."""
+    import basis_params
+
+    lines = []
+    for name in basis_params.available_sets():
+        table = basis_params.load_set(name)
+        lines.append(f"{table.name} (edition {table.edition}): {_settings_text(table)}")
+        lines += textwrap.wrap(
+            f"{len(table.elements)} elements: {' '.join(table.elements)}",
+            98,
+            initial_indent="  ",
+            subsequent_indent="  ",
+        )
+    return "\n".join(lines) + "\n"
+
+
+def run_show(chosen: argparse.Namespace) -> str:
+    """Header, notes and rows of a set."""
+    from ehmo.orbitals.parameters import load_parameters
+
+    table = load_parameters(chosen.set)
+    elements = chosen.elements or list(table.elements)
+    missing = [symbol for symbol in elements if symbol not in table.elements]
+    if missing:
+        raise ParameterError(
+            f"the set {table.name} has no {', '.join(missing)}",
+            mend=f"choose from {' '.join(table.elements)}",
+        )
+    rows = [["element", "valence e", "shell", "H_ii/eV", "zeta (c)", "source", "known by"]]
+    for symbol in elements:
+        element = table.elements[symbol]
+        for shell in element.shells:
+            functions = "  ".join(f"{zeta:g} ({c:g})" for zeta, c in zip(shell.zetas, shell.coefficients, strict=True))
+            source = visible(f"{shell.source_key}, {shell.locator}" if shell.locator else shell.source_key)
+            rows.append(
+                [
+                    symbol,
+                    str(element.valence_electrons),
+                    shell.label,
+                    f"{shell.h_ii_eV:.3f}",
+                    functions,
+                    source,
+                    shell.provenance,
+                ]
+            )
+    head = [
+        f"{visible(table.name)} (edition {visible(table.edition)}), {visible(table.origin)}: {_settings_text(table)}"
+    ]
+    if table.inherited:
+        head.append(f"not stated in the table, taken from the standard set: {', '.join(table.inherited)}")
+    notes = [line for note in table.notes for line in textwrap.wrap(visible(note), 100, subsequent_indent="  ")]
+    return "\n".join([*head, "", *aligned(rows, numeric=(1, 3)), *(["", "Notes", *notes] if notes else [])]) + "\n"
+
+
+def run_check(chosen: argparse.Namespace) -> str:
+    """Outcome of the audits, with every value outside its bounds."""
+    from basis_params.audits import audit
+    from ehmo.orbitals.parameters import load_parameters
+
+    table = load_parameters(chosen.set)
+    report = audit(table)
+    counts = [["check", "ok", "outlier", "no reference"]]
+    for check in dict.fromkeys(row.check for row in report.rows):
+        by_status = [row.status for row in report.rows if row.check == check]
+        counts.append([check, *(str(by_status.count(status)) for status in ("ok", "outlier", "no reference"))])
+    outliers = [
+        [
+            row.element,
+            row.shell,
+            row.check,
+            f"{row.value:.3f}",
+            f"{row.reference:.3f}",
+            f"{row.ratio:.2f}",
+            f"{row.bounds[0]:g} to {row.bounds[1]:g}",
+        ]
+        for row in report.rows
+        if row.status == "outlier"
+    ]
+    lines = [f"{visible(table.name)} (edition {visible(table.edition)}), {visible(table.origin)}"]
+    lines += aligned(counts, numeric=(1, 2, 3), indent="  ")
+    if outliers:
+        heading = ["element", "shell", "check", "table", "reference", "ratio", "bounds"]
+        lines += ["", "Outside the bounds; free atoms are a yardstick for wrong digits, not a verdict:"]
+        lines += aligned([heading, *outliers], numeric=(3, 4, 5), indent="  ")
+    else:
+        lines += ["", "Nothing is outside the bounds."]
+    return "\n".join(lines) + "\n"
+
+
+def _settings_text(table: ParameterTable) -> str:
+    settings = table.settings
+    channels = [
+        f"{name} {value:g}"
+        for name, value in (
+            ("K_sigma", settings.K_sigma),
+            ("K_pi", settings.K_pi),
+            ("K_delta", settings.K_delta),
+        )
+        if value is not None
+    ]
+    decay = [f"K_decay {settings.K_decay_per_A:g} per Å"] if settings.K_decay_per_A else []
+    weighting = "weighted" if settings.weighting else "not weighted"
+    return ", ".join([f"K {settings.K:g} ({weighting})", *channels, *decay, f"lambda {settings.lambda_:g}"])

@@ -1,0 +1,165 @@
+"""The bond report: everything one calculation says."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from html import escape
+
+import numpy as np
+
+from ehmo.conventions import atom_label
+from ehmo.records.arrays import FloatArray
+from ehmo.records.basis import Basis
+from ehmo.records.bonding import BondOrders, Populations
+from ehmo.records.coordination import Coordination, ElectronAssignment, MetalDonorBond
+from ehmo.records.electronic import ElectronicState
+from ehmo.records.fragment import Fragment
+from ehmo.records.table import aligned
+
+
+@dataclass(frozen=True, slots=True)
+class Method:
+    """How the numbers were made.
+
+    Attributes
+    ----------
+    parameter_set, edition, parameter_sha256 : str
+        Name, edition and content hash of the parameter set.
+    parameter_origin : str
+        "built in" or the file.
+    charge_model : str
+        "fixed" or "self-consistent".
+    K, K_sigma, K_pi, K_delta : float
+        Wolfsberg-Helmholz constants used.
+    weighting : bool
+        Whether K was weighted.
+    K_decay_per_A : float
+        Decay of K with distance [1/angstrom].
+    lambda_ : float
+        Weight of the charge potential; without effect if charges are fixed.
+    iterations : int
+        Diagonalisations.
+    charge_residual : float
+        Largest last change of a charge [e].
+    smallest_overlap_eigenvalue : float
+        Near zero means nearly dependent functions.
+    """
+
+    parameter_set: str
+    edition: str
+    parameter_sha256: str
+    parameter_origin: str
+    charge_model: str
+    K: float
+    K_sigma: float
+    K_pi: float
+    K_delta: float
+    weighting: bool
+    K_decay_per_A: float
+    lambda_: float
+    iterations: int
+    charge_residual: float
+    smallest_overlap_eigenvalue: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class BondReport:
+    """Result of one calculation on one fragment.
+
+    Attributes
+    ----------
+    fragment : Fragment
+        Atoms, with the charge and unpaired electrons used.
+    coordination : Coordination
+        Metals, bonds, ligands, local frames.
+    electrons : ElectronAssignment
+        Charge and spin with their reasons.
+    method : Method
+        Parameters and convergence.
+    basis : Basis
+        Functions.
+    overlap : (n_ao, n_ao) ndarray
+        Overlap matrix.
+    state : ElectronicState
+        Orbitals, filling and charges.
+    populations : Populations
+        Mulliken populations.
+    orders : tuple of BondOrders
+        One per bond, in the order of `coordination.bonds`.
+    assumptions : tuple of str
+        What was taken for granted, one sentence each.
+    warnings : tuple of str
+        What to doubt, one sentence each.
+    """
+
+    fragment: Fragment
+    coordination: Coordination
+    electrons: ElectronAssignment
+    method: Method
+    basis: Basis
+    overlap: FloatArray
+    state: ElectronicState
+    populations: Populations
+    orders: tuple[BondOrders, ...]
+    assumptions: tuple[str, ...]
+    warnings: tuple[str, ...]
+
+    def bonds(self) -> Iterator[tuple[MetalDonorBond, BondOrders]]:
+        """Each metal-donor bond with its orders."""
+        return zip(self.coordination.bonds, self.orders, strict=True)
+
+    def bond_label(self, bond: MetalDonorBond) -> str:
+        """Label such as ``V1-O2``."""
+        symbols = self.fragment.symbols
+        return f"{atom_label(symbols[bond.metal], bond.metal)}-{atom_label(symbols[bond.donor], bond.donor)}"
+
+    def orbital_composition(self) -> FloatArray:
+        """(n_mo, 3) share of each orbital on the metals, on the donor atoms and on the rest."""
+        group = np.full(len(self.fragment), 2)
+        group[[bond.donor for bond in self.coordination.bonds]] = 1
+        group[list(self.coordination.metals)] = 0
+        return np.stack([self.populations.orbital_shares[group == g].sum(axis=0) for g in range(3)], axis=1)
+
+    def orbital_overlap(self) -> FloatArray:
+        """(n_mo,) metal-donor overlap population of each orbital holding two electrons [e]."""
+        total: FloatArray = np.sum([orders.orbital_overlap for orders in self.orders], axis=0)
+        return total
+
+    def hybrid_composition(self, atom: int, hybrid: FloatArray) -> dict[str, float]:
+        """Share of each shell of an atom in a hybrid, such as ``{"3d": 0.93, "4p": 0.07}``."""
+        functions = self.basis.functions_of(atom)
+        shells = self.basis.shell_of[functions]
+        return {
+            self.basis.shell_label(int(shell)): float((hybrid[shells == shell] ** 2).sum())
+            for shell in dict.fromkeys(shells)
+        }
+
+    def __str__(self) -> str:
+        heading = (
+            f"{self.fragment.formula}, charge {self.fragment.charge:+d}, "
+            f"{self.fragment.unpaired_electrons} unpaired, set {self.method.parameter_set}"
+        )
+        return "\n".join([heading, *aligned(self._rows(), numeric=(2, 3, 4, 5))])
+
+    __repr__ = __str__
+
+    def _repr_html_(self) -> str:
+        head, *body = self._rows()
+        rows = ["".join(f"<th>{escape(cell)}</th>" for cell in head)]
+        rows += ["".join(f"<td>{escape(cell)}</td>" for cell in row) for row in body]
+        return "<table>" + "".join(f"<tr>{row}</tr>" for row in rows) + "</table>"
+
+    def _rows(self) -> list[list[str]]:
+        rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg"]]
+        for bond, orders in self.bonds():
+            numbers = (orders.overlap_population, orders.mayer, orders.wiberg)
+            rows.append(
+                [
+                    self.bond_label(bond),
+                    bond.kind,
+                    f"{bond.length_A:.3f}",
+                    *(f"{value:.2f}" for value in numbers),
+                ]
+            )
+        return rows

@@ -1,0 +1,189 @@
+"""The bond report as a JSON document; README describes its fields."""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Sequence
+from typing import Any
+
+from ehmo import __version__
+from ehmo.records.bonding import BondOrders
+from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.report import BondReport
+from ehmo.report.cautions import CAUTIONS
+
+SCHEMA = "ehmo bond report 1"
+"""Name and version of the document; the version rises when a field changes its meaning."""
+
+
+def bond_document(report: BondReport) -> dict[str, Any]:
+    """Bond report as plain data: dictionaries, lists, numbers and text, NaN as None.
+
+    Parameters
+    ----------
+    report : BondReport
+        Result of a calculation.
+
+    Returns
+    -------
+    document : dict
+        Ready for `json.dumps`.
+    """
+    plain: dict[str, Any] = _plain(
+        {
+            "schema": SCHEMA,
+            "program_version": __version__,
+            "fragment": _fragment(report),
+            "method": _method(report),
+            "orbitals": _orbitals(report),
+            "atoms": _atoms(report),
+            "ligands": _ligands(report),
+            "bonds": [_bond(report, bond, orders) for bond, orders in report.bonds()],
+            "local_frames": [
+                {
+                    "metal": frame.metal,
+                    "axes": frame.axes,
+                    "z_reason": frame.z_reason,
+                    "x_reason": frame.x_reason,
+                }
+                for frame in report.coordination.frames
+            ],
+            "assumptions": list(report.assumptions),
+            "warnings": list(report.warnings),
+            "cautions": list(CAUTIONS),
+        }
+    )
+    return plain
+
+
+def json_text(reports: Sequence[BondReport]) -> str:
+    """JSON text of one report, or of several as ``{"schema", "reports"}``."""
+    documents = [bond_document(report) for report in reports]
+    whole = documents[0] if len(documents) == 1 else {"schema": SCHEMA, "reports": documents}
+    return json.dumps(whole, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+
+
+def _fragment(report: BondReport) -> dict[str, Any]:
+    fragment = report.fragment
+    return {
+        "source": fragment.source,
+        "title": fragment.title,
+        "formula": fragment.formula,
+        "charge": fragment.charge,
+        "charge_reason": report.electrons.charge_reason,
+        "unpaired_electrons": fragment.unpaired_electrons,
+        "unpaired_reason": report.electrons.unpaired_reason,
+        "metal_oxidation_total": report.electrons.metal_oxidation_total,
+        "d_electrons": report.electrons.d_electrons,
+        "atoms": [
+            {"label": label, "symbol": symbol, "position_A": position}
+            for label, symbol, position in zip(fragment.labels, fragment.symbols, fragment.positions_A, strict=True)
+        ],
+    }
+
+
+def _method(report: BondReport) -> dict[str, Any]:
+    method = report.method
+    return {
+        "parameter_set": method.parameter_set,
+        "parameter_edition": method.edition,
+        "parameter_sha256": method.parameter_sha256,
+        "parameter_origin": method.parameter_origin,
+        "charge_model": method.charge_model,
+        "converged": True,  # a calculation that does not converge raises instead of reporting
+        "iterations": method.iterations,
+        "charge_residual_e": method.charge_residual,
+        "K": method.K,
+        "K_sigma": method.K_sigma,
+        "K_pi": method.K_pi,
+        "K_delta": method.K_delta,
+        "K_decay_per_A": method.K_decay_per_A,
+        "weighting": method.weighting,
+        "lambda": method.lambda_,
+        "smallest_overlap_eigenvalue": method.smallest_overlap_eigenvalue,
+        "energy_eV": report.state.energy_eV,
+    }
+
+
+def _orbitals(report: BondReport) -> list[dict[str, Any]]:
+    composition = report.orbital_composition()
+    overlap = report.orbital_overlap()
+    occupations = report.state.occupations
+    return [
+        {
+            "energy_eV": report.state.energies_eV[k],
+            "occupation": occupations[0, k] + occupations[1, k],
+            "metal_share": composition[k, 0],
+            "donor_share": composition[k, 1],
+            "other_share": composition[k, 2],
+            "metal_donor_overlap_population_per_two_electrons": overlap[k],
+        }
+        for k in range(len(composition))
+    ]
+
+
+def _atoms(report: BondReport) -> list[dict[str, Any]]:
+    populations = report.populations
+    net = populations.atom_overlap.diagonal()
+    return [
+        {
+            "label": label,
+            "mulliken_charge": report.state.charges[k],
+            "gross_population": populations.atom_gross[k],
+            "net_population": net[k],
+            "spin_population": populations.spin[k],
+        }
+        for k, label in enumerate(report.fragment.labels)
+    ]
+
+
+def _ligands(report: BondReport) -> list[dict[str, Any]]:
+    return [
+        {
+            "formula": ligand.formula,
+            "atoms": list(ligand.atoms),
+            "donors": list(ligand.donors),
+            "metals": list(ligand.metals),
+            "charge": ligand.charge,
+            "charge_reason": ligand.charge_reason,
+        }
+        for ligand in report.coordination.ligands
+    ]
+
+
+def _bond(report: BondReport, bond: MetalDonorBond, orders: BondOrders) -> dict[str, Any]:
+    return {
+        "metal": bond.metal,
+        "donor": bond.donor,
+        "label": report.bond_label(bond),
+        "kind": str(bond.kind),
+        "length_A": bond.length_A,
+        "bond_valence": bond.bond_valence,
+        "overlap_population": orders.overlap_population,
+        "mayer": orders.mayer,
+        "wiberg": orders.wiberg,
+        "channels": [
+            {
+                "type": channel.type,
+                "weight": channel.weight,
+                "type_share": channel.shares.max(),
+                "metal_hybrid": report.hybrid_composition(bond.metal, channel.metal_hybrid),
+                "donor_hybrid": report.hybrid_composition(bond.donor, channel.donor_hybrid),
+            }
+            for channel in orders.channels
+        ],
+    }
+
+
+def _plain(value: Any) -> Any:
+    """Arrays to lists, NaN to None, numbers to Python's own."""
+    if isinstance(value, dict):
+        return {key: _plain(item) for key, item in value.items()}
+    if isinstance(value, (list, tuple)):
+        return [_plain(item) for item in value]
+    if hasattr(value, "tolist"):
+        return _plain(value.tolist())
+    if isinstance(value, float) and not math.isfinite(value):
+        return None
+    return value

@@ -1,0 +1,200 @@
+"""The bond report as text for a terminal."""
+
+from __future__ import annotations
+
+import textwrap
+from collections.abc import Sequence
+
+import numpy as np
+
+from ehmo.analysis.local_frame import local_gross_populations
+from ehmo.conventions import BOND_SYMMETRIES
+from ehmo.errors import visible
+from ehmo.records.arrays import FloatArray
+from ehmo.records.bonding import BondChannel
+from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.report import BondReport
+from ehmo.records.table import aligned
+from ehmo.report.cautions import CAUTIONS
+
+WIDTH = 100
+FULL_CHANNEL = 0.60
+PARTIAL_CHANNEL = 0.20
+"""Weights from which a channel counts as full or as partial when a bond is put into words."""
+
+_LISTED_CHANNEL = 0.05
+_FRONTIER = 6
+_NUMBER_WORDS = ("no", "one", "two", "three", "four", "five", "six")
+
+
+def bond_text(report: BondReport) -> str:
+    """Whole report as text.
+
+    Parameters
+    ----------
+    report : BondReport
+        Result of a calculation.
+
+    Returns
+    -------
+    text : str
+        Lines of at most about 100 characters, control characters of the source shown.
+    """
+    sections = [
+        _heading(report),
+        *(_bonds_of(report, metal) for metal in report.coordination.metals),
+        _hybrids(report),
+        _charges(report),
+        _frontier(report),
+        _sentences("Assumed", report.assumptions),
+        _sentences("To doubt", report.warnings or ("nothing in particular, beyond the cautions below",)),
+        _sentences("Cautions", CAUTIONS),
+    ]
+    return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
+
+
+def channels_in_words(channels: Sequence[BondChannel]) -> str:
+    """Reading of a bond such as ``one sigma, two pi``; weaker channels are called partial."""
+    full = [channel.type for channel in channels if channel.weight >= FULL_CHANNEL]
+    partial = [c.type for c in channels if PARTIAL_CHANNEL <= c.weight < FULL_CHANNEL]
+    parts = [
+        f"{_NUMBER_WORDS[kinds.count(symmetry)]} {prefix}{symmetry}"
+        for prefix, kinds in (("", full), ("partial ", partial))
+        for symmetry in BOND_SYMMETRIES
+        if symmetry in kinds
+    ]
+    return ", ".join(parts) or "traces only"
+
+
+def _heading(report: BondReport) -> list[str]:
+    fragment, method = report.fragment, report.method
+    unpaired = fragment.unpaired_electrons
+    electrons = f"{unpaired} unpaired electron{'' if unpaired == 1 else 's'}"
+    charges = (
+        "fixed charges"
+        if method.charge_model == "fixed"
+        else f"self-consistent charges (lambda {method.lambda_:g}, converged in {method.iterations} iterations)"
+    )
+    title = f"  {visible(fragment.title)}" if fragment.title else ""
+    return [
+        f"{visible(fragment.source) or 'fragment'}{title}",
+        f"{fragment.formula}, charge {fragment.charge:+d}, {electrons}",
+        f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
+    ]
+
+
+def _bonds_of(report: BondReport, metal: int) -> list[str]:
+    rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "channels", "weights"]]
+    for bond, orders in report.bonds():
+        if bond.metal == metal:
+            rows.append(
+                [
+                    report.bond_label(bond),
+                    bond.kind,
+                    f"{bond.length_A:.3f}",
+                    f"{orders.overlap_population:.2f}",
+                    f"{orders.mayer:.2f}",
+                    f"{orders.wiberg:.2f}",
+                    channels_in_words(orders.channels),
+                    _weights(orders.channels),
+                ]
+            )
+    return [f"Bonds of {report.fragment.labels[metal]}", *aligned(rows, numeric=(2, 3, 4, 5), indent="  ")]
+
+
+def _weights(channels: Sequence[BondChannel]) -> str:
+    """Weights grouped by symmetry, such as ``sigma 0.75 0.15  pi 0.81 0.80``."""
+    groups = []
+    for symmetry in BOND_SYMMETRIES:
+        weights = [f"{c.weight:.2f}" for c in channels if c.type == symmetry and c.weight >= _LISTED_CHANNEL]
+        if weights:
+            groups.append(f"{symmetry} {' '.join(weights)}")
+    return "  ".join(groups)
+
+
+def _hybrids(report: BondReport) -> list[str]:
+    """Make-up of the channels of the bonds that may be multiple."""
+    rows = [["bond", "channel", "weight", "metal hybrid", "donor hybrid"]]
+    for bond, orders in report.bonds():
+        if bond.may_be_multiple:
+            rows += [
+                [
+                    report.bond_label(bond),
+                    channel.type,
+                    f"{channel.weight:.2f}",
+                    *_hybrid_cells(report, bond, channel),
+                ]
+                for channel in orders.channels
+                if channel.weight >= PARTIAL_CHANNEL
+            ]
+    return ["What the channels are made of", *aligned(rows, numeric=(2,), indent="  ")] if len(rows) > 1 else []
+
+
+def _hybrid_cells(report: BondReport, bond: MetalDonorBond, channel: BondChannel) -> list[str]:
+    cells = []
+    for atom, hybrid in ((bond.metal, channel.metal_hybrid), (bond.donor, channel.donor_hybrid)):
+        shares = sorted(report.hybrid_composition(atom, hybrid).items(), key=lambda item: -item[1])
+        cells.append(", ".join(f"{100 * share:.0f} % {shell}" for shell, share in shares if share >= 0.005))
+    return cells
+
+
+def _charges(report: BondReport) -> list[str]:
+    unpaired = bool(report.fragment.unpaired_electrons)
+    listed = sorted({*report.coordination.metals, *(bond.donor for bond in report.coordination.bonds)})
+    rows = [["atom", "charge/e", *(["unpaired/e"] if unpaired else [])]]
+    for atom in listed:
+        row = [report.fragment.labels[atom], f"{report.state.charges[atom]:+.2f}"]
+        rows.append([*row, f"{report.populations.spin[atom]:.2f}"] if unpaired else row)
+    rest = np.delete(np.arange(len(report.fragment)), listed)
+    if len(rest):
+        row = ["all others", f"{report.state.charges[rest].sum():+.2f}"]
+        rows.append([*row, f"{report.populations.spin[rest].sum():.2f}"] if unpaired else row)
+    return ["Mulliken charges (positive = electron poor)", *aligned(rows, numeric=(1, 2), indent="  ")]
+
+
+def _frontier(report: BondReport) -> list[str]:
+    """Orbitals round the highest one that holds electrons, topmost first."""
+    state = report.state
+    composition, overlap = 100 * report.orbital_composition(), report.orbital_overlap()
+    filling = state.occupations.sum(axis=0)
+    shown = range(min(state.homo + _FRONTIER, len(filling) - 1), max(state.homo - _FRONTIER, -1), -1)
+    gross = local_gross_populations(shown, state.coefficients, report.overlap, report.basis, report.coordination)
+    rows = [
+        [
+            "orbital",
+            "energy/eV",
+            "electrons",
+            "metal/%",
+            "donors/%",
+            "rest/%",
+            "M-donor overlap pop.",
+            "mostly",
+        ]
+    ]
+    rows += [
+        [
+            str(k + 1),
+            f"{state.energies_eV[k]:.2f}",
+            f"{filling[k]:g}" if filling[k] in (0, 1, 2) else f"{filling[k]:.2f}",
+            *(f"{share:.0f}" for share in composition[k]),
+            f"{overlap[k]:+.2f}",
+            _leading_part(report, gross[:, place]),
+        ]
+        for place, k in enumerate(shown)
+    ]
+    heading = "Frontier orbitals (overlap population for two electrons, positive = bonding; functions in local axes)"
+    return [heading, *aligned(rows, numeric=range(7), indent="  ")]
+
+
+def _leading_part(report: BondReport, gross: FloatArray) -> str:
+    """Functions that carry an orbital, by gross population."""
+    basis, labels = report.basis, report.fragment.labels
+    leading = [int(i) for i in np.argsort(-gross)[:2] if gross[i] >= 0.1]
+    return ", ".join(f"{100 * gross[i]:.0f} % {labels[basis.atom_of[i]]} {basis.function_label(i)}" for i in leading)
+
+
+def _sentences(heading: str, sentences: Sequence[str]) -> list[str]:
+    lines = [heading]
+    for sentence in sentences:
+        lines += textwrap.wrap(visible(sentence), WIDTH, initial_indent="  - ", subsequent_indent="    ")
+    return lines

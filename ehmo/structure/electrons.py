@@ -1,0 +1,251 @@
+"""Charge and unpaired electrons of a fragment: given, or guessed with the reason stated."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Final
+
+from ehmo.errors import ElectronCountError
+from ehmo.records.coordination import Coordination, DonorKind, ElectronAssignment
+from ehmo.records.fragment import Fragment
+from ehmo.structure.elements import (
+    ACTINIDES,
+    LANTHANIDES,
+    OXIDATION_STATES,
+    atomic_number,
+    valence_d_or_f_electrons,
+)
+from ehmo.structure.oxidation import oxidation_guess
+
+MAX_CHARGE: Final = 100
+"""Charges beyond this are taken for mistakes."""
+
+_HUND_F: Final = (1, 2, 3)
+_NEUTRAL_KINDS: Final = frozenset({DonorKind.CARBONYL, DonorKind.SIDE_ON_CARBON})
+
+
+@dataclass(frozen=True, slots=True)
+class _Choice:
+    value: int
+    reason: str
+
+
+def assign_electrons(
+    fragment: Fragment,
+    coordination: Coordination,
+    charge: int | None = None,
+    unpaired: int | None = None,
+) -> ElectronAssignment:
+    """Charge and unpaired electrons of a fragment.
+
+    What is given here wins over what the file states; what neither gives is guessed, with the reasoning in words, or
+    refused with the candidates named.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+        Of the same fragment.
+    charge, unpaired : int or None
+        Total charge and number of unpaired electrons.
+
+    Returns
+    -------
+    assignment : ElectronAssignment
+
+    Raises
+    ------
+    ElectronCountError
+        If the values do not fit the atoms or each other, or cannot be guessed.
+    """
+    place = fragment.source or "fragment"
+    total = _charge(fragment, coordination, charge, unpaired, place)
+    _check_charge(fragment, total.value, place)
+    oxidation = _oxidation_total(coordination, total.value)
+    count = _metal_electrons(fragment, coordination, oxidation, place)
+    spin = _unpaired(fragment, coordination, total.value, unpaired, count, place)
+    return ElectronAssignment(
+        charge=total.value,
+        unpaired_electrons=spin.value,
+        charge_reason=total.reason,
+        unpaired_reason=spin.reason,
+        metal_oxidation_total=oxidation,
+        d_electrons=count,
+    )
+
+
+def _electrons(fragment: Fragment, charge: int) -> int:
+    return sum(atomic_number(symbol) for symbol in fragment.symbols) - charge
+
+
+def _charge(
+    fragment: Fragment, coordination: Coordination, given: int | None, unpaired: int | None, place: str
+) -> _Choice:
+    if given is not None:
+        return _Choice(given, "given")
+    if fragment.charge is not None:
+        return _Choice(fragment.charge, "given in the file")
+    doubtful = [
+        bond for bond in coordination.bonds if bond.kind in (DonorKind.HYDROXO_DOUBTFUL, DonorKind.AQUA_DOUBTFUL)
+    ]
+    if doubtful:
+        raise ElectronCountError(
+            f"no charge is given and {fragment.labels[doubtful[0].donor]} may lack hydrogen ({doubtful[0].kind.value})",
+            place=place,
+            mend="add the hydrogens or give the charge",
+        )
+    unknown = [ligand for ligand in coordination.ligands if ligand.charge is None]
+    if unknown:
+        raise ElectronCountError(
+            f"no charge is given and that of the ligand {unknown[0].formula} cannot be told"
+            f" ({unknown[0].charge_reason})",
+            place=place,
+            mend="give the charge",
+        )
+    return _guessed_charge(fragment, coordination, _stated_unpaired(fragment, unpaired), place)
+
+
+def _guessed_charge(fragment: Fragment, coordination: Coordination, unpaired: int | None, place: str) -> _Choice:
+    ligands = sum(ligand.charge or 0 for ligand in coordination.ligands)
+    guesses = [oxidation_guess(fragment, coordination, metal) for metal in coordination.metals]
+    undecided = next((guess for guess in guesses if guess.state is None), None)
+    if undecided is not None:
+        raise ElectronCountError(
+            f"no charge is given and {undecided.reason}",
+            place=place,
+            mend=f"give the charge{_charge_candidates(fragment, coordination, ligands)}",
+        )
+    charge = ligands + sum(guess.state or 0 for guess in guesses)
+    reasons = "; ".join(guess.reason for guess in guesses)
+    if unpaired is not None and (_electrons(fragment, charge) - unpaired) % 2:
+        raise ElectronCountError(
+            f"no charge is given, and the guess {charge:+d} ({reasons}) does not fit {unpaired} unpaired electrons",
+            place=place,
+            mend="give the charge",
+        )
+    return _Choice(charge, f"guessed: {reasons}; ligands {ligands:+d} in all")
+
+
+def _charge_candidates(fragment: Fragment, coordination: Coordination, ligands: int) -> str:
+    """Charges by the usual oxidation states of a single metal, as words for a message."""
+    if len(coordination.metals) != 1:
+        return ""
+    symbol = fragment.symbols[coordination.metals[0]]
+    states = OXIDATION_STATES.get(symbol, ())
+    listed = ", ".join(f"{ligands + state:+d} for {symbol}({state})" for state in states)
+    return f": {listed}" if listed else ""
+
+
+def _check_charge(fragment: Fragment, charge: int, place: str) -> None:
+    if abs(charge) > MAX_CHARGE or _electrons(fragment, charge) < 0:
+        raise ElectronCountError(
+            f"charge {charge:+d} is impossible for {fragment.formula}", place=place, mend="correct the charge"
+        )
+
+
+def _oxidation_total(coordination: Coordination, charge: int) -> int | None:
+    charges = [ligand.charge for ligand in coordination.ligands]
+    return None if None in charges else charge - sum(c for c in charges if c is not None)
+
+
+def _metal_electrons(fragment: Fragment, coordination: Coordination, oxidation: int | None, place: str) -> int | None:
+    """Valence d or f electrons of a single metal; counted ones below zero mean a wrong charge."""
+    if oxidation is None or len(coordination.metals) != 1:
+        return None
+    metal = coordination.metals[0]
+    count = valence_d_or_f_electrons(fragment.symbols[metal], oxidation)
+    if count is not None and count < 0 and _counts_are_firm(coordination):
+        raise ElectronCountError(
+            f"the charge asks for {fragment.symbols[metal]}({oxidation:+d}), {-count} more electrons than the metal"
+            " can lose",
+            place=place,
+            mend="correct the charge, or add missing hydrogens",
+        )
+    return count if count is None or count >= 0 else None
+
+
+def _counts_are_firm(coordination: Coordination) -> bool:
+    """Whether every ligand is one whose closed-shell charge nobody disputes: monatomic or water."""
+    doubtful = {DonorKind.HYDROXO_DOUBTFUL, DonorKind.AQUA_DOUBTFUL}
+    return all(
+        len(ligand.atoms) == 1 or ligand.formula in ("H2O", "H3N") for ligand in coordination.ligands
+    ) and not any(bond.kind in doubtful for bond in coordination.bonds)
+
+
+def _stated_unpaired(fragment: Fragment, given: int | None) -> int | None:
+    return fragment.unpaired_electrons if given is None else given
+
+
+def _unpaired(
+    fragment: Fragment,
+    coordination: Coordination,
+    charge: int,
+    given: int | None,
+    count: int | None,
+    place: str,
+) -> _Choice:
+    electrons = _electrons(fragment, charge)
+    stated = _stated_unpaired(fragment, given)
+    if stated is not None:
+        _check_unpaired(stated, electrons, place)
+        return _Choice(stated, "given" if given is not None else "given in the file")
+    return _guessed_unpaired(fragment, coordination, electrons % 2, count, place)
+
+
+def _check_unpaired(unpaired: int, electrons: int, place: str) -> None:
+    parity = electrons % 2
+    allowed = f"with {electrons} electrons it is {parity}, {parity + 2}, {parity + 4} ..."
+    if unpaired < 0 or unpaired > electrons:
+        raise ElectronCountError(f"{unpaired} unpaired electrons are impossible", place=place, mend=allowed)
+    if unpaired % 2 != parity:
+        raise ElectronCountError(
+            f"{unpaired} unpaired electrons do not fit {electrons} electrons", place=place, mend=allowed
+        )
+
+
+def _guessed_unpaired(
+    fragment: Fragment, coordination: Coordination, parity: int, count: int | None, place: str
+) -> _Choice:
+    if count is None:
+        if _all_empty(fragment, coordination):
+            return _Choice(parity, "guessed: every metal has lost all its d or f electrons")
+        raise ElectronCountError(
+            "unpaired electrons are not given and the metal's electrons cannot be counted",
+            place=place,
+            mend=f"give their number: {parity}, {parity + 2}, {parity + 4} ...",
+        )
+    symbol = fragment.symbols[coordination.metals[0]]
+    f_block = symbol in LANTHANIDES | ACTINIDES
+    shell, size = ("f", 7) if f_block else ("d", 5)
+    most = min(count, 2 * size - count)
+    candidates = [n for n in range(most % 2, most + 1, 2) if n % 2 == parity]
+    if not candidates:
+        raise ElectronCountError(
+            f"unpaired electrons are not given and {shell}{count} by counting does not fit the parity of the electrons",
+            place=place,
+            mend=f"check charge and hydrogens, or give their number: {parity}, {parity + 2} ...",
+        )
+    if len(candidates) == 1:
+        return _Choice(candidates[0], f"only count of {shell}{count}")
+    if f_block:
+        if count in _HUND_F or symbol in LANTHANIDES:
+            return _Choice(candidates[-1], f"guessed: Hund's rule for nonbonding {shell}{count}")
+    elif count <= 2 or (count >= 4 and any(bond.may_be_multiple for bond in coordination.bonds)):
+        others = ", ".join(str(n) for n in candidates[1:])
+        return _Choice(candidates[0], f"guessed: lowest for {shell}{count}; {others} is possible too: give it if so")
+    raise ElectronCountError(
+        f"unpaired electrons are not given for {shell}{count}",
+        place=place,
+        mend=f"give their number: {' or '.join(str(n) for n in candidates)}",
+    )
+
+
+def _all_empty(fragment: Fragment, coordination: Coordination) -> bool:
+    """Whether every metal sits in its highest, d0 or f0, state by bond valences, and none is left to count."""
+    if len(coordination.metals) < 2:
+        return False
+    for metal in coordination.metals:
+        state = oxidation_guess(fragment, coordination, metal).state
+        if state is None or valence_d_or_f_electrons(fragment.symbols[metal], state) != 0:
+            return False
+    return True

@@ -1,0 +1,137 @@
+"""From a file to fragments: XYZ, extended XYZ, CIF, and further formats that ASE reads."""
+
+from __future__ import annotations
+
+import os
+import re
+from pathlib import Path
+from typing import TYPE_CHECKING, Final
+
+import numpy as np
+
+from ehmo.errors import InputError, LimitError
+from ehmo.records.fragment import Fragment
+from ehmo.structure.electron_keys import StatedElectrons, comment_pairs, stated_electrons
+from ehmo.structure.files import MAX_ATOMS, MAX_BYTES, read_text, shown
+from ehmo.structure.periodic import PeriodicCell, molecules_with_metals
+from ehmo.structure.xyz import XyzFrame, extended_atoms, plain_fragment, split_frames
+
+if TYPE_CHECKING:
+    from ase import Atoms
+
+ASE_FORMATS: Final = frozenset({"aims", "gen", "mol", "proteindatabank", "sdf", "turbomole", "vasp", "xsf"})
+"""Text formats left to ASE; others are refused, since some of its readers run or unpickle what they read."""
+
+
+def read_frames(
+    path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes: int = MAX_BYTES
+) -> tuple[Fragment, ...]:
+    """Fragments of a file.
+
+    Parameters
+    ----------
+    path : str or path-like
+        XYZ, extended XYZ or CIF, told by suffix or content; else a text format that ASE knows.
+    max_atoms : int
+        Largest number of atoms in a frame or a crystal cell.
+    max_bytes : int
+        Largest file size [byte].
+
+    Returns
+    -------
+    fragments : tuple of Fragment
+        One per frame of XYZ, one per whole molecule with a metal of a crystal. Charge and unpaired electrons are None
+        where the file does not state them.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be read as a molecule; the message names the place and the mend.
+    LimitError
+        If the file or a frame is over a limit.
+    """
+    path = Path(path)
+    text = read_text(path, max_bytes)
+    place = shown(path, 200)
+    kind = _kind(path, text)
+    if kind == "cif":
+        from ehmo.structure.cif import cif_fragments
+
+        return cif_fragments(text, place, max_atoms)
+    if kind == "xyz":
+        frames = split_frames(text, place, max_atoms)
+        return tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
+    return _ase_fragments(path, place, max_atoms)
+
+
+def _kind(path: Path, text: str) -> str:
+    suffix = path.suffix.lower()
+    if suffix in (".cif", ".mcif"):
+        return "cif"
+    if suffix in (".xyz", ".extxyz"):
+        return "xyz"
+    if re.search(r"^_cell[_.]length_a\s", text, re.MULTILINE) and re.search(r"^data_", text, re.MULTILINE):
+        return "cif"
+    lines = text.split("\n", 3)
+    if re.fullmatch(r"\s*\d{1,9}\s*", lines[0]) and len(lines) > 2 and len(lines[2].split()) >= 4:
+        return "xyz"
+    return "other"
+
+
+def _frame_fragments(frame: XyzFrame, place: str) -> tuple[Fragment, ...]:
+    if not frame.extended:
+        return (plain_fragment(frame, place),)
+    stated = stated_electrons(comment_pairs(frame.comment), f"{place}, line {frame.first_line + 1}")
+    source = place if frame.number == 1 else f"{place}, frame {frame.number}"
+    return _fragments_of(extended_atoms(frame, place), source, frame.comment, stated)
+
+
+def _fragments_of(atoms: Atoms, source: str, title: str, stated: StatedElectrons) -> tuple[Fragment, ...]:
+    """Fragments of ASE atoms: the atoms as they stand, or the molecules of a cell periodic in three directions."""
+    if not np.isfinite(atoms.positions).all():
+        bad = int(np.flatnonzero(~np.isfinite(atoms.positions).all(axis=1))[0])
+        raise InputError(
+            f"non-finite coordinates at atom {bad + 1}",
+            place=source,
+            mend="give every coordinate as a number",
+        )
+    if atoms.pbc.all():
+        labels = tuple(f"{symbol}{k}" for k, symbol in enumerate(atoms.get_chemical_symbols(), start=1))
+        if "X" in atoms.get_chemical_symbols():
+            raise InputError("unknown element", place=source, mend="write chemical symbols such as V or O")
+        found = molecules_with_metals(PeriodicCell(atoms, np.ones(len(atoms), bool), labels, source, title))
+        if len(found) > 1 or len(found[0]) < len(atoms):
+            # The stated charge belongs to all the atoms, so it is no molecule's own.
+            return found
+    else:
+        found = (Fragment(tuple(atoms.get_chemical_symbols()), atoms.positions, title=title, source=source),)
+    one = found[0]
+    return (Fragment(one.symbols, one.positions_A, stated.charge, stated.unpaired_electrons, title, source, one.notes),)
+
+
+def _ase_fragments(path: Path, place: str, max_atoms: int) -> tuple[Fragment, ...]:
+    from ase.io import read
+    from ase.io.formats import UnknownFileTypeError, filetype
+
+    try:
+        name = filetype(path)
+    except (UnknownFileTypeError, OSError, ValueError, KeyError):
+        name = "unknown"
+    if name not in ASE_FORMATS:
+        raise InputError("unknown file format", place=place, mend="give XYZ (suffix .xyz) or CIF (suffix .cif)")
+    try:
+        frames = read(path, index=":", format=name)
+    except Exception as error:
+        raise InputError(f"cannot be read as {name} ({shown(error)})", place=place, mend="convert it to XYZ") from error
+    if not frames:
+        raise InputError("no atoms", place=place, mend="give a file with atoms")
+    if max(map(len, frames)) > max_atoms:
+        raise LimitError(
+            f"{max(map(len, frames))} atoms, the limit is {max_atoms}", place=place, mend="raise max_atoms"
+        )
+    found: list[Fragment] = []
+    for number, atoms in enumerate(frames, start=1):
+        source = place if len(frames) == 1 else f"{place}, frame {number}"
+        stated = stated_electrons(((str(key), value) for key, value in atoms.info.items()), source)
+        found += _fragments_of(atoms, source, str(atoms.info.get("name", path.stem)), stated)
+    return tuple(found)
