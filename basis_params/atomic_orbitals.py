@@ -87,7 +87,5 @@ def atomic_orbital(symbol: str, n: int, l: int) -> AtomicOrbitalData:
     average-atom
     """
     if (symbol, n, l) not in _orbitals():
-        raise KeyError(
-            f"no computed orbital n = {n}, l = {l} of {symbol!a}: the table has the shells of `standard`"
-        )
+        raise KeyError(f"no computed orbital n = {n}, l = {l} of {symbol!a}: the table has the shells of `standard`")
     return _orbitals()[symbol, n, l]

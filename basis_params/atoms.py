@@ -108,7 +108,5 @@ def ionisation_energy(symbol: str, charge: int) -> float:
     nist-asd
     """
     if (symbol, charge) not in _ionisation():
-        raise KeyError(
-            f"no ionisation energy to charge {charge} of {symbol!a}: the table has 1 to 8, H to Cm"
-        )
+        raise KeyError(f"no ionisation energy to charge {charge} of {symbol!a}: the table has 1 to 8, H to Cm")
     return _ionisation()[symbol, charge]

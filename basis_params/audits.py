@@ -80,9 +80,7 @@ def audit(table: ParameterTable) -> AuditReport:
     KeyError
         If the table has an element beyond the atomic data (H to Cm).
     """
-    return AuditReport(
-        table.name, tuple(row for element in table.elements.values() for row in _element(element))
-    )
+    return AuditReport(table.name, tuple(row for element in table.elements.values() for row in _element(element)))
 
 
 def _element(element: ElementParameters) -> Iterator[AuditRow]:

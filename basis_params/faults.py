@@ -30,7 +30,8 @@ class ParameterFileError(ValueError):
     def __str__(self) -> str:
         more = len(self.faults) - FAULTS_SHOWN
         tail = f"; and {more} more" if more > 0 else ""
-        return f"{self.origin}: " + "; ".join(self.faults[:FAULTS_SHOWN]) + tail
+        origin = self.origin if self.origin.isprintable() else ascii(self.origin)
+        return f"{origin}: " + "; ".join(self.faults[:FAULTS_SHOWN]) + tail
 
 
 def shown(text: str) -> str:
@@ -68,7 +69,7 @@ def read_text(path: Path) -> str:
     FileNotFoundError, ParameterFileError
     """
     if not path.exists():
-        raise FileNotFoundError(f"{path}: no such file: check the path of the table")
+        raise FileNotFoundError(f"{str(path)!a}: no such file: check the path of the table")
     if not path.is_file():
         raise ParameterFileError(str(path), ("not a file: give the path of a CSV table",))
     if path.stat().st_size > MAX_BYTES:

@@ -2,100 +2,139 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cache
+from typing import Any, TypeVar
 
 from basis_params.model import Provenance
 from basis_params.rows import side_table
 
-IonKey = tuple[str, int]
 
-
-@dataclass(frozen=True, slots=True)
-class IonConstants:
-    """Constants of one kind for one free ion, with their source.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FreeIon:
+    """A free ion and the source of the constants that a subclass adds.
 
     Attributes
     ----------
     symbol : str
     charge : int
-    values_per_cm : tuple of float
-        (B, C), (zeta,) or (mean pairing energy,) [cm^-1].
     source_key, locator : str
     provenance : {"read", "memory", "derived"}
     """
 
     symbol: str
     charge: int
-    values_per_cm: tuple[float, ...]
     source_key: str
     locator: str
     provenance: Provenance
 
 
-@cache
-def _ions(table: str, *columns: str) -> Mapping[IonKey, IonConstants]:
-    return {
-        (row["symbol"], int(row["charge"])): IonConstants(
-            symbol=row["symbol"],
-            charge=int(row["charge"]),
-            values_per_cm=tuple(float(row[column]) for column in columns),
-            source_key=row["source_key"],
-            locator=row["locator"],
-            provenance=row["provenance"],  # type: ignore[arg-type]
-        )
-        for row in side_table(table)
-    }
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RacahParameters(FreeIon):
+    """Racah parameters `B_per_cm` and `C_per_cm` of a d shell [cm^-1]."""
+
+    B_per_cm: float
+    C_per_cm: float
 
 
-def _find(ions: Mapping[IonKey, IonConstants], what: str, symbol: str, charge: int) -> IonConstants:
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SpinOrbitConstant(FreeIon):
+    """One-electron spin-orbit constant `zeta_per_cm` of the d shell, 5f in actinides [cm^-1]."""
+
+    zeta_per_cm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PairingEnergy(FreeIon):
+    """Mean spin-pairing energy `pairing_energy_per_cm` of a d shell [cm^-1]."""
+
+    pairing_energy_per_cm: float
+
+
+Constants = TypeVar("Constants", bound=FreeIon)
+
+
+def racah(symbol: str, charge: int) -> RacahParameters:
+    """Return the Racah parameters of a free d1 to d9 ion.
+
+    Raises
+    ------
+    KeyError
+        If the table has no such ion.
+
+    References
+    ----------
+    griffith-1961, jorgensen-1969
+    """
+    return _find(_racah(), "Racah parameters", symbol, charge)
+
+
+def spin_orbit(symbol: str, charge: int) -> SpinOrbitConstant:
+    """Return the one-electron spin-orbit constant of a free ion.
+
+    Raises
+    ------
+    KeyError
+        If the table has no such ion.
+
+    References
+    ----------
+    dunn-1961, goodman-1970
+    """
+    return _find(_spin_orbit(), "spin-orbit constant", symbol, charge)
+
+
+def pairing_energy(symbol: str, charge: int) -> PairingEnergy:
+    """Return the mean spin-pairing energy of a free d2 to d8 ion.
+
+    Raises
+    ------
+    KeyError
+        If the table has no such ion.
+
+    References
+    ----------
+    griffith-1961, jorgensen-1969
+    """
+    return _find(_pairing(), "pairing energy", symbol, charge)
+
+
+def _find(ions: Mapping[tuple[str, int], Constants], what: str, symbol: str, charge: int) -> Constants:
     if (symbol, charge) not in ions:
-        charges = ", ".join(f"{q}+" for s, q in ions if s == symbol) or "none"
+        charges = ", ".join(f"{q}+" for q in sorted(q for s, q in ions if s == symbol)) or "none"
         raise KeyError(f"no {what} for {symbol!a} {charge}+: charges held for it are {charges}")
     return ions[symbol, charge]
 
 
-def racah(symbol: str, charge: int) -> IonConstants:
-    """Return the Racah parameters (B, C) of a free d ion [cm^-1].
-
-    Raises
-    ------
-    KeyError
-        If the table has no such ion.
-
-    References
-    ----------
-    griffith-1961, jorgensen-1969
-    """
-    return _find(_ions("racah", "B_per_cm", "C_per_cm"), "Racah parameters", symbol, charge)
+@cache
+def _racah() -> Mapping[tuple[str, int], RacahParameters]:
+    return _by_ion(
+        RacahParameters(**_ion(row), B_per_cm=float(row["B_per_cm"]), C_per_cm=float(row["C_per_cm"]))
+        for row in side_table("racah")
+    )
 
 
-def spin_orbit(symbol: str, charge: int) -> IonConstants:
-    """Return the one-electron spin-orbit constant (zeta,) of the d (or 5f) shell of a free ion [cm^-1].
-
-    Raises
-    ------
-    KeyError
-        If the table has no such ion.
-
-    References
-    ----------
-    dunn-1961
-    """
-    return _find(_ions("spin_orbit", "zeta_per_cm"), "spin-orbit constant", symbol, charge)
+@cache
+def _spin_orbit() -> Mapping[tuple[str, int], SpinOrbitConstant]:
+    return _by_ion(
+        SpinOrbitConstant(**_ion(row), zeta_per_cm=float(row["zeta_per_cm"])) for row in side_table("spin_orbit")
+    )
 
 
-def pairing_energy(symbol: str, charge: int) -> IonConstants:
-    """Return the mean spin-pairing energy (P,) of a free d^2 to d^8 ion [cm^-1].
+@cache
+def _pairing() -> Mapping[tuple[str, int], PairingEnergy]:
+    return _by_ion(
+        PairingEnergy(**_ion(row), pairing_energy_per_cm=float(row["pairing_energy_per_cm"]))
+        for row in side_table("pairing")
+    )
 
-    Raises
-    ------
-    KeyError
-        If the table has no such ion.
 
-    References
-    ----------
-    griffith-1961, jorgensen-1969
-    """
-    return _find(_ions("pairing", "pairing_energy_per_cm"), "pairing energy", symbol, charge)
+def _by_ion(rows: Iterable[Constants]) -> Mapping[tuple[str, int], Constants]:
+    return {(row.symbol, row.charge): row for row in rows}
+
+
+def _ion(row: Mapping[str, str]) -> dict[str, Any]:
+    """Return the fields of `FreeIon` in one row."""
+    text = {key: row[key] for key in ("symbol", "source_key", "locator", "provenance")}
+    return {**text, "charge": int(row["charge"])}

@@ -29,7 +29,8 @@ OPTIONAL_COLUMNS = ("zeta3", "c3", "h_ii_sd_eV", "zeta_sd")
 CHANNEL_KEYS = ("K_sigma", "K_pi", "K_delta")
 SETTING_KEYS = ("K", "weighting", *CHANNEL_KEYS, "K_decay_per_A", "lambda")
 SD_KEYS = tuple(f"{key}_sd" for key in SETTING_KEYS if key != "weighting")
-HEADER_KEYS = ("name", "edition", *SETTING_KEYS, *SD_KEYS)
+TEXT_KEYS = ("name", "edition")
+HEADER_KEYS = (*TEXT_KEYS, *SETTING_KEYS, *SD_KEYS)
 NORM_TOLERANCE = 2e-3
 UNSTATED_EDITION = "unstated"
 
@@ -56,9 +57,7 @@ def read_table(path: str | Path, base: ParameterTable | None = None) -> Paramete
     return parse_table(read_text(path), origin=str(path), default_name=path.stem, base=base)
 
 
-def parse_table(
-    text: str, origin: str, default_name: str, base: ParameterTable | None = None
-) -> ParameterTable:
+def parse_table(text: str, origin: str, default_name: str, base: ParameterTable | None = None) -> ParameterTable:
     """Build a table from CSV text; see `read_table`.
 
     Raises
@@ -67,18 +66,16 @@ def parse_table(
     """
     faults = FaultList(origin)
     lines = text.splitlines()
-    head = next(
-        (i for i, line in enumerate(lines) if line.strip() and not line.lstrip().startswith("#")), len(lines)
-    )
+    head = next((i for i, line in enumerate(lines) if line.strip() and not line.lstrip().startswith("#")), len(lines))
     keys, notes = _split_head(lines[:head], faults)
     settings, inherited = _settings(keys, base, faults)
     header, rows = split_rows("\n".join(lines[head:]), head + 1, faults)
     _check_columns(header, head + 1, faults)
     faults.raise_if_any()
     elements = _elements(rows, faults)
-    faults.raise_if_any()
-    _, name = keys.get("name", (0, default_name))
+    name = keys["name"][1] if "name" in keys else plain_text(default_name, "name", 1, faults)
     _, edition = keys.get("edition", (0, UNSTATED_EDITION))
+    faults.raise_if_any()
     return ParameterTable(name, edition, settings, elements, inherited, notes, origin)
 
 
@@ -99,7 +96,7 @@ def _split_head(lines: list[str], faults: FaultList) -> tuple[dict[str, tuple[in
         elif key in keys:
             faults.add(line, f"{key} is set twice: keep one (first on line {keys[key][0]})")
         else:
-            keys[key] = (line, plain_text(value, key, line, faults))
+            keys[key] = (line, plain_text(value, key, line, faults) if key in TEXT_KEYS else value)
     return keys, tuple(notes)
 
 
@@ -110,7 +107,7 @@ def _settings(
     missing = tuple(key for key in SETTING_KEYS if key not in keys)
     if missing and base is None:
         faults.add(1, f"missing header keys: add '# key = value' lines for {', '.join(missing)}")
-        return ModelSettings(1.75, True, None, None, None, 0.0, 0.0), missing
+        faults.raise_if_any()
     values: dict[str, float | bool | None] = {}
     sd: dict[str, float] = {}
     for key in SETTING_KEYS:
@@ -122,7 +119,7 @@ def _settings(
             values[attribute] = _setting(key, *keys[key], faults)
     for key in SD_KEYS:
         if key in keys:
-            sd[key.removesuffix("_sd")] = _at_least(0.0, key, *keys[key], faults)
+            sd[key.removesuffix("_sd")] = _not_negative(key, *keys[key], faults)
     return ModelSettings(**values, sd=sd), missing  # type: ignore[arg-type]
 
 
@@ -133,13 +130,13 @@ def _setting(key: str, line: int, text: str, faults: FaultList) -> float | bool 
         return text == "yes"
     if key in CHANNEL_KEYS and text == "K":
         return None
-    return _at_least(0.0, key, line, text, faults)
+    return _not_negative(key, line, text, faults)
 
 
-def _at_least(low: float, what: str, line: int, text: str, faults: FaultList) -> float:
+def _not_negative(what: str, line: int, text: str, faults: FaultList) -> float:
     value = number(text, what, line, faults)
-    if value < low:
-        faults.add(line, f"{what} is {shown(text)}: it must be {low:g} or more")
+    if value < 0:
+        faults.add(line, f"{what} is {shown(text)}: it must be 0 or more")
     return value
 
 
@@ -158,12 +155,14 @@ def _elements(rows: list[Row], faults: FaultList) -> dict[str, ElementParameters
     """Group the rows by element, in the order of atomic numbers."""
     shells: dict[str, dict[tuple[int, int], Shell]] = {}
     electrons: dict[str, int] = {}
+    first_line: dict[str, int] = {}
     known = atom_symbols()
     for row in rows:
         symbol = row.cells["element"]
         if symbol not in known:
             faults.add(row.line, f"{shown(symbol)} is no element from H to Cm: correct the symbol")
             continue
+        first_line.setdefault(symbol, row.line)
         count = _whole("valence_electrons", row, faults)
         if electrons.setdefault(symbol, count) != count:
             faults.add(row.line, f"{symbol} has {electrons[symbol]} valence electrons above and {count} here")
@@ -176,7 +175,7 @@ def _elements(rows: list[Row], faults: FaultList) -> dict[str, ElementParameters
     for symbol, count in electrons.items():
         room = sum(4 * l + 2 for _, l in shells[symbol])
         if not 0 < count <= room:
-            faults.add(1, f"{symbol} has {count} valence electrons for shells that hold 1 to {room}")
+            faults.add(first_line[symbol], f"{symbol} has {count} valence electrons for shells that hold 1 to {room}")
     return {s: ElementParameters(s, electrons[s], tuple(shells[s].values())) for s in known if s in shells}
 
 
@@ -192,7 +191,7 @@ def _shell(symbol: str, row: Row, faults: FaultList) -> Shell:
     if provenance not in words:
         faults.add(line, f"read_or_memory is {shown(provenance)}: write {', '.join(words)}")
     spread = {
-        key: _at_least(0.0, key, line, cells[key], faults) if cells.get(key) else None
+        key: _not_negative(key, line, cells[key], faults) if cells.get(key) else None
         for key in ("h_ii_sd_eV", "zeta_sd")
     }
     return Shell(
@@ -208,9 +207,7 @@ def _shell(symbol: str, row: Row, faults: FaultList) -> Shell:
     )
 
 
-def _contraction(
-    symbol: str, n: int, row: Row, faults: FaultList
-) -> tuple[tuple[float, ...], tuple[float, ...]]:
+def _contraction(symbol: str, n: int, row: Row, faults: FaultList) -> tuple[tuple[float, ...], tuple[float, ...]]:
     """Exponents and coefficients of one row, held against the norm rule."""
     before = len(faults.faults)
     zetas: list[float] = []
@@ -230,7 +227,7 @@ def _contraction(
         faults.add(row.line, f"{symbol}: exponents must be positive: correct zeta1 ... (bohr^-1)")
     if len(faults.faults) == before:
         norm = radial_moment(n, zetas, coefficients, 0)
-        if abs(norm - 1.0) > NORM_TOLERANCE:
+        if not abs(norm - 1.0) <= NORM_TOLERANCE:  # true for a NaN as well
             faults.add(
                 row.line,
                 f"{symbol}: the norm of the function is {norm:.4f}, not 1 within {NORM_TOLERANCE}: "

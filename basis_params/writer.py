@@ -29,9 +29,7 @@ def format_table(table: ParameterTable) -> str:
 
 
 def _cells(element: ElementParameters, shell: Shell) -> list[str | int | float]:
-    contraction: list[str | float] = [
-        x for pair in zip(shell.zetas, shell.coefficients, strict=True) for x in pair
-    ]
+    contraction: list[str | float] = [x for pair in zip(shell.zetas, shell.coefficients, strict=True) for x in pair]
     contraction += [""] * (6 - len(contraction))
     spread: list[str | float] = ["" if sd is None else sd for sd in (shell.h_ii_sd_eV, shell.zeta_sd)]
     return [

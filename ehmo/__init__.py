@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
-    from ehmo.structure import read, read_frames
+    from ehmo.structure import from_ase, read, read_frames
 
 __version__ = "0.1.0"
 
@@ -25,6 +25,7 @@ _HOMES = {
     "Fragment": "ehmo.records.fragment",
     "Options": "ehmo.records.options",
     "bond_report": "ehmo.calculate",
+    "from_ase": "ehmo.structure",
     "read": "ehmo.structure",
     "read_frames": "ehmo.structure",
 }
@@ -36,6 +37,7 @@ __all__ = [
     "Options",
     "__version__",
     "bond_report",
+    "from_ase",
     "read",
     "read_frames",
 ]

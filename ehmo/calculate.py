@@ -267,10 +267,10 @@ def _spin_warning(fragment: Fragment, coordination: Coordination, bonding: Bondi
     if on_metal >= 0.5:
         return ""
     difference = bonding.state.occupations[0] - bonding.state.occupations[1]
-    shares = bonding.populations.orbital_shares
-    outside = np.delete(shares, list(coordination.metals), axis=0).sum(axis=0)
-    worst = int((difference * outside).argmax())
-    atom = int(shares[:, worst].argmax())
+    worst = int((difference * (1 - bonding.populations.orbital_shares[:, 0])).argmax())
+    coefficients = bonding.state.coefficients[:, worst]
+    gross = coefficients * (bonding.overlap.matrix @ coefficients)
+    atom = int(np.add.reduceat(gross, bonding.plan.basis.atom_start[:-1]).argmax())
     return (
         f"only {100 * on_metal:.0f} % of the unpaired density is on the metal: orbital {worst + 1} holds an unpaired "
         f"electron and lies mostly on {atom_label(fragment.symbols[atom], atom)}; check the spin state"

@@ -62,9 +62,7 @@ def _sphere(metal: str, donors: list[tuple[str, float, float, float]]) -> Molecu
     return molecule
 
 
-def _apical(
-    metal: str, apex: tuple[str, float], base: tuple[str, float], angle: float, fold: int
-) -> Molecule:
+def _apical(metal: str, apex: tuple[str, float], base: tuple[str, float], angle: float, fold: int) -> Molecule:
     """A short apical bond over three or four equal basal donors."""
     turns = AZIMUTHS_3 if fold == 3 else AZIMUTHS_4
     return _sphere(metal, [(*apex, 0.0, 0.0), *((*base, angle, phi) for phi in turns)])
@@ -90,9 +88,7 @@ def _hexaaqua(metal: str, length: float) -> Molecule:
     molecule = Molecule(metal)
     for (theta, phi), toward in zip(OCTAHEDRON, ((1, 0, 0), (1, 0, 0), *4 * ((0, 0, 1),)), strict=True):
         # Th: waters on z lie in xz, on x in xy, on y in yz
-        molecule.water(
-            length, theta, phi, toward=(0, 1, 0) if theta == 90.0 and phi in (0.0, 180.0) else toward
-        )
+        molecule.water(length, theta, phi, toward=(0, 1, 0) if theta == 90.0 and phi in (0.0, 180.0) else toward)
     return molecule
 
 
@@ -242,18 +238,12 @@ def _add_square_pyramids() -> None:
 
 
 def _add_six_coordinate_polyoxo() -> None:
-    cis = [("O", 1.70, 51.0, phi) for phi in (0.0, 180.0)] + [
-        ("Cl", 2.40, 90.0, phi) for phi in (90.0, 270.0)
-    ]
+    cis = [("O", 1.70, 51.0, phi) for phi in (0.0, 180.0)] + [("Cl", 2.40, 90.0, phi) for phi in (90.0, 270.0)]
     cis += [("Cl", 2.60, 138.0, phi) for phi in (0.0, 180.0)]
     _record("cis-[MoO2Cl4]2-", _sphere("Mo", cis), -2, 0, "idealised on O=Mo=O 102; memory")
-    trans = [("O", 1.75, theta, 0.0) for theta in (0.0, 180.0)] + [
-        ("Cl", 2.38, 90.0, phi) for phi in AZIMUTHS_4
-    ]
+    trans = [("O", 1.75, theta, 0.0) for theta in (0.0, 180.0)] + [("Cl", 2.38, 90.0, phi) for phi in AZIMUTHS_4]
     _record("trans-[OsO2Cl4]2-", _sphere("Os", trans), -2, 0, "Kruse, Acta Cryst. 14, 1035 (1961); memory")
-    facial = [("O", 1.75, 58.0, phi) for phi in AZIMUTHS_3] + [
-        ("F", 2.11, 128.0, phi + 180) for phi in AZIMUTHS_3
-    ]
+    facial = [("O", 1.75, 58.0, phi) for phi in AZIMUTHS_3] + [("F", 2.11, 128.0, phi + 180) for phi in AZIMUTHS_3]
     _record("fac-[MoO3F3]3-", _sphere("Mo", facial), -3, 0, "idealised on O=Mo=O 94.5; memory")
     rhenium = _sphere("Re", [("O", 1.703, 106.4, phi) for phi in AZIMUTHS_3])
     rhenium.hydrogens(rhenium.donor("C", 2.074, 0.0), 3)
@@ -298,9 +288,7 @@ def _add_nitrogen_species() -> None:
         "Haaland et al., J. Chem. Soc. Dalton Trans. (1999), gas, Ti-N 1.917; Td core idealised; memory",
     )
     source = "Kime, Ibers, Acta Cryst. B25, 168 (1969), Co-N 1.963; memory"
-    _record(
-        "[Co(NH3)6]3+", _everywhere("Co", OCTAHEDRON, lambda m, t, p: m.ammine(1.963, t, p)), 3, 0, source
-    )
+    _record("[Co(NH3)6]3+", _everywhere("Co", OCTAHEDRON, lambda m, t, p: m.ammine(1.963, t, p)), 3, 0, source)
 
 
 def _add_oxygen_ligands() -> None:
@@ -329,26 +317,20 @@ def _add_oxygen_ligands() -> None:
 def _add_carbon_species() -> None:
     carbene = _sphere("Ta", [("Cl", 2.30, 110.0, phi) for phi in AZIMUTHS_3])
     carbene.hydrogens(carbene.donor("C", 1.90, 0.0), 2, 1.09, 122.0)
-    _record(
-        "Ta(CH2)Cl3", carbene, 0, 0, "Ta=C 1.90, typical of alkylidenes of tantalum(V); idealised; memory"
-    )
+    _record("Ta(CH2)Cl3", carbene, 0, 0, "Ta=C 1.90, typical of alkylidenes of tantalum(V); idealised; memory")
     source = "Mills, Redhouse, J. Chem. Soc. A 1968, 642, Cr-C 2.04; rest idealised; memory"
     fischer = _everywhere("Cr", OCTAHEDRON[1:], lambda m, t, p: m.diatomic("C", "O", (1.89, 1.14), t, p))
     carbon = fischer.donor("C", 2.04, 0.0)
     fischer.methyl(carbon, 1.51, 124.0, 45.0)
     fischer.methyl(fischer.grow("O", carbon, 1.33, 120.0, 225.0), 1.43, 121.0, 180.0)
     _record("Cr(CO)5(C(OMe)Me)", fischer, 0, 0, source)
-    carbyne = _everywhere(
-        "W", TETRAHEDRON[1:], lambda m, t, p: m.methyl(m.donor("O", 1.865, t, p), 1.42, 138.0, 60.0)
-    )
+    carbyne = _everywhere("W", TETRAHEDRON[1:], lambda m, t, p: m.methyl(m.donor("O", 1.865, t, p), 1.42, 138.0, 60.0))
     carbyne.methyl(carbyne.donor("C", 1.758, 0.0), 1.48, 179.9)
     source = "Cotton, Schwotzer, Shamshoum, Organometallics 3, 1770 (1984), W(CPh)(OCMe3)3; idealised; memory"
     _record("W(CCH3)(OCH3)3", carbyne, 0, 0, source)
     simple = _sphere("W", [("Cl", 2.28, 108.0, phi) for phi in AZIMUTHS_3])
     simple.hydrogens(simple.donor("C", 1.76, 0.0), 1, 1.08, 179.9)
-    _record(
-        "W(CH)Cl3", simple, 0, 0, "as W(CCH3)(OCH3)3 with H and Cl in place of the groups; idealised; memory"
-    )
+    _record("W(CH)Cl3", simple, 0, 0, "as W(CCH3)(OCH3)3 with H and Cl in place of the groups; idealised; memory")
     carbonyl = _everywhere("Cr", OCTAHEDRON, lambda m, t, p: m.diatomic("C", "O", (1.914, 1.140), t, p))
     _record("Cr(CO)6", carbonyl, 0, 0, "Jost, Rees, Yelon, Acta Cryst. B31, 2649 (1975), neutron; memory")
 
@@ -363,9 +345,7 @@ def _add_controls() -> None:
     source = "Pratt, Coyle, Ibers, J. Chem. Soc. A 1971, 2146, Co-N-O 119; Co-NH3 idealised; memory"
     _record("[Co(NH3)5(NO)]2+", cobalt, 2, 0, source)
     chloride = [("Cl", 2.170, theta, phi) for theta, phi in TETRAHEDRON]
-    _record(
-        "TiCl4", _sphere("Ti", chloride), 0, 0, "Morino, Uehara, J. Chem. Phys. 45, 4543 (1966), gas; memory"
-    )
+    _record("TiCl4", _sphere("Ti", chloride), 0, 0, "Morino, Uehara, J. Chem. Phys. 45, 4543 (1966), gas; memory")
     chloride = [("Cl", 2.26, theta, phi) for theta, phi in TETRAHEDRON]
     _record("[CoCl4]2-", _sphere("Co", chloride), -2, 3, "Cs3CoCl5, typical; memory")
     fluoride = [("F", 1.86, theta, phi) for theta, phi in OCTAHEDRON]

@@ -64,9 +64,7 @@ class Molecule:
         self.hydrogens(nitrogen, 3, 1.02)
         return nitrogen
 
-    def hydrogens(
-        self, on: int, count: int, length: float = 1.09, angle_deg: float = TETRAHEDRAL_DEG
-    ) -> None:
+    def hydrogens(self, on: int, count: int, length: float = 1.09, angle_deg: float = TETRAHEDRAL_DEG) -> None:
         """`count` hydrogens on an atom, spread over the three staggered (or two planar) places."""
         for k in range(count):
             self.grow("H", on, length, angle_deg, (180.0 if count == 2 else 120.0) * k)

@@ -95,9 +95,7 @@ def matrices(job: Job) -> tuple[OrbitalPlan, np.ndarray, np.ndarray]:
     return plan, overlap, hamiltonian
 
 
-def solve_state(
-    job: Job, plan: OrbitalPlan, overlap: np.ndarray, hamiltonian: np.ndarray
-) -> ElectronicState:
+def solve_state(job: Job, plan: OrbitalPlan, overlap: np.ndarray, hamiltonian: np.ndarray) -> ElectronicState:
     """Orbitals with fixed or self-consistent charges."""
     count = ElectronCount(round(float(plan.basis.core_charges.sum())) - job.charge, job.unpaired)
     if not job.self_consistent:
@@ -121,9 +119,7 @@ def bond(first: int, second: int) -> MetalDonorBond:
 def bonds_from_first_atom(symbols: tuple[str, ...], positions: np.ndarray) -> tuple[MetalDonorBond, ...]:
     """Atom 0 to every heavier-than-hydrogen atom within reach."""
     distances = np.linalg.norm(positions - positions[0], axis=1)
-    return tuple(
-        bond(0, k) for k in range(1, len(symbols)) if symbols[k] != "H" and distances[k] < DONOR_REACH_A
-    )
+    return tuple(bond(0, k) for k in range(1, len(symbols)) if symbols[k] != "H" and distances[k] < DONOR_REACH_A)
 
 
 def shell(n: int, l: int, *zetas: float, coefficients: tuple[float, ...] = (1.0,), h_ii_eV: float = -13.6) -> Shell:

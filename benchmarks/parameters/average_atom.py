@@ -121,9 +121,7 @@ class AverageAtom:
         The part that only an open shell a feels, delta, enters its own block and, weighted so that the
         condition <c|F|a> = 0 is that of the energy, the coupling to the closed shells c of the same l.
         """
-        shells = {
-            (n, l): self._density(l, orbitals[l][:, n - l - 1], q) for (n, l), q in configuration.items() if q
-        }
+        shells = {(n, l): self._density(l, orbitals[l][:, n - l - 1], q) for (n, l), q in configuration.items() if q}
         open_shells = [key for key in shells if configuration[key] < 4 * key[1] + 2]
         densities = np.array([sum(shells.values()), *(shells[key] for key in open_shells)])
         coulomb, exchange = scf.hf.dot_eri_dm(self.eri, densities, hermi=1)
@@ -168,9 +166,7 @@ class AverageAtom:
             history = [*history, (block_diag(*fresh.values()), error)][-DIIS_VECTORS:]
             mixed = _extrapolate(history)
             focks = _split(mixed, fresh)
-        raise RuntimeError(
-            f"{self.mol.atom_symbol(0)} {dict(configuration)}: no convergence in {MAX_CYCLES} cycles"
-        )
+        raise RuntimeError(f"{self.mol.atom_symbol(0)} {dict(configuration)}: no convergence in {MAX_CYCLES} cycles")
 
     def _gradient(self, fock: Array, vectors: Array, l: int, configuration: Configuration) -> Array:
         """Return the Fock couplings between shells of different filling, as a matrix over the basis."""

@@ -68,7 +68,8 @@ def derived_pairing() -> Iterator[str]:
     known = {(r["symbol"], r["charge"]) for r in side_table("pairing") if r["provenance"] != "derived"}
     for _, symbol, charge, d_electrons in ions():
         if (symbol, str(charge)) not in known and 2 <= d_electrons <= 8:
-            energy = round(pairing(d_electrons, *racah(symbol, charge).values_per_cm))
+            ion = racah(symbol, charge)
+            energy = round(pairing(d_electrons, ion.B_per_cm, ion.C_per_cm))
             source = "griffith-1961" if 4 <= d_electrons <= 7 else "jorgensen-1969"
             yield f"{symbol},{charge},{energy},{source},{LOCATOR},derived"
 

@@ -45,9 +45,7 @@ Configuration = dict[tuple[int, int], int]
 def valence_shells(symbol: str) -> Shells:
     """Return the (n, l) that the set `standard` gives, or is to give, the element."""
     source, shift, _ = HOMOLOGUES.get(symbol, (symbol, 0, 0))
-    return tuple(
-        (shell.n + shift, shell.l) for shell in basis_params.load_set("standard").element(source).shells
-    )
+    return tuple((shell.n + shift, shell.l) for shell in basis_params.load_set("standard").element(source).shells)
 
 
 def ground_configuration(symbol: str) -> Configuration:
@@ -69,7 +67,7 @@ def promoted(ground: Configuration, empty: tuple[int, int], valence: Shells) -> 
 
 
 def valence_orbitals(symbol: str) -> dict[str, list[AtomicOrbital]]:
-    """Return the valence orbitals by configuration: the ground state, and one promoted for each empty shell."""
+    """Return the valence orbitals by configuration: ground state, and one promoted for each empty shell."""
     valence, ground = valence_shells(symbol), ground_configuration(symbol)
     empty = [shell for shell in valence if not ground.get(shell)]
     atom = AverageAtom(symbol, max(l for _, l in (*ground, *valence)))

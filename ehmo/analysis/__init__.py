@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
+from ehmo.analysis.bonded import bonded_functions
 from ehmo.analysis.bonds import bond_orders
 from ehmo.analysis.populations import mulliken
 from ehmo.records.arrays import FloatArray
@@ -43,7 +44,7 @@ def analyse_bonding(
     orders : tuple of BondOrders
         In the order of `bonds`.
     """
-    overlap_orbitals = overlap.matrix @ state.coefficients
-    populations = mulliken(state, overlap.matrix, overlap_orbitals, basis)
-    orders = bond_orders(bonds, positions_A, basis, overlap, overlap_orbitals, state, populations)
+    bonded = bonded_functions(bonds, basis, overlap, state)
+    populations = mulliken(state, overlap.matrix, basis, bonded)
+    orders = bond_orders(bonds, positions_A, basis, bonded, state, populations.atom_overlap)
     return populations, orders

@@ -6,22 +6,22 @@ from collections.abc import Sequence
 
 import numpy as np
 
+from ehmo.analysis.bonded import BondedFunctions
 from ehmo.analysis.channels import bond_channels
 from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.records.basis import Basis
-from ehmo.records.bonding import BondOrders, Populations
+from ehmo.records.bonding import BondOrders
 from ehmo.records.coordination import MetalDonorBond
-from ehmo.records.electronic import ElectronicState, OverlapSpectrum
+from ehmo.records.electronic import ElectronicState
 
 
 def bond_orders(
     bonds: Sequence[MetalDonorBond],
     positions_A: FloatArray,
     basis: Basis,
-    overlap: OverlapSpectrum,
-    overlap_orbitals: FloatArray,
+    bonded: BondedFunctions,
     state: ElectronicState,
-    populations: Populations,
+    atom_overlap: FloatArray,
 ) -> tuple[BondOrders, ...]:
     """Orders and channels of each bond.
 
@@ -37,14 +37,12 @@ def bond_orders(
         Coordinates [angstrom].
     basis : Basis
         Functions.
-    overlap : OverlapSpectrum
-        S with its eigenvectors.
-    overlap_orbitals : (n_ao, n_mo) ndarray
-        S C.
+    bonded : BondedFunctions
+        Rows of the bonded atoms.
     state : ElectronicState
-        Orbitals and their filling.
-    populations : Populations
-        Gives the overlap populations.
+        Filling of the orbitals.
+    atom_overlap : (n_atoms, n_atoms) ndarray
+        Overlap populations [e].
 
     Returns
     -------
@@ -53,9 +51,8 @@ def bond_orders(
 
     References
     ----------
-    .. [1] mayer1983: I. Mayer, Chem. Phys. Lett. 97, 270 (1983).
-    .. [2] wiberg1968: K. B. Wiberg, Tetrahedron 24, 1083 (1968).
-    .. [3] lowdin1950: P.-O. Löwdin, J. Chem. Phys. 18, 365 (1950).
+    .. [1] mayer-1983: I. Mayer, Chem. Phys. Lett. 97, 270 (1983).
+    .. [2] wiberg-1968: K. B. Wiberg, Tetrahedron 24, 1083 (1968).
     """
     if not bonds:
         return ()
@@ -65,22 +62,24 @@ def bond_orders(
     directions /= np.sqrt((directions * directions).sum(axis=1, keepdims=True))
     n_occupied = int(state.occupations[0].nonzero()[0][-1]) + 1
     filling = state.occupations[:, None, None, :n_occupied]
-    occupied, overlap_occupied = state.coefficients[:, :n_occupied], overlap_orbitals[:, :n_occupied]
-    lowdin = _lowdin_orbitals(occupied, overlap, basis, np.concatenate([metals, donors]))
+    occupied = bonded.coefficients[:, :n_occupied]
+    overlap_occupied = bonded.overlap_orbitals[:, :n_occupied]
+    lowdin = bonded.lowdin_orbitals[:, :n_occupied]
     result: dict[int, BondOrders] = {}
     for members in _same_layout(basis, metals, donors):
-        first, second = metals[members], donors[members]
-        on_metal, on_donor = _functions(basis, first), _functions(basis, second)
+        on_metal = _rows(basis, bonded, metals[members])
+        on_donor = _rows(basis, bonded, donors[members])
         forward = _between(occupied, overlap_occupied, filling, on_metal, on_donor)
         backward = _between(overlap_occupied, occupied, filling, on_metal, on_donor)
-        mayer = 2 * (forward * backward).sum(axis=(0, 2, 3))
         blocks = _between(lowdin, lowdin, filling, on_metal, on_donor)
+        layouts = basis.layouts[metals[members[0]]], basis.layouts[donors[members[0]]]
+        channels = bond_channels(blocks, directions[members], *layouts)
+        mayer = 2 * (forward * backward).sum(axis=(0, 2, 3))
         wiberg = 2 * (blocks * blocks).sum(axis=(0, 2, 3))
-        channels = bond_channels(blocks, directions[members], basis.layouts[first[0]], basis.layouts[second[0]])
-        orbital_overlap = _orbital_overlaps(state.coefficients, overlap.matrix, on_metal, on_donor)
+        orbital_overlap = _orbital_overlaps(bonded, on_metal, on_donor)
         for place, index in enumerate(members):
             result[index] = BondOrders(
-                overlap_population=float(populations.atom_overlap[metals[index], donors[index]]),
+                overlap_population=float(atom_overlap[metals[index], donors[index]]),
                 mayer=float(mayer[place]),
                 wiberg=float(wiberg[place]),
                 channel_weights=channels.weights[place],
@@ -100,11 +99,11 @@ def _same_layout(basis: Basis, metals: IntArray, donors: IntArray) -> list[list[
     return list(lots.values())
 
 
-def _functions(basis: Basis, atoms: IntArray) -> IntArray:
-    """(n_atoms, n_functions) indices of the functions of atoms with the same layout."""
-    start = basis.atom_start[atoms]
-    functions: IntArray = start[:, None] + np.arange(basis.atom_start[atoms[0] + 1] - start[0])
-    return functions
+def _rows(basis: Basis, bonded: BondedFunctions, atoms: IntArray) -> IntArray:
+    """(n_atoms, n_functions) rows of atoms with the same layout."""
+    n_functions = basis.atom_start[atoms[0] + 1] - basis.atom_start[atoms[0]]
+    rows: IntArray = bonded.start[atoms][:, None] + np.arange(n_functions)
+    return rows
 
 
 def _between(
@@ -115,21 +114,9 @@ def _between(
     return blocks
 
 
-def _lowdin_orbitals(occupied: FloatArray, overlap: OverlapSpectrum, basis: Basis, atoms: IntArray) -> FloatArray:
-    """Rows of S^(1/2) C for the functions of the given atoms; the other rows are zero."""
-    wanted = np.zeros(len(basis.symbols), dtype=bool)
-    wanted[atoms] = True
-    functions = wanted[basis.atom_of].nonzero()[0]
-    half = (overlap.vectors[functions] * np.sqrt(overlap.eigenvalues)) @ overlap.vectors.T
-    rows = np.zeros_like(occupied)
-    rows[functions] = half @ occupied
-    return rows
-
-
-def _orbital_overlaps(
-    coefficients: FloatArray, overlap: FloatArray, on_metal: IntArray, on_donor: IntArray
-) -> FloatArray:
+def _orbital_overlaps(bonded: BondedFunctions, on_metal: IntArray, on_donor: IntArray) -> FloatArray:
     """(n_bonds, n_mo) overlap population of each orbital holding two electrons."""
-    between = overlap[on_metal[:, :, None], on_donor[:, None, :]]
-    overlaps: FloatArray = 4 * (coefficients[on_metal] * (between @ coefficients[on_donor])).sum(axis=1)
+    between = bonded.overlap[on_metal[:, :, None], on_donor[:, None, :]]
+    products = bonded.coefficients[on_metal] * (between @ bonded.coefficients[on_donor])
+    overlaps: FloatArray = 4 * products.sum(axis=1)
     return overlaps

@@ -49,7 +49,12 @@ def add_calculation_options(parser: argparse.ArgumentParser) -> None:
     constants.add_argument("--weighting", choices=tuple(_SWITCH), help="weighting of K by the difference in energy")
     constants.add_argument("--lambda", type=float, dest="lambda_", metavar="L", help="weight of the charge potential")
     limits = parser.add_argument_group("limits")
-    limits.add_argument("--max-atoms", type=int, default=5000, metavar="N", help="atoms allowed in a file (5000)")
+    limits.add_argument(
+        "--max-atoms", type=int, default=10_000, metavar="N", help="atoms allowed in a frame or cell (10000)"
+    )
+    limits.add_argument(
+        "--max-bytes", type=int, default=100_000_000, metavar="N", help="size allowed of a file (100 million bytes)"
+    )
     limits.add_argument("--max-functions", type=int, default=4000, metavar="N", help="basis functions allowed (4000)")
     limits.add_argument(
         "--max-iterations",
@@ -88,7 +93,7 @@ def run(chosen: argparse.Namespace) -> str:
 
     options = calculation_options(chosen)
     table = load_parameters(chosen.params)
-    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms)
+    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
     reports = [bond_report(fragment, table, options) for fragment in fragments]
     return present(reports, chosen.json)
 

@@ -52,9 +52,8 @@ def fixed_charges(
     """
     energies, coefficients = solve(hamiltonian, overlap, basis)
     occupations = fill(energies, electrons.total, electrons.unpaired)
-    charges = mulliken_charges(coefficients, overlap, occupations.sum(axis=0), basis)
     energy = float(energies @ occupations.sum(axis=0))
-    return ElectronicState(energies, coefficients, occupations, charges, energy, "fixed", 1, 0.0)
+    return ElectronicState(energies, coefficients, occupations, energy, "fixed", 1, 0.0)
 
 
 def self_consistent_charges(
@@ -103,9 +102,7 @@ def self_consistent_charges(
         if residual < CHARGE_TOLERANCE:
             gross = basis.core_charges - charges
             energy = float(energies @ filling - gross @ potential + 0.5 * charges @ interaction_eV @ charges)
-            return ElectronicState(
-                energies, coefficients, occupations, charges, energy, "self-consistent", iteration, residual
-            )
+            return ElectronicState(energies, coefficients, occupations, energy, "self-consistent", iteration, residual)
         mixer.update(charges)
     raise ConvergenceError(
         f"the charges still change by {residual:.1e} e after {max_iterations} iterations",

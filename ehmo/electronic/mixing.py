@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from collections import deque
+
 import numpy as np
 
 from ehmo.records.arrays import FloatArray
 
-_RIDGE = 1e-14
+_REPEATED = 1e-10
+"""Steps that add less than this share of a new direction are dropped."""
 
 
 class AndersonMixer:
@@ -29,24 +32,19 @@ class AndersonMixer:
     def __init__(self, start: FloatArray, *, damping: float = 0.5, depth: int = 5) -> None:
         self.value = start
         self._damping = damping
-        self._depth = depth
-        self._steps: list[tuple[FloatArray, FloatArray]] = []
+        self._steps: deque[tuple[FloatArray, FloatArray]] = deque(maxlen=depth)
         self._last: tuple[FloatArray, FloatArray] | None = None
 
     def update(self, image: FloatArray) -> None:
         """Take f(value) and move `value` to the next guess."""
         value, residual = self.value, image - self.value
         if self._last is not None:
-            step = value - self._last[0], residual - self._last[1]
-            self._steps = [*self._steps[-self._depth + 1 :], step]
+            self._steps.append((value - self._last[0], residual - self._last[1]))
         self._last = value, residual
         if self._steps:
             value_steps = np.array([step[0] for step in self._steps])
             residual_steps = np.array([step[1] for step in self._steps])
-            gram = residual_steps @ residual_steps.T
-            # Steps that repeat one another would make the equations singular; the ridge is far below their scale.
-            gram[np.diag_indices_from(gram)] += _RIDGE * np.trace(gram)
-            weights = np.linalg.solve(gram, residual_steps @ residual)
+            weights = np.linalg.lstsq(residual_steps.T, residual, rcond=_REPEATED)[0]
             value = value - weights @ value_steps
             residual = residual - weights @ residual_steps
         self.value = value + self._damping * residual

@@ -32,8 +32,17 @@ def fill(energies_eV: FloatArray, n_electrons: int, unpaired: int) -> FloatArray
     ElectronCountError
         If the electrons do not fit.
     """
+    if n_electrons < 1:
+        raise ElectronCountError(
+            f"the charge leaves {n_electrons} valence electrons, too few for a bond", mend="lower the charge"
+        )
     if (n_electrons - unpaired) % 2 or not 0 <= unpaired <= n_electrons:
-        raise ElectronCountError(f"{n_electrons} valence electrons cannot have {unpaired} unpaired")
+        parity = "odd" if n_electrons % 2 else "even"
+        raise ElectronCountError(
+            f"{n_electrons} valence electrons cannot have {unpaired} unpaired",
+            mend=f"give an {parity} number of unpaired electrons from {n_electrons % 2} to {n_electrons}, "
+            "or another charge",
+        )
     n_alpha = (n_electrons + unpaired) // 2
     if n_alpha > len(energies_eV):
         raise ElectronCountError(

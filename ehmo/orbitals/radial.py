@@ -7,9 +7,14 @@ from dataclasses import dataclass
 from math import factorial, sqrt
 
 from basis_params import Shell
+from ehmo.errors import ParameterError
 
 Primitive = tuple[int, float, float]
 """Principal quantum number n, exponent zeta [bohr^-1], weight of r^(n-1) exp(-zeta r)."""
+
+
+_REPEATED_SHELL = 1e-6
+"""Squared norm left after orthogonalisation below which nothing of a shell remains."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,6 +71,11 @@ def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction
     -------
     functions : tuple of RadialFunction
         In the order of `shells`.
+
+    Raises
+    ------
+    ParameterError
+        If a shell is all but a repetition of an inner one.
     """
     functions: dict[int, RadialFunction] = {}
     for index in sorted(range(len(shells)), key=lambda i: (shells[i].l, shells[i].n)):
@@ -74,6 +84,11 @@ def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction
             projection = function.overlap(inner)
             removed = tuple((n, zeta, -projection * weight) for n, zeta, weight in inner.primitives)
             function = RadialFunction(function.l, function.primitives + removed)
+        if function.overlap(function) < _REPEATED_SHELL:
+            raise ParameterError(
+                f"shell {shells[index].label} repeats an inner shell of the same l",
+                mend="give it another n or exponent, or leave it out",
+            )
         functions[index] = _normalised(function.l, function.primitives)
     return tuple(functions[index] for index in range(len(shells)))
 

@@ -24,7 +24,7 @@ SHORTEST_BOHR = 0.7
 
 LOG_STEP = 0.125
 DEGREE = 8
-_MAX_SEGMENTS = 48  # to 280 bohr: only an exponent below 0.1 would need more
+_MAX_SEGMENTS = 60  # to 1200 bohr: only an exponent below 0.1 would need more
 _BATCH = 6
 
 
@@ -75,7 +75,7 @@ def overlap_table(first: tuple[Shell, ...], second: tuple[Shell, ...]) -> Overla
             break
     else:
         raise ParameterError(
-            "an exponent is too small: its overlaps reach past 250 bohr",
+            "an exponent is too small: its overlaps reach past 1000 bohr",
             mend="use exponents above 0.1 bohr^-1",
         )
     coefficients = to_powers @ np.concatenate(pieces)

@@ -19,36 +19,36 @@ class Populations:
     ----------
     gross, net : (n_ao,) ndarray
         Gross and net population of each function [e].
-    atom_gross : (n_atoms,) ndarray
-        Gross population of each atom [e].
+    charges : (n_atoms,) ndarray
+        Core charge minus gross population, positive = electron poor [e].
     spin : (n_atoms,) ndarray
         Alpha minus beta gross population of each atom [e].
     shell_overlap : (n_shells, n_shells) ndarray
-        Overlap population of each pair of shells, 2 sum P S over both halves; net populations on the diagonal.
+        Overlap population of each pair of shells, 2 sum P S over both halves; net populations on the diagonal [e].
     atom_overlap : (n_atoms, n_atoms) ndarray
-        The same by atoms.
-    orbital_shares : (n_atoms, n_mo) ndarray
-        Gross population of each atom in each orbital holding one electron.
+        The same by atoms [e].
+    orbital_shares : (n_mo, 3) ndarray
+        Share of each orbital on the metals, on the donor atoms and on the rest, by gross population.
     """
 
     gross: FloatArray
     net: FloatArray
-    atom_gross: FloatArray
+    charges: FloatArray
     spin: FloatArray
     shell_overlap: FloatArray
     atom_overlap: FloatArray
     orbital_shares: FloatArray
 
     def __post_init__(self) -> None:
-        n_ao, n_atoms = len(self.gross), len(self.atom_gross)
+        n_ao, n_atoms, n_shells = len(self.gross), len(self.charges), len(self.shell_overlap)
         shapes: dict[str, tuple[int | None, ...]] = {
             "gross": (n_ao,),
             "net": (n_ao,),
-            "atom_gross": (n_atoms,),
+            "charges": (n_atoms,),
             "spin": (n_atoms,),
-            "shell_overlap": (len(self.shell_overlap), len(self.shell_overlap)),
+            "shell_overlap": (n_shells, n_shells),
             "atom_overlap": (n_atoms, n_atoms),
-            "orbital_shares": (n_atoms, n_ao),
+            "orbital_shares": (n_ao, 3),
         }
         for name, shape in shapes.items():
             object.__setattr__(self, name, frozen_floats(getattr(self, name), shape, name))

@@ -9,7 +9,7 @@ from ehmo.records.arrays import FloatArray, frozen_floats
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ElectronicState:
-    """Orbitals, their filling and the charges they give.
+    """Orbitals and their filling.
 
     Attributes
     ----------
@@ -19,8 +19,6 @@ class ElectronicState:
         Column k is orbital k; C^T S C = 1.
     occupations : (2, n_mo) ndarray
         Alpha and beta occupation of each orbital.
-    charges : (n_atoms,) ndarray
-        Mulliken charges, positive = electron poor [e].
     energy_eV : float
         Tr(P H0) plus the charge term; no core repulsion [eV].
     charge_model : str
@@ -34,7 +32,6 @@ class ElectronicState:
     energies_eV: FloatArray
     coefficients: FloatArray
     occupations: FloatArray
-    charges: FloatArray
     energy_eV: float
     charge_model: str
     iterations: int
@@ -46,7 +43,6 @@ class ElectronicState:
         put(self, "energies_eV", frozen_floats(self.energies_eV, (n_mo,), "energies_eV"))
         put(self, "coefficients", frozen_floats(self.coefficients, (n_mo, n_mo), "coefficients"))
         put(self, "occupations", frozen_floats(self.occupations, (2, n_mo), "occupations"))
-        put(self, "charges", frozen_floats(self.charges, (None,), "charges"))
 
     @property
     def homo(self) -> int:

@@ -114,13 +114,6 @@ class BondReport:
         symbols = self.fragment.symbols
         return f"{atom_label(symbols[bond.metal], bond.metal)}-{atom_label(symbols[bond.donor], bond.donor)}"
 
-    def orbital_composition(self) -> FloatArray:
-        """(n_mo, 3) share of each orbital on the metals, on the donor atoms and on the rest."""
-        group = np.full(len(self.fragment), 2)
-        group[[bond.donor for bond in self.coordination.bonds]] = 1
-        group[list(self.coordination.metals)] = 0
-        return np.stack([self.populations.orbital_shares[group == g].sum(axis=0) for g in range(3)], axis=1)
-
     def orbital_overlap(self) -> FloatArray:
         """(n_mo,) metal-donor overlap population of each orbital holding two electrons [e]."""
         total: FloatArray = np.sum([orders.orbital_overlap for orders in self.orders], axis=0)

@@ -107,7 +107,7 @@ def _method(report: BondReport) -> dict[str, Any]:
 
 
 def _orbitals(report: BondReport) -> list[dict[str, Any]]:
-    composition = report.orbital_composition()
+    composition = report.populations.orbital_shares
     overlap = report.orbital_overlap()
     occupations = report.state.occupations
     return [
@@ -129,8 +129,8 @@ def _atoms(report: BondReport) -> list[dict[str, Any]]:
     return [
         {
             "label": label,
-            "mulliken_charge": report.state.charges[k],
-            "gross_population": populations.atom_gross[k],
+            "mulliken_charge": populations.charges[k],
+            "gross_population": report.basis.core_charges[k] - populations.charges[k],
             "net_population": net[k],
             "spin_population": populations.spin[k],
         }

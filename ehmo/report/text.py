@@ -143,11 +143,11 @@ def _charges(report: BondReport) -> list[str]:
     listed = sorted({*report.coordination.metals, *(bond.donor for bond in report.coordination.bonds)})
     rows = [["atom", "charge/e", *(["unpaired/e"] if unpaired else [])]]
     for atom in listed:
-        row = [report.fragment.labels[atom], f"{report.state.charges[atom]:+.2f}"]
+        row = [report.fragment.labels[atom], f"{report.populations.charges[atom]:+.2f}"]
         rows.append([*row, f"{report.populations.spin[atom]:.2f}"] if unpaired else row)
     rest = np.delete(np.arange(len(report.fragment)), listed)
     if len(rest):
-        row = ["all others", f"{report.state.charges[rest].sum():+.2f}"]
+        row = ["all others", f"{report.populations.charges[rest].sum():+.2f}"]
         rows.append([*row, f"{report.populations.spin[rest].sum():.2f}"] if unpaired else row)
     return ["Mulliken charges (positive = electron poor)", *aligned(rows, numeric=(1, 2), indent="  ")]
 
@@ -155,7 +155,7 @@ def _charges(report: BondReport) -> list[str]:
 def _frontier(report: BondReport) -> list[str]:
     """Orbitals round the highest one that holds electrons, topmost first."""
     state = report.state
-    composition, overlap = 100 * report.orbital_composition(), report.orbital_overlap()
+    composition, overlap = 100 * report.populations.orbital_shares, report.orbital_overlap()
     filling = state.occupations.sum(axis=0)
     shown = range(min(state.homo + _FRONTIER, len(filling) - 1), max(state.homo - _FRONTIER, -1), -1)
     gross = local_gross_populations(shown, state.coefficients, report.overlap, report.basis, report.coordination)

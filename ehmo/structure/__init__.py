@@ -3,6 +3,6 @@
 from ehmo.structure.electrons import assign_electrons
 from ehmo.structure.files import MAX_ATOMS, MAX_BYTES
 from ehmo.structure.perceive import perceive
-from ehmo.structure.readers import read_frames
+from ehmo.structure.readers import from_ase, read, read_frames
 
-__all__ = ["MAX_ATOMS", "MAX_BYTES", "assign_electrons", "perceive", "read_frames"]
+__all__ = ["MAX_ATOMS", "MAX_BYTES", "assign_electrons", "from_ase", "perceive", "read", "read_frames"]

@@ -13,6 +13,7 @@ from ehmo.conventions import ELEMENT_SYMBOLS
 from ehmo.errors import InputError, LimitError
 from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.records.fragment import Fragment
+from ehmo.structure.cif_symmetry import item_text, symmetry_operations
 from ehmo.structure.files import shown
 from ehmo.structure.periodic import PeriodicCell, molecules_with_metals
 
@@ -21,9 +22,6 @@ if TYPE_CHECKING:
 
 SAME_SITE_A: Final = 0.1
 """Images of a site closer than this are one atom on a special position [angstrom]."""
-
-MAX_OPERATIONS: Final = 192
-"""Operations of the largest space groups in a conventional cell (International Tables for Crystallography, Vol. A)."""
 
 _SITE_TAGS = (
     "fract_x",
@@ -36,19 +34,6 @@ _SITE_TAGS = (
     "?calc_flag",
 )
 _CELL_TAGS = ("length_a", "length_b", "length_c", "angle_alpha", "angle_beta", "angle_gamma")
-_OPERATION_TAGS = (
-    "_space_group_symop_operation_xyz",
-    "_symmetry_equiv_pos_as_xyz",
-    "_space_group_symop.operation_xyz",
-)
-_NAME_TAGS = (
-    "_space_group_name_Hall",
-    "_symmetry_space_group_name_Hall",
-    "_space_group_name_H-M_alt",
-    "_symmetry_space_group_name_H-M",
-    "_space_group_IT_number",
-    "_symmetry_Int_Tables_number",
-)
 
 
 @dataclass(frozen=True, slots=True)
@@ -66,7 +51,7 @@ def cif_fragments(text: str, place: str, max_atoms: int) -> tuple[Fragment, ...]
     Raises
     ------
     InputError
-        If the text is no CIF, or a block has faulty, disordered or incomplete sites, or none of its molecules is whole.
+        If the text is no CIF, or a block has faulty or disordered sites, or none of its molecules is whole.
     LimitError
         If the cell holds more than `max_atoms` atoms.
     """
@@ -95,24 +80,17 @@ def _block_fragments(block: gemmi.cif.Block, place: str, max_atoms: int) -> tupl
     notes: list[str] = []
     sites = _sites(block, place, notes)
     title = next(
-        (value for tag in ("_chemical_name_common", "_chemical_name_systematic") if (value := _text(block, tag))),
+        (value for tag in ("_chemical_name_common", "_chemical_name_systematic") if (value := item_text(block, tag))),
         block.name,
     )
-    rotations, translations = _operations(block, place)
+    rotations, translations = symmetry_operations(block, place)
     images = _images(sites, rotations, translations, _lattice(block, place), place, max_atoms)
     return molecules_with_metals(images.cell(place, title, tuple(notes)))
 
 
-def _text(block: gemmi.cif.Block, tag: str) -> str:
-    from gemmi import cif
-
-    value = block.find_value(tag)
-    return "" if value is None or cif.is_null(value) else cif.as_string(value)
-
-
 def _sites(block: gemmi.cif.Block, place: str, notes: list[str]) -> list[Site]:
-    """Listed sites that are atoms; every fault of the list is collected into one message."""
-    allowed = _formula_elements(_text(block, "_chemical_formula_sum"))
+    """Sites that are atoms; every fault of the list is collected into one message."""
+    allowed = _formula_elements(item_text(block, "_chemical_formula_sum"))
     sites: list[Site] = []
     faults: dict[str, list[str]] = {}
     skipped: list[str] = []
@@ -131,7 +109,7 @@ def _sites(block: gemmi.cif.Block, place: str, notes: list[str]) -> list[Site]:
             sites.append(Site(label, symbol, xyz))
     if faults:
         parts = (
-            f"{fault}: {', '.join(shown(label, 12) for label in labels[:6])}{' ...' if len(labels) > 6 else ''}"
+            f"{fault}: {', '.join(shown(label, 12) for label in labels[:6])}" + " ..." * (len(labels) > 6)
             for fault, labels in faults.items()
         )
         raise InputError("; ".join(parts), place=place, mend="keep one ordered alternative and name its elements")
@@ -184,62 +162,6 @@ def _lattice(block: gemmi.cif.Block, place: str) -> FloatArray:
     if not usable or max(numbers) > 1e4:
         raise InputError("no usable unit cell", place=place, mend="give the six _cell_length_ and _cell_angle_ items")
     return np.array(gemmi.UnitCell(*numbers).orth.mat.tolist()).T
-
-
-def _operations(block: gemmi.cif.Block, place: str) -> tuple[FloatArray, FloatArray]:
-    """Rotations and translations; the listed operations win over the names, whose settings are often unsaid."""
-    import gemmi
-
-    for tag in _OPERATION_TAGS:
-        column = block.find_values(tag)
-        if column:
-            try:
-                operations = [gemmi.Op(column.str(k)) for k in range(len(column))]
-            except (ValueError, RuntimeError) as error:
-                raise InputError(
-                    f"faulty symmetry operation ({shown(error)})", place=place, mend="correct it"
-                ) from error
-            if len(operations) > MAX_OPERATIONS:
-                raise InputError(
-                    f"{len(operations)} symmetry operations, no space group has more than {MAX_OPERATIONS}",
-                    place=place,
-                    mend="list each operation once",
-                )
-            return _as_arrays(operations)
-    for tag in _NAME_TAGS:
-        name = re.sub(r"[()]", "", _text(block, tag)).strip()
-        group = _space_group(name, "Hall" in tag)
-        if group is not None:
-            return _as_arrays(list(group))
-    raise InputError("no symmetry operations and no known space group", place=place, mend="list the operations, or P 1")
-
-
-def _space_group(name: str, hall: bool) -> gemmi.GroupOps | None:
-    import gemmi
-
-    if not name:
-        return None
-    if hall:
-        try:
-            return gemmi.symops_from_hall(name)
-        except (ValueError, RuntimeError):
-            return None
-    if name.isascii() and name.isdigit():
-        found = gemmi.find_spacegroup_by_number(int(name)) if len(name) <= 3 else None
-    else:
-        found = gemmi.find_spacegroup_by_name(name)
-    return found.operations() if found is not None else None
-
-
-def _as_arrays(operations: list[gemmi.Op]) -> tuple[FloatArray, FloatArray]:
-    """Arrays of the operations with the identity first."""
-    rotations = np.array([operation.rot for operation in operations]) / 24.0
-    translations = np.array([operation.tran for operation in operations]) / 24.0
-    offset = np.abs(rotations - np.eye(3)).sum(axis=(1, 2)) + np.abs(translations % 1.0).sum(axis=1)
-    order = np.argsort(offset > 1e-9, kind="stable")
-    if offset[order[0]] > 1e-9:
-        return np.vstack([np.eye(3)[None], rotations]), np.vstack([np.zeros((1, 3)), translations])
-    return rotations[order], translations[order]
 
 
 @dataclass(slots=True)
@@ -296,7 +218,9 @@ def _images(
         images[0] = site.fractional
         found.add(site, images)
         if len(found.symbols) > max_atoms:
-            raise LimitError(f"the cell holds more than {max_atoms} atoms", place=place, mend="raise max_atoms")
+            raise LimitError(
+                f"the cell holds more than {max_atoms} atoms", place=place, mend="raise max_atoms (--max-atoms)"
+            )
     return found
 
 
@@ -306,6 +230,6 @@ def _distances(a: FloatArray, b: FloatArray, lattice: FloatArray) -> FloatArray:
 
 
 def _first_of_each(images: FloatArray, lattice: FloatArray) -> IntArray:
-    """Indices of images that repeat no earlier one, lattice translations aside."""
+    """Pick the images that repeat no earlier one, lattice translations aside."""
     same = np.triu(_distances(images, images, lattice) < SAME_SITE_A, k=1)
     return np.flatnonzero(~same.any(axis=0))

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from math import exp
 from typing import Final
 
 from basis_params.bond_valence import bond_valence_R0
@@ -16,16 +15,16 @@ LINEAR_DEG: Final = 150.0
 """Imido and nitrosyl ligands bent further than this count as bent [degree]."""
 
 HYDROXO_VALENCE: Final = 1.15
-"""Bare terminal oxygen below this bond valence may be a hydroxo ligand without its hydrogen [valence units]."""
+"""Bare terminal oxygen below this bond valence may be a hydroxo ligand lacking its H [valence units]."""
 
 AQUA_VALENCE: Final = 0.65
 """Bare terminal oxygen below this may be an aqua ligand without its hydrogens [valence units]."""
 
 SUPEROXO_A: Final = 1.38
-"""O-O shorter than this is superoxo (1.28-1.35), longer is peroxo (1.40-1.52) (common practice) [angstrom]."""
+"""O-O is shorter in superoxo (1.28-1.35), longer in peroxo ligands (1.40-1.52) (common practice) [angstrom]."""
 
 ALKYLIDENE_FRACTION: Final = 0.88
-"""Alkylidene metal-carbon bonds are shorter than this times the radii sum, alkyl bonds longer (common practice)."""
+"""Alkylidene bonds are shorter than this times the radii sum, alkyl bonds longer (common practice)."""
 
 _CARBONYL_OXYGEN_A: Final = 1.30  # C=O 1.22, delocalised 1.27, phenolate 1.34, alkoxide 1.41 (common practice)
 _TRIPLE_CN_A: Final = 1.22  # nitrile and cyanide 1.14-1.17, imine 1.28 (common practice)
@@ -90,7 +89,7 @@ class DonorSite:
 
 
 def bond_valence(metal: str, donor: str, length_A: float) -> float | None:
-    """Bond valence exp((R0 - R)/B) with R0 for any oxidation state; None where no R0 is tabulated [valence units].
+    """Bond valence with R0 for any oxidation state; None where no R0 is tabulated [valence units].
 
     References
     ----------
@@ -100,7 +99,7 @@ def bond_valence(metal: str, donor: str, length_A: float) -> float | None:
         row = bond_valence_R0(metal, donor, None)
     except KeyError:
         return None
-    return exp((row.R0_A - length_A) / row.B_A)
+    return row.valence(length_A)
 
 
 def donor_kind(site: DonorSite) -> DonorKind:

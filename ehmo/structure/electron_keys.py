@@ -33,8 +33,8 @@ def comment_pairs(comment: str) -> list[tuple[str, str]]:
 def stated_electrons(pairs: Iterable[tuple[str, object]], place: str) -> StatedElectrons:
     """Charge and unpaired electrons from key-value pairs.
 
-    Keys, in any case: ``charge`` or ``total_charge``; ``unpaired``, ``unpaired_electrons``, ``spin2S`` or ``2S`` for
-    the number of unpaired electrons; ``multiplicity`` or ``mult`` for 2S+1.
+    Keys, in any case: ``charge`` or ``total_charge``; ``unpaired``, ``unpaired_electrons``, ``spin2S`` or ``2S``
+    for the number of unpaired electrons; ``multiplicity`` or ``mult`` for 2S+1.
 
     Raises
     ------

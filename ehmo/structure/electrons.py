@@ -12,8 +12,10 @@ from ehmo.structure.elements import (
     ACTINIDES,
     LANTHANIDES,
     OXIDATION_STATES,
+    TRANSITION_METALS,
     atomic_number,
     valence_d_or_f_electrons,
+    with_state,
 )
 from ehmo.structure.oxidation import oxidation_guess
 
@@ -21,7 +23,6 @@ MAX_CHARGE: Final = 100
 """Charges beyond this are taken for mistakes."""
 
 _HUND_F: Final = (1, 2, 3)
-_NEUTRAL_KINDS: Final = frozenset({DonorKind.CARBONYL, DonorKind.SIDE_ON_CARBON})
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,8 +39,8 @@ def assign_electrons(
 ) -> ElectronAssignment:
     """Charge and unpaired electrons of a fragment.
 
-    What is given here wins over what the file states; what neither gives is guessed, with the reasoning in words, or
-    refused with the candidates named.
+    What is given here wins over what the file states; what neither gives is guessed, with the reasoning in
+    words, or refused with the candidates named.
 
     Parameters
     ----------
@@ -119,7 +120,7 @@ def _guessed_charge(fragment: Fragment, coordination: Coordination, unpaired: in
     reasons = "; ".join(guess.reason for guess in guesses)
     if unpaired is not None and (_electrons(fragment, charge) - unpaired) % 2:
         raise ElectronCountError(
-            f"no charge is given, and the guess {charge:+d} ({reasons}) does not fit {unpaired} unpaired electrons",
+            f"no charge is given; the guess {charge:+d} ({reasons}) does not fit {unpaired} unpaired electrons",
             place=place,
             mend="give the charge",
         )
@@ -132,7 +133,7 @@ def _charge_candidates(fragment: Fragment, coordination: Coordination, ligands: 
         return ""
     symbol = fragment.symbols[coordination.metals[0]]
     states = OXIDATION_STATES.get(symbol, ())
-    listed = ", ".join(f"{ligands + state:+d} for {symbol}({state})" for state in states)
+    listed = ", ".join(f"{ligands + state:+d} for {with_state(symbol, state)}" for state in states)
     return f": {listed}" if listed else ""
 
 
@@ -152,12 +153,11 @@ def _metal_electrons(fragment: Fragment, coordination: Coordination, oxidation: 
     """Valence d or f electrons of a single metal; counted ones below zero mean a wrong charge."""
     if oxidation is None or len(coordination.metals) != 1:
         return None
-    metal = coordination.metals[0]
-    count = valence_d_or_f_electrons(fragment.symbols[metal], oxidation)
+    symbol = fragment.symbols[coordination.metals[0]]
+    count = valence_d_or_f_electrons(symbol, oxidation)
     if count is not None and count < 0 and _counts_are_firm(coordination):
         raise ElectronCountError(
-            f"the charge asks for {fragment.symbols[metal]}({oxidation:+d}), {-count} more electrons than the metal"
-            " can lose",
+            f"the charge asks for {with_state(symbol, oxidation)}, {-count} electrons more than it has",
             place=place,
             mend="correct the charge, or add missing hydrogens",
         )
@@ -165,11 +165,8 @@ def _metal_electrons(fragment: Fragment, coordination: Coordination, oxidation: 
 
 
 def _counts_are_firm(coordination: Coordination) -> bool:
-    """Whether every ligand is one whose closed-shell charge nobody disputes: monatomic or water."""
-    doubtful = {DonorKind.HYDROXO_DOUBTFUL, DonorKind.AQUA_DOUBTFUL}
-    return all(
-        len(ligand.atoms) == 1 or ligand.formula in ("H2O", "H3N") for ligand in coordination.ligands
-    ) and not any(bond.kind in doubtful for bond in coordination.bonds)
+    """Whether every ligand is one whose closed-shell charge nobody disputes: monatomic, water or ammonia."""
+    return all(len(ligand.atoms) == 1 or ligand.formula in ("H2O", "H3N") for ligand in coordination.ligands)
 
 
 def _stated_unpaired(fragment: Fragment, given: int | None) -> int | None:
@@ -189,7 +186,7 @@ def _unpaired(
     if stated is not None:
         _check_unpaired(stated, electrons, place)
         return _Choice(stated, "given" if given is not None else "given in the file")
-    return _guessed_unpaired(fragment, coordination, electrons % 2, count, place)
+    return _guessed_unpaired(fragment, coordination, charge, count, place)
 
 
 def _check_unpaired(unpaired: int, electrons: int, place: str) -> None:
@@ -204,11 +201,12 @@ def _check_unpaired(unpaired: int, electrons: int, place: str) -> None:
 
 
 def _guessed_unpaired(
-    fragment: Fragment, coordination: Coordination, parity: int, count: int | None, place: str
+    fragment: Fragment, coordination: Coordination, charge: int, count: int | None, place: str
 ) -> _Choice:
+    parity = _electrons(fragment, charge) % 2
     if count is None:
-        if _all_empty(fragment, coordination):
-            return _Choice(parity, "guessed: every metal has lost all its d or f electrons")
+        if _all_empty(fragment, coordination, charge):
+            return _Choice(parity, "guessed: no metal has d or f electrons left")
         raise ElectronCountError(
             "unpaired electrons are not given and the metal's electrons cannot be counted",
             place=place,
@@ -221,7 +219,7 @@ def _guessed_unpaired(
     candidates = [n for n in range(most % 2, most + 1, 2) if n % 2 == parity]
     if not candidates:
         raise ElectronCountError(
-            f"unpaired electrons are not given and {shell}{count} by counting does not fit the parity of the electrons",
+            f"unpaired electrons are not given and {shell}{count} by counting does not fit their parity",
             place=place,
             mend=f"check charge and hydrogens, or give their number: {parity}, {parity + 2} ...",
         )
@@ -240,12 +238,14 @@ def _guessed_unpaired(
     )
 
 
-def _all_empty(fragment: Fragment, coordination: Coordination) -> bool:
-    """Whether every metal sits in its highest, d0 or f0, state by bond valences, and none is left to count."""
-    if len(coordination.metals) < 2:
-        return False
+def _all_empty(fragment: Fragment, coordination: Coordination, charge: int) -> bool:
+    """Whether the charge leaves no metal d or f electrons: main-group metals, or every metal in its highest state."""
+    highest = 0
     for metal in coordination.metals:
+        if fragment.symbols[metal] not in TRANSITION_METALS:
+            continue
         state = oxidation_guess(fragment, coordination, metal).state
         if state is None or valence_d_or_f_electrons(fragment.symbols[metal], state) != 0:
             return False
-    return True
+        highest += state
+    return highest in (0, _oxidation_total(coordination, charge))

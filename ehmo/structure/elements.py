@@ -20,30 +20,25 @@ TRANSITION_METALS: Final = _span("Sc", "Zn") | _span("Y", "Cd") | _span("Lu", "H
 """Groups 3 to 12 with the lanthanides and actinides: always metals."""
 
 P_BLOCK_METALS: Final = frozenset({"Al", "Ga", "In", "Tl", "Sn", "Pb", "Bi"})
-"""Metals only in a fragment without a transition metal; beside one they are atoms of a ligand or counter-ion."""
+"""Metals only in a fragment without a transition metal; beside one, atoms of a ligand or counter-ion."""
 
 ALKALI: Final = frozenset({"Li", "Na", "K", "Rb", "Cs", "Fr"})
 ALKALINE_EARTH: Final = frozenset({"Be", "Mg", "Ca", "Sr", "Ba", "Ra"})
 COUNTER_IONS: Final = ALKALI | ALKALINE_EARTH
 """Bare counter-ions, without bonds, unless the fragment has no other metal."""
 
-_VALENCES: Final[dict[str, tuple[int, ...]]] = {
-    "H": (1,),
-    "B": (3,),
-    **dict.fromkeys(("C", "Si", "Ge"), (4,)),
-    "N": (3,),
-    **dict.fromkeys(("P", "As", "Sb"), (3, 5)),
-    "O": (2,),
-    **dict.fromkeys(("S", "Se", "Te"), (2, 4, 6)),
-    "F": (1,),
-    **dict.fromkeys(("Cl", "Br", "I", "At"), (1, 3, 5, 7)),
-    **dict.fromkeys(("Al", "Ga", "In", "Tl"), (3,)),
+_VALENCES: Final[dict[str, tuple[int, int]]] = {
+    **dict.fromkeys(("H", "F"), (1, 1)),
+    **dict.fromkeys(("Cl", "Br", "I", "At"), (1, 7)),
+    "O": (2, 2),
+    **dict.fromkeys(("S", "Se", "Te"), (2, 6)),
+    "N": (3, 3),
+    **dict.fromkeys(("P", "As", "Sb", "Bi"), (3, 5)),
+    **dict.fromkeys(("C", "Si", "Ge"), (4, 4)),
     **dict.fromkeys(("Sn", "Pb"), (2, 4)),
-    "Bi": (3, 5),
-    **dict.fromkeys(("He", "Ne", "Ar", "Kr"), (0,)),
-    "Xe": (0, 2, 4, 6, 8),
+    **dict.fromkeys(("B", "Al", "Ga", "In", "Tl"), (3, 3)),
 }
-"""Covalences of closed-shell main-group atoms (common practice)."""
+"""Lowest and highest covalence of closed-shell main-group atoms (common practice)."""
 
 OXIDATION_STATES: Final[dict[str, tuple[int, ...]]] = {
     "Sc": (3,), "Ti": (2, 3, 4), "V": (2, 3, 4, 5), "Cr": (0, 2, 3, 4, 5, 6), "Mn": (1, 2, 3, 4, 5, 6, 7),
@@ -65,8 +60,8 @@ OXIDATION_STATES: Final[dict[str, tuple[int, ...]]] = {
 def metal_symbols(symbols: Sequence[str]) -> frozenset[str]:
     """Elements that count as metals in a fragment.
 
-    Transition metals, lanthanides and actinides where there are any, else metals of the p block, else those of
-    groups 1 and 2: beside a transition metal the others are counter-ions or atoms of a ligand.
+    Transition metals, lanthanides and actinides where there are any, else metals of the p block, else those
+    of groups 1 and 2: beside a transition metal the others are counter-ions or atoms of a ligand.
     """
     for family in (TRANSITION_METALS, P_BLOCK_METALS, COUNTER_IONS):
         present = family.intersection(symbols)
@@ -101,11 +96,34 @@ def atomic_number(symbol: str) -> int:
 
 
 def covalence(symbol: str, n_bonds: int) -> int | None:
-    """Lowest closed-shell covalence that holds so many sigma bonds, else the highest; None for other elements."""
-    valences = _VALENCES.get(symbol)
-    if valences is None:
+    """Covalence of a main-group atom with so many sigma bonds; None for other elements.
+
+    Each bond beyond the lowest covalence brings a further electron pair into play, up to the highest: sulfur with two,
+    three and four neighbours has 2, 4 and 6 (sulfide, sulfite, sulfate).
+
+    Examples
+    --------
+    >>> covalence("S", 4), covalence("Cl", 3), covalence("N", 4)
+    (6, 5, 3)
+    """
+    if symbol not in _VALENCES:
         return None
-    return next((valence for valence in valences if valence >= n_bonds), valences[-1])
+    low, high = _VALENCES[symbol]
+    return min(low + 2 * max(n_bonds - low, 0), high)
+
+
+def with_state(symbol: str, oxidation_state: int) -> str:
+    """Element with its oxidation state in Roman numerals.
+
+    Examples
+    --------
+    >>> with_state("V", 4), with_state("Cr", 0), with_state("Co", -1)
+    ('V(IV)', 'Cr(0)', 'Co(-I)')
+    """
+    numerals = ("0", "I", "II", "III", "IV", "V", "VI", "VII", "VIII", "IX")
+    size = abs(oxidation_state)
+    text = numerals[size] if size < len(numerals) else str(size)
+    return f"{symbol}({'-' if oxidation_state < 0 else ''}{text})"
 
 
 def valence_d_or_f_electrons(symbol: str, oxidation_state: int) -> int | None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
-from ehmo.errors import InputError, LimitError
+from ehmo.errors import InputError, LimitError, visible
 
 MAX_ATOMS = 10_000
 """Default limit of atoms in one frame or crystal cell."""
@@ -14,8 +14,8 @@ MAX_BYTES = 100_000_000
 
 
 def shown(text: object, limit: int = 60) -> str:
-    """Text from a file on one line: control characters dropped, blanks squeezed, cut to a length."""
-    line = " ".join("".join(c if c.isprintable() else " " for c in str(text)).split())
+    """Text from a file on one line: control characters shown, blanks squeezed, cut to a length."""
+    line = visible(" ".join(str(text).split()))
     return line if len(line) <= limit else line[: limit - 3] + "..."
 
 
@@ -47,7 +47,9 @@ def read_text(path: Path, max_bytes: int = MAX_BYTES) -> str:
             raise InputError("that is a folder", place=place, mend="give a file")
         size = path.stat().st_size
         if size > max_bytes:
-            raise LimitError(f"{size} bytes, the limit is {max_bytes}", place=place, mend="raise max_bytes")
+            raise LimitError(
+                f"{size} bytes, the limit is {max_bytes}", place=place, mend="raise max_bytes (--max-bytes)"
+            )
         raw = path.read_bytes()
     except FileNotFoundError:
         raise InputError("no such file", place=place, mend="check the path") from None

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from ehmo.records.arrays import FloatArray
-from ehmo.records.coordination import LocalFrame, MetalDonorBond
+from ehmo.records.coordination import DonorKind, LocalFrame, MetalDonorBond
 from ehmo.records.fragment import Fragment
 
 TIE_A: Final = 0.02
@@ -22,7 +22,7 @@ AXIS_TOLERANCE: Final = 0.15
 """Largest distance of unit vectors that a rotation may leave, to count as an axis of the sphere."""
 
 MAX_AXIS_DONORS: Final = 12
-"""Donors whose pairs and triples are tried as axes; sandwich compounds have ten."""
+"""Donors whose pairs and triples are tried as axes; coordination numbers rarely exceed it."""
 
 _NEAR_AXIS_SIN: Final = 0.3
 """Donors whose bond makes an angle with z below asin(0.3) = 17 degrees are axial."""
@@ -31,9 +31,9 @@ _NEAR_AXIS_SIN: Final = 0.3
 def local_frame(fragment: Fragment, metal: int, bonds: tuple[MetalDonorBond, ...]) -> LocalFrame:
     """Right-handed axes of one metal.
 
-    z runs from the metal to its shortest multiply bonded donor; of tied donors a trans pair decides, else the highest
-    rotation axis of the sphere, else the lowest index. Without multiple bonds the axis decides first, then a trans
-    pair. x points along the equatorial donor that gives dx2-y2 the most sigma overlap.
+    z runs from the metal to its shortest multiply bonded donor; of tied donors a trans pair decides, else the
+    highest rotation axis of the sphere, else the lowest index. Without multiple bonds the axis decides first,
+    then a trans pair. x points along the equatorial donor that gives dx2-y2 the most sigma overlap.
 
     Parameters
     ----------
@@ -45,8 +45,7 @@ def local_frame(fragment: Fragment, metal: int, bonds: tuple[MetalDonorBond, ...
     """
     if not bonds:
         return LocalFrame(metal, np.eye(3), "no donors: axes of the file", "no donors: axes of the file")
-    vectors = np.array([fragment.positions_A[bond.donor] - fragment.positions_A[metal] for bond in bonds])
-    units = vectors / np.linalg.norm(vectors, axis=1)[:, None]
+    bonds, units = _directions(fragment, bonds)
     labels = [fragment.labels[bond.donor] for bond in bonds]
     z, z_reason = _z_axis(units, bonds, labels)
     x, x_reason = _x_axis(units, z, bonds, labels)
@@ -57,6 +56,19 @@ def local_frame(fragment: Fragment, metal: int, bonds: tuple[MetalDonorBond, ...
             "no equatorial donor: towards the first atom off the axis, else free",
         )
     return LocalFrame(metal, np.array([x, np.cross(z, x), z]), z_reason, x_reason)
+
+
+def _directions(fragment: Fragment, bonds: tuple[MetalDonorBond, ...]) -> tuple[tuple[MetalDonorBond, ...], FloatArray]:
+    """One bond and one unit vector per donor; side-on carbon counts once, by the centre of its atoms."""
+    groups: dict[tuple[DonorKind, int], list[MetalDonorBond]] = {}
+    for bond in bonds:
+        number = bond.ligand if bond.kind is DonorKind.SIDE_ON_CARBON else -1 - bond.donor
+        groups.setdefault((bond.kind, number), []).append(bond)
+    origin = fragment.positions_A[bonds[0].metal]
+    vectors = np.array(
+        [fragment.positions_A[[bond.donor for bond in group]].mean(axis=0) - origin for group in groups.values()]
+    )
+    return tuple(group[0] for group in groups.values()), vectors / np.linalg.norm(vectors, axis=1)[:, None]
 
 
 def _z_axis(units: FloatArray, bonds: tuple[MetalDonorBond, ...], labels: list[str]) -> tuple[FloatArray, str]:
@@ -94,6 +106,8 @@ def _principal_axis(
     for size in (2, 3):
         candidates += [units[list(few)].sum(axis=0) for few in combinations(some, size)]
     candidates += [np.cross(units[a], units[b]) for a, b in combinations(some, 2)]
+    if np.linalg.norm(np.cross(units, units[0]), axis=1).max() < _NEAR_AXIS_SIN:
+        return None, 1  # on one line, every order is an axis
     norms = [float(np.linalg.norm(candidate)) for candidate in candidates]
     axes = np.array([c / n for c, n in zip(candidates, norms, strict=True) if n > 0.1])
     alike = np.array([[_alike(a, b) for b in bonds] for a in bonds])

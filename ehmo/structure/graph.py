@@ -24,13 +24,16 @@ METAL_METAL_FACTOR: Final = 0.95
 """Metal-metal contacts up to this hold a molecule together; they are not metal-donor bonds."""
 
 SHADOW_MARGIN: Final = 0.05
-"""How much closer, in units of the radii sum, a neighbour must be to make a contact beyond 1.0 a mere contact."""
+"""A donor beyond 1.0 radii sums whose neighbour is closer by this much is a mere contact."""
 
 OVERLAP_A: Final = 0.5
 """Atoms closer than this overlap [angstrom]."""
 
 OVERLAP_FRACTION: Final = 0.5
 """Atoms other than hydrogen closer than this fraction of the sum of their radii overlap."""
+
+MAX_COORDINATE_A: Final = 1e6
+"""Coordinates beyond this are taken for mistakes [angstrom]."""
 
 _BRUTE_FORCE_ATOMS: Final = 800
 
@@ -69,10 +72,6 @@ class BondGraph:
         """Angle i-j-k [degree]."""
         a, b = self.positions_A[i] - self.positions_A[j], self.positions_A[k] - self.positions_A[j]
         return float(np.degrees(np.arctan2(np.linalg.norm(np.cross(a, b)), a @ b)))
-
-    def hydrogens_on(self, i: int) -> int:
-        """Number of hydrogens bonded to an atom."""
-        return sum(self.symbols[j] == "H" for j in self.neighbours[i])
 
     def donors_of(self, metal: int) -> tuple[int, ...]:
         """Atoms bonded to a metal, ascending."""
@@ -115,8 +114,8 @@ class ElementReach:
     def bonded(self, i: IntArray, j: IntArray, distances: FloatArray) -> NDArray[np.bool_]:
         """Which pairs are bonded; the list must hold each pair both ways.
 
-        Bare counter-ions have no bonds. Hydrogen takes its nearest neighbour alone: another atom before a metal,
-        so that the hydrogens of water or of an alkyl group near a metal are no hydrides; a hydride may bridge.
+        Bare counter-ions have no bonds. Hydrogen takes its nearest neighbour alone, and any other atom before a
+        metal, so that hydrogens of water or alkyl groups near a metal are no hydrides; a hydride may bridge.
         """
         ratio = self.ratios(i, j, distances)
         both_metals = self.is_metal[i] & self.is_metal[j]
@@ -168,7 +167,7 @@ def bond_graph(fragment: Fragment) -> BondGraph:
 
 
 def _only_contact(a: int, b: int, ratio: float, near: list[dict[int, float]], metals: frozenset[int]) -> bool:
-    """Whether a metal-donor contact is owed to a closer donor on the far atom: the N of a chelating nitrate."""
+    """Whether a contact is owed to a closer donor next to it, as for the N of a chelating nitrate."""
     if (a in metals) == (b in metals) or ratio <= 1.0:
         return False
     metal, far = (a, b) if a in metals else (b, a)
@@ -176,13 +175,20 @@ def _only_contact(a: int, b: int, ratio: float, near: list[dict[int, float]], me
 
 
 def check_overlap(positions: FloatArray, reach: ElementReach, labels: Sequence[str], place: str) -> None:
-    """Refuse atoms that overlap.
+    """Refuse atoms that overlap, and coordinates far out of any molecule.
 
     Raises
     ------
     InputError
-        Naming the closest pair found.
+        Naming the closest pair found, or the atom too far out.
     """
+    far = np.abs(positions).max(axis=1)
+    if far.max() > MAX_COORDINATE_A:
+        raise InputError(
+            f"{labels[int(far.argmax())]} has a coordinate beyond {MAX_COORDINATE_A:.0e} A",
+            place=place,
+            mend="give coordinates in angstrom",
+        )
     if len(positions) < 2:
         return
     first, second, distance = _nearest_neighbours(positions)
@@ -207,10 +213,10 @@ def _nearest_neighbours(positions: FloatArray) -> tuple[IntArray, IntArray, Floa
         return every, nearest, distances[every, nearest]
     from scipy.spatial import cKDTree
 
-    distances, found = cKDTree(positions).query(positions, k=2)
+    gaps, found = (np.asarray(part) for part in cKDTree(positions).query(positions, k=2))
     # Of coinciding atoms the query may name the other one first.
     nearest = np.where(found[:, 1] == every, found[:, 0], found[:, 1])
-    return every, nearest, distances[:, 1]
+    return every, nearest, gaps[:, 1]
 
 
 def _close_pairs(positions: FloatArray, reach_A: float) -> tuple[IntArray, IntArray, FloatArray]:

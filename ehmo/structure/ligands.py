@@ -12,8 +12,6 @@ from ehmo.structure.graph import BondGraph
 from ehmo.structure.matching import unsatisfied
 
 _FIXED: dict[DonorKind, tuple[int, str]] = {
-    DonorKind.HYDROXO_DOUBTFUL: (-1, "taken as OH- without its hydrogen"),
-    DonorKind.AQUA_DOUBTFUL: (0, "taken as OH2 without its hydrogens"),
     DonorKind.PEROXO_END_ON: (-2, "O2 2-"),
     DonorKind.PEROXO_SIDE_ON: (-2, "O2 2-"),
     DonorKind.SUPEROXO: (-1, "O2 -"),
@@ -22,6 +20,8 @@ _FIXED: dict[DonorKind, tuple[int, str]] = {
     DonorKind.CARBONYL: (0, "CO"),
 }
 """Charges of one- and two-atom ligands whose electrons no valence rule counts (common practice)."""
+
+_HYDROGENS_DOUBTFUL = frozenset({DonorKind.HYDROXO_DOUBTFUL, DonorKind.AQUA_DOUBTFUL, DonorKind.NITROGEN})
 
 _OPEN_SHELL_FREE = frozenset({DonorKind.CARBENE, DonorKind.OTHER})
 """Carbon donors that may hold two open valences as a lone pair: carbenes next to N, O, S and isocyanides."""
@@ -85,8 +85,9 @@ def formal_charge(graph: BondGraph, kinds: Kinds, atoms: tuple[int, ...]) -> For
     fixed = _fixed_charge(kinds, atoms)
     if fixed is not None:
         return fixed
-    if any(kinds.get(a) == DonorKind.NITROGEN and not graph.neighbours[a] for a in atoms):
-        return FormalCharge(None, "bare N at single-bond length: hydrogens may be missing")
+    bare = kinds.get(atoms[0]) if len(atoms) == 1 else None
+    if bare in _HYDROGENS_DOUBTFUL:
+        return FormalCharge(None, f"bare {symbol} at single-bond length: hydrogens may be missing")
     incomplete = [a for a in atoms if _lacks_hydrogen(graph, a)]
     if incomplete:
         label = f"{graph.symbols[incomplete[0]]}{incomplete[0] + 1}"
@@ -161,9 +162,6 @@ def _closed_shell_charge(graph: BondGraph, kinds: Kinds, atoms: tuple[int, ...])
     for atom in list(open_valences):
         if open_valences[atom] == 2 and _lone_pair_carbon(graph, kinds, atom):
             del open_valences[atom]
-    bearers = sum(bool(graph.metal_neighbours[a]) or graph.symbols[a] != "C" for a in atoms if graph.symbols[a] != "H")
-    if sum(open_valences.values()) > 3 * bearers:
-        return FormalCharge(None, "open valences on carbon: hydrogens may be missing")
     return FormalCharge(charge - sum(open_valences.values()), "closed shell")
 
 

@@ -1,15 +1,16 @@
-"""Oxidation states of the metals from bond valences."""
+"""Oxidation states of the metals: actinyl lengths, the eighteen-electron rule, bond-valence sums."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from math import exp
 from typing import Final
 
-from basis_params.bond_valence import bond_valence_R0
-from ehmo.records.coordination import Coordination
+import numpy as np
+
+from basis_params.bond_valence import BondValence, bond_valence_R0
+from ehmo.records.coordination import Coordination, DonorKind, MetalDonorBond
 from ehmo.records.fragment import Fragment
-from ehmo.structure.elements import OXIDATION_STATES
+from ehmo.structure.elements import ACTINIDES, LANTHANIDES, OXIDATION_STATES, valence_d_or_f_electrons, with_state
 
 MAX_DEVIATION: Final = 0.75
 """A bond-valence sum farther from every usual oxidation state decides nothing [valence units]."""
@@ -17,17 +18,37 @@ MAX_DEVIATION: Final = 0.75
 MIN_MARGIN: Final = 0.10
 """The best oxidation state must beat the next by this much [valence units]."""
 
+MAX_SHORTFALL: Final = 1.25
+"""Bond-valence sums of d0 centres with several multiple bonds fall short by up to this (OsO4 1.0) [valence units]."""
+
+ACTINYL_VI_A: Final = 1.80
+"""Actinyl(VI) bonds are shorter (1.73-1.80), actinyl(V) bonds longer (1.81-1.88) (common practice) [angstrom]."""
+
+MIN_OXO_STATE: Final = 4
+"""Terminal oxo and nitrido ligands need at least this oxidation state (common practice)."""
+
+MAX_ION_CHARGE: Final = 3
+"""Complex ions of one d-block metal beyond group 4 carry no higher charge (common practice)."""
+
+_ACCEPTORS: Final = frozenset(
+    {DonorKind.CARBONYL, DonorKind.NITROSYL_LINEAR, DonorKind.NITROSYL_BENT, DonorKind.SIDE_ON_CARBON}
+)
+_TERMINAL: Final = frozenset({DonorKind.OXO, DonorKind.NITRIDO})
+
 
 @dataclass(frozen=True, slots=True)
 class OxidationGuess:
-    """Oxidation state of one metal by its bond-valence sum; None where the sum does not decide."""
+    """Oxidation state of one metal; None where nothing decides, with the reason why."""
 
     state: int | None
     reason: str
 
 
 def oxidation_guess(fragment: Fragment, coordination: Coordination, metal: int) -> OxidationGuess:
-    """Usual oxidation state whose own bond-valence sum comes nearest to it.
+    """Oxidation state of one metal from its bonds.
+
+    Actinyls go by their bond length, complexes of carbon monoxide, nitric oxide and side-on carbon by the eighteen-
+    electron rule, all others by the usual oxidation state whose bond-valence sum comes nearest to it.
 
     Parameters
     ----------
@@ -40,32 +61,101 @@ def oxidation_guess(fragment: Fragment, coordination: Coordination, metal: int) 
     ----------
     brown-1985
     """
+    bonds = coordination.bonds_of(metal)
+    oxo = [bond for bond in bonds if bond.kind is DonorKind.OXO]
+    if fragment.symbols[metal] in ACTINIDES and len(oxo) == 2 and _trans(fragment, oxo):
+        return _actinyl(fragment, metal, oxo)
+    if len(coordination.metals) == 1 and any(bond.kind in _ACCEPTORS for bond in bonds) and not oxo:
+        return _eighteen_electrons(fragment, coordination, metal)
+    return _by_bond_valence(fragment, coordination, metal)
+
+
+def _trans(fragment: Fragment, pair: list[MetalDonorBond]) -> bool:
+    a, b = (fragment.positions_A[bond.donor] - fragment.positions_A[bond.metal] for bond in pair)
+    return bool(a @ b < -0.9 * np.linalg.norm(a) * np.linalg.norm(b))
+
+
+def _actinyl(fragment: Fragment, metal: int, oxo: list[MetalDonorBond]) -> OxidationGuess:
+    mean = (oxo[0].length_A + oxo[1].length_A) / 2.0
+    state = 6 if mean < ACTINYL_VI_A else 5
+    symbol = fragment.symbols[metal]
+    return OxidationGuess(
+        state, f"actinyl bonds of {fragment.labels[metal]}, {mean:.2f} A, so {with_state(symbol, state)}"
+    )
+
+
+def _eighteen_electrons(fragment: Fragment, coordination: Coordination, metal: int) -> OxidationGuess:
+    """Oxidation state that leaves 18 valence electrons with closed-shell ligands."""
     symbol, label = fragment.symbols[metal], fragment.labels[metal]
-    states = [state for state in OXIDATION_STATES.get(symbol, ()) if state > 0]
-    sums = {state: total for state in states if (total := _valence_sum(fragment, coordination, metal, state))}
-    if not sums:
-        return OxidationGuess(None, f"no bond-valence parameters for all bonds of {label}")
+    bonds = coordination.bonds_of(metal)
+    side_on = {bond.ligand for bond in bonds if bond.kind is DonorKind.SIDE_ON_CARBON}
+    donated = sum(_donated(coordination, bond) for bond in bonds if bond.kind is not DonorKind.SIDE_ON_CARBON)
+    for ligand in side_on:
+        carbons = sum(bond.ligand == ligand and bond.kind is DonorKind.SIDE_ON_CARBON for bond in bonds)
+        # Closed-shell polyenes and polyenyl anions: C2 2, C3 4, C4 4, C5 6, C6 6 electrons.
+        donated += 2 * ((carbons + 1) // 2)
+    group = valence_d_or_f_electrons(symbol, 0)
+    state = None if group is None else group - (18 - donated)
+    if state is None or symbol in LANTHANIDES | ACTINIDES or not -2 <= state <= (group or 0):
+        return OxidationGuess(None, f"the eighteen-electron rule gives {label} no sensible oxidation state")
+    return OxidationGuess(state, f"eighteen-electron rule for {label}, so {with_state(symbol, state)}")
+
+
+def _donated(coordination: Coordination, bond: MetalDonorBond) -> int:
+    """Electrons of one donor as a closed shell: multiply bonded anions give a pair per charge."""
+    charge = coordination.ligands[bond.ligand].charge or 0
+    return 2 * max(1, -charge) if bond.may_be_multiple else 2
+
+
+def _by_bond_valence(fragment: Fragment, coordination: Coordination, metal: int) -> OxidationGuess:
+    symbol, label = fragment.symbols[metal], fragment.labels[metal]
+    bonds = coordination.bonds_of(metal)
+    sums: dict[int, float] = {}
+    estimated = False
+    for state in _candidates(fragment, coordination, metal):
+        rows = _rows(fragment, bonds, state)
+        if rows is None:
+            return OxidationGuess(None, f"there are no bond-valence parameters for all bonds of {label}")
+        sums[state] = sum(row.valence(bond.length_A) for row, bond in zip(rows, bonds, strict=True))
+        estimated = estimated or any(row.oxidation_state is None for row in rows)
+    if not sums or not bonds:
+        return OxidationGuess(None, f"no usual oxidation state of {label} is known")
     ranked = sorted(sums, key=lambda state: abs(sums[state] - state))
+    empty = next((state for state in sums if valence_d_or_f_electrons(symbol, state) == 0), None)
     best = ranked[0]
-    deviation = abs(sums[best] - best)
-    if deviation > MAX_DEVIATION:
-        return OxidationGuess(None, f"the bond-valence sum of {label}, {sums[best]:.2f}, fits no usual oxidation state")
-    if len(ranked) > 1 and abs(sums[ranked[1]] - ranked[1]) - deviation < MIN_MARGIN:
+    if sum(bond.may_be_multiple for bond in bonds) >= 2 and empty is not None and best != empty:
+        if empty - sums[empty] > MAX_SHORTFALL:
+            return OxidationGuess(None, f"bond valences fall short at the multiple bonds of {label}")
         return OxidationGuess(
-            None,
-            f"the bond-valence sum of {label}, {sums[best]:.2f}, fits {symbol}({best:+d}) and"
-            f" {symbol}({ranked[1]:+d}) alike",
+            empty,
+            f"several multiple bonds, bond-valence sum of {label} {sums[empty]:.2f}, so {with_state(symbol, empty)}",
         )
-    return OxidationGuess(best, f"bond-valence sum of {label} {sums[best]:.2f}, so {symbol}({best:+d})")
+    runner_up = abs(sums[ranked[1]] - ranked[1]) if len(ranked) > 1 else np.inf
+    deviation = abs(sums[best] - best)
+    if (
+        deviation > MAX_DEVIATION
+        or runner_up - deviation < MIN_MARGIN
+        or (estimated and best != empty and len(sums) > 1)
+    ):
+        return OxidationGuess(
+            None, f"the bond-valence sum of {label}, {sums[best]:.2f} for {with_state(symbol, best)}, does not decide"
+        )
+    return OxidationGuess(best, f"bond-valence sum of {label} {sums[best]:.2f}, so {with_state(symbol, best)}")
 
 
-def _valence_sum(fragment: Fragment, coordination: Coordination, metal: int, state: int) -> float | None:
-    """Bond-valence sum of a metal; None where a bond has no fitted or estimated R0."""
-    total = 0.0
-    for bond in coordination.bonds_of(metal):
-        try:
-            row = bond_valence_R0(fragment.symbols[metal], fragment.symbols[bond.donor], state)
-        except KeyError:
-            return None
-        total += exp((row.R0_A - bond.length_A) / row.B_A)
-    return total or None
+def _candidates(fragment: Fragment, coordination: Coordination, metal: int) -> list[int]:
+    """Usual positive oxidation states that the ligands and the charge of the ion allow."""
+    symbol = fragment.symbols[metal]
+    low = MIN_OXO_STATE if any(bond.kind in _TERMINAL for bond in coordination.bonds_of(metal)) else 1
+    high = 8
+    beyond_group_4 = (valence_d_or_f_electrons(symbol, 4) or 0) > 0
+    if len(coordination.metals) == 1 and beyond_group_4 and symbol not in LANTHANIDES | ACTINIDES:
+        high = MAX_ION_CHARGE - sum(ligand.charge or 0 for ligand in coordination.ligands)
+    return [state for state in OXIDATION_STATES.get(symbol, ()) if low <= state <= high]
+
+
+def _rows(fragment: Fragment, bonds: tuple[MetalDonorBond, ...], state: int) -> list[BondValence] | None:
+    try:
+        return [bond_valence_R0(fragment.symbols[b.metal], fragment.symbols[b.donor], state) for b in bonds]
+    except KeyError:
+        return None

@@ -90,8 +90,8 @@ def _nearest_atom(fragment: Fragment, graph: BondGraph) -> str:
     distances = np.linalg.norm(fragment.positions_A[others] - fragment.positions_A[metal], axis=1)
     k = int(distances.argmin())
     return (
-        f"no donor within reach of {label}: the nearest atom {fragment.labels[others[k]]} is {distances[k]:.2f} A"
-        f" away, beyond {BOND_FACTOR} times the covalent radii"
+        f"no donor within reach of {label}: the nearest atom, {fragment.labels[others[k]]}, is"
+        f" {distances[k]:.2f} A away, beyond {BOND_FACTOR} times the covalent radii"
     )
 
 

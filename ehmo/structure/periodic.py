@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from ehmo.errors import InputError
 from ehmo.records.fragment import Fragment
 from ehmo.structure.files import shown
-from ehmo.structure.graph import BOND_FACTOR, OVERLAP_A, ElementReach
+from ehmo.structure.graph import BOND_FACTOR, MAX_COORDINATE_A, OVERLAP_A, ElementReach
 
 if TYPE_CHECKING:
     from ase import Atoms
@@ -56,17 +56,27 @@ class PeriodicCell:
 
 
 def check_cell(cell: PeriodicCell) -> None:
-    """Refuse lattices that cannot be real.
+    """Refuse lattices and coordinates that cannot be real.
 
     Raises
     ------
     InputError
-        If a cell height or the volume per atom is impossible.
+        If a coordinate, a cell height or the volume per atom is impossible.
     """
     lattice = np.asarray(cell.atoms.cell)
+    if not (np.abs(lattice) < MAX_COORDINATE_A).all():
+        raise InputError("impossible cell", place=cell.place, mend="correct the cell lengths and angles")
+    far = ~(np.abs(cell.atoms.positions) < MAX_COORDINATE_A).all(axis=1)
+    if far.any():
+        label = shown(cell.labels[int(far.argmax())], 20)
+        raise InputError(
+            f"{label} has a coordinate beyond {MAX_COORDINATE_A:.0e} A",
+            place=cell.place,
+            mend="give coordinates in angstrom",
+        )
     volume = abs(float(np.linalg.det(lattice)))
-    faces = [np.linalg.norm(np.cross(lattice[k - 2], lattice[k - 1])) for k in range(3)]
-    if not np.isfinite(volume) or min(volume / max(face, 1e-9) for face in faces) < MIN_CELL_HEIGHT_A:
+    faces = [float(np.linalg.norm(np.cross(lattice[k - 2], lattice[k - 1]))) for k in range(3)]
+    if not np.isfinite(volume) or volume / max(*faces, 1e-9) < MIN_CELL_HEIGHT_A:
         raise InputError("impossible cell", place=cell.place, mend="correct the cell lengths and angles")
     if len(cell.atoms) / volume > MAX_ATOMS_PER_A3:
         raise InputError(
@@ -84,8 +94,8 @@ def molecules_with_metals(cell: PeriodicCell) -> tuple[Fragment, ...]:
     Raises
     ------
     InputError
-        If there is no metal, atoms overlap, or no molecule is whole; it says whether the structure is polymeric or the
-        molecule needs atoms that symmetry makes.
+        If there is no metal, atoms overlap, or no molecule is whole; it says whether the structure is polymeric
+        or the molecule needs atoms that symmetry makes.
     """
     check_cell(cell)
     symbols = tuple(cell.atoms.get_chemical_symbols())
@@ -100,9 +110,9 @@ def molecules_with_metals(cell: PeriodicCell) -> tuple[Fragment, ...]:
     for start in starts:
         if start in seen:
             continue
-        shifts, repeat = _walk(start, neighbours)
+        shifts, endless = _walk(start, neighbours)
         seen.update(shifts)
-        fault = _fault(cell, start, shifts, repeat)
+        fault = _fault(cell, start, shifts, endless)
         if fault:
             faults.append(fault)
         else:
@@ -132,11 +142,11 @@ def _periodic_neighbours(cell: PeriodicCell, reach: ElementReach) -> Neighbours:
     return neighbours
 
 
-def _walk(start: int, neighbours: Neighbours) -> tuple[dict[int, tuple[int, int, int]], int | None]:
-    """Lattice shift of each atom of a molecule, and an atom reached at two shifts if it is a polymer."""
+def _walk(start: int, neighbours: Neighbours) -> tuple[dict[int, tuple[int, int, int]], bool]:
+    """Lattice shift of each atom of a molecule, and whether some atom is reached at two shifts: a polymer."""
     shifts = {start: (0, 0, 0)}
     queue = deque([start])
-    repeat = None
+    endless = False
     while queue:
         atom = queue.popleft()
         here = shifts[atom]
@@ -145,18 +155,18 @@ def _walk(start: int, neighbours: Neighbours) -> tuple[dict[int, tuple[int, int,
             if other not in shifts:
                 shifts[other] = there
                 queue.append(other)
-            elif shifts[other] != there and repeat is None:
-                repeat = other
-    return shifts, repeat
+            elif shifts[other] != there:
+                endless = True
+    return shifts, endless
 
 
-def _fault(cell: PeriodicCell, start: int, shifts: dict[int, tuple[int, int, int]], repeat: int | None) -> str:
+def _fault(cell: PeriodicCell, start: int, shifts: dict[int, tuple[int, int, int]], endless: bool) -> str:
     label = shown(cell.labels[start], 20)
-    if repeat is not None:
-        return f"polymeric: the bonds from {label} run on without end through {shown(cell.labels[repeat], 20)}"
+    if endless:
+        return f"polymeric: the bonds from {label} run on without end"
     made = sum(not cell.listed[atom] for atom in shifts)
     if made:
-        return f"symmetry makes {made} of the {len(shifts)} atoms in the molecule of {label}: it is not listed whole"
+        return f"the molecule of {label} is not listed whole: symmetry makes {made} of its {len(shifts)} atoms"
     return ""
 
 

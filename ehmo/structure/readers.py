@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import os
 import re
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
@@ -23,6 +24,73 @@ ASE_FORMATS: Final = frozenset({"aims", "gen", "mol", "proteindatabank", "sdf", 
 """Text formats left to ASE; others are refused, since some of its readers run or unpickle what they read."""
 
 
+def read(path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes: int = MAX_BYTES) -> Fragment:
+    """Fragment of a file that holds one structure.
+
+    Parameters
+    ----------
+    path : str or path-like
+        XYZ, extended XYZ or CIF, told by suffix or content; else a text format that ASE knows.
+    max_atoms, max_bytes : int
+        Limits, as for `read_frames`.
+
+    Returns
+    -------
+    fragment : Fragment
+        Charge and unpaired electrons are None where the file does not state them.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be read as a molecule, or holds several structures.
+    LimitError
+        If the file is over a limit.
+    """
+    fragments = read_frames(path, max_atoms=max_atoms, max_bytes=max_bytes)
+    if len(fragments) > 1:
+        raise InputError(
+            f"{len(fragments)} structures where one was asked for",
+            place=shown(path, 200),
+            mend="use read_frames, which gives them all",
+        )
+    return fragments[0]
+
+
+def from_ase(atoms: Atoms, charge: int | None = None, unpaired_electrons: int | None = None) -> Fragment:
+    """Fragment of ASE atoms: a molecule, or the one molecule with a metal in a periodic cell.
+
+    Parameters
+    ----------
+    atoms : ase.Atoms
+        Atoms; its `info` may state charge and unpaired electrons or spin multiplicity, as an extended XYZ would.
+    charge, unpaired_electrons : int, optional
+        Override what `info` states.
+
+    Returns
+    -------
+    fragment : Fragment
+
+    Raises
+    ------
+    InputError
+        If the coordinates are not finite, or a cell holds several molecules with metals or none that is whole.
+    """
+    stated = stated_electrons(((str(key), value) for key, value in atoms.info.items()), "ASE atoms")
+    found = _fragments_of(atoms, "ASE atoms", atoms.get_chemical_formula(), stated)
+    if len(found) > 1:
+        raise InputError(
+            f"{len(found)} molecules with metals where one was asked for",
+            place="ASE atoms",
+            mend="cut out one of them",
+        )
+    one = found[0]
+    return replace(
+        one,
+        charge=one.charge if charge is None else charge,
+        unpaired_electrons=one.unpaired_electrons if unpaired_electrons is None else unpaired_electrons,
+    )
+
+
 def read_frames(
     path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes: int = MAX_BYTES
 ) -> tuple[Fragment, ...]:
@@ -40,8 +108,8 @@ def read_frames(
     Returns
     -------
     fragments : tuple of Fragment
-        One per frame of XYZ, one per whole molecule with a metal of a crystal. Charge and unpaired electrons are None
-        where the file does not state them.
+        One per frame of XYZ, one per whole molecule with a metal of a crystal. Charge and unpaired electrons
+        are None where the file does not state them.
 
     Raises
     ------
@@ -87,7 +155,7 @@ def _frame_fragments(frame: XyzFrame, place: str) -> tuple[Fragment, ...]:
 
 
 def _fragments_of(atoms: Atoms, source: str, title: str, stated: StatedElectrons) -> tuple[Fragment, ...]:
-    """Fragments of ASE atoms: the atoms as they stand, or the molecules of a cell periodic in three directions."""
+    """Fragments of ASE atoms: as they stand, or the molecules of a cell periodic in three directions."""
     if not np.isfinite(atoms.positions).all():
         bad = int(np.flatnonzero(~np.isfinite(atoms.positions).all(axis=1))[0])
         raise InputError(
@@ -114,8 +182,8 @@ def _ase_fragments(path: Path, place: str, max_atoms: int) -> tuple[Fragment, ..
     from ase.io.formats import UnknownFileTypeError, filetype
 
     try:
-        name = filetype(path)
-    except (UnknownFileTypeError, OSError, ValueError, KeyError):
+        name = filetype(str(path))
+    except (UnknownFileTypeError, OSError, EOFError, ValueError):
         name = "unknown"
     if name not in ASE_FORMATS:
         raise InputError("unknown file format", place=place, mend="give XYZ (suffix .xyz) or CIF (suffix .cif)")
@@ -127,7 +195,9 @@ def _ase_fragments(path: Path, place: str, max_atoms: int) -> tuple[Fragment, ..
         raise InputError("no atoms", place=place, mend="give a file with atoms")
     if max(map(len, frames)) > max_atoms:
         raise LimitError(
-            f"{max(map(len, frames))} atoms, the limit is {max_atoms}", place=place, mend="raise max_atoms"
+            f"{max(map(len, frames))} atoms, the limit is {max_atoms}",
+            place=place,
+            mend="raise max_atoms (--max-atoms)",
         )
     found: list[Fragment] = []
     for number, atoms in enumerate(frames, start=1):

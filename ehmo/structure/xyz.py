@@ -1,8 +1,9 @@
 """XYZ and extended XYZ, several frames to a file.
 
-Every line is checked here first, so that a fault is reported with its line. Plain frames are then complete: the format
-is four columns, and importing ASE's reader costs about 0.3 s, more than a small calculation. Frames with
-``Properties=`` or ``Lattice=`` go through `ase.io.extxyz`, which knows their quoting, columns and cells.
+Every line is checked here first, so that a fault is reported with its line. Plain frames are then complete: the
+format is four columns, and importing ASE's reader costs more time than a small calculation (0.4 s where numpy takes
+0.09 s). Frames with ``Properties=`` or ``Lattice=`` go through `ase.io.extxyz`, which knows their quoting, columns
+and cells.
 """
 
 from __future__ import annotations
@@ -89,7 +90,9 @@ def _count(line: str, place: str, max_atoms: int) -> int:
             f"{shown(word, 30)!r} is no count of atoms", place=place, mend="start each frame with the count"
         )
     if int(word) > max_atoms:
-        raise LimitError(f"{int(word)} atoms, the limit is {max_atoms}", place=place, mend="raise max_atoms")
+        raise LimitError(
+            f"{int(word)} atoms, the limit is {max_atoms}", place=place, mend="raise max_atoms (--max-atoms)"
+        )
     return int(word)
 
 
@@ -128,8 +131,8 @@ def _coordinate(word: str, place: str) -> float:
         raise InputError(
             f"{shown(word, 30)!r} is no number", place=place, mend="write coordinates in angstrom"
         ) from None
-    if not isfinite(value) or abs(value) > 1e6:
-        raise InputError(f"the coordinate {shown(word, 30)} is out of range", place=place, mend="write a finite number")
+    if not isfinite(value):
+        raise InputError(f"the coordinate {shown(word, 30)} is not finite", place=place, mend="write a number")
     return value
 
 

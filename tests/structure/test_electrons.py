@@ -1,0 +1,168 @@
+"""Charge and unpaired electrons: given, guessed with the reason, or refused with the candidates."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+
+from ehmo.errors import ElectronCountError
+from ehmo.records.fragment import Fragment
+from ehmo.structure import assign_electrons, perceive
+from tests.geometries import SPECIES
+from tests.structure.ligand_cases import CASES, dichromate, ferrocene, titanyl_porphyrin
+
+
+def _assign(fragment, **given):
+    return assign_electrons(fragment, perceive(fragment), **given)
+
+
+@pytest.mark.parametrize("name", SPECIES)
+def test_given_values_are_used(name):
+    species = SPECIES[name]
+    in_file = _assign(species.fragment())
+    by_option = _assign(species.bare(), charge=species.charge, unpaired=species.unpaired_electrons)
+    assert (in_file.charge, in_file.unpaired_electrons) == (species.charge, species.unpaired_electrons)
+    assert (by_option.charge, by_option.unpaired_electrons) == (species.charge, species.unpaired_electrons)
+    assert (in_file.charge_reason, by_option.charge_reason) == ("given in the file", "given")
+
+
+def test_options_win_over_the_file():
+    fragment = replace(SPECIES["[VO(OH2)5]2+"].fragment(), charge=3, unpaired_electrons=0)
+    found = _assign(fragment, charge=2, unpaired=1)
+    assert (found.charge, found.unpaired_electrons) == (2, 1)
+
+
+# Right by the formulas of the species; d2 and d4 with the lowest count, as the rule has it.
+GUESSED = [
+    *("[VO(OH2)5]2+", "VOCl3", "CrO2Cl2", "VO4 3-", "CrO4 2-", "MnO4 -", "MoO4 2-", "TcO4 -", "RuO4", "WO4 2-"),
+    *("ReO4 -", "OsO4", "UO2 2+", "[UO2(OH2)5]2+", "NpO2 2+", "[NpO2(OH2)5]2+", "PuO2 2+", "[PuO2(OH2)5]2+"),
+    *("[VOCl4]2-", "[ReOCl4]-", "[MoNCl4]-", "[CrNCl4]2-", "[MoOCl5]2-", "cis-[MoO2Cl4]2-", "fac-[MoO3F3]3-"),
+    *("CH3ReO3", "V(NC6H5)Cl3", "V(NH)Cl3", "MoO(NCH3)Cl2, bent", "Ti(NMe2)Cl3", "Ti(NMe2)4", "VO(OCH3)3"),
+    *("Ti(OCH3)4", "[Ti(OH2)6]3+", "Ta(CH2)Cl3", "Cr(CO)5(C(OMe)Me)", "W(CCH3)(OCH3)3", "W(CH)Cl3", "TiCl4"),
+    *("[TiF6]2-", "VOS3 3-", "MoS4 2-"),
+]
+
+
+@pytest.mark.parametrize("name", GUESSED)
+def test_guesses_that_come_out_right(name):
+    species = SPECIES[name]
+    found = _assign(species.bare())
+    assert (found.charge, found.unpaired_electrons) == (species.charge, species.unpaired_electrons)
+    assert found.charge_reason.startswith("guessed: ")
+    assert found.unpaired_reason.startswith(("guessed: ", "only count of "))
+
+
+@pytest.mark.parametrize(
+    ("name", "charge", "lowest", "others"),
+    [("[FeO(OH2)5]2+", 2, 0, "2, 4"), ("FeO4 2-", -2, 0, "2"), ("[CrO(OH2)5]2+", 2, 0, "2")],
+)
+def test_lowest_count_is_said_to_be_one_of_several(name, charge, lowest, others):
+    found = _assign(SPECIES[name].bare())
+    assert (found.charge, found.unpaired_electrons) == (charge, lowest)
+    assert f"{others} is possible too" in found.unpaired_reason
+
+
+REFUSED = {
+    "[V(OH2)6]2+": "d3; give their number: 1 or 3",
+    "[Mn(OH2)6]2+": "d5; give their number: 1 or 3 or 5",
+    "[Fe(OH2)6]2+": "d6; give their number: 0 or 2 or 4",
+    "[Ni(OH2)6]2+": "d8; give their number: 0 or 2",
+    "[CoCl4]2-": "d7; give their number: 1 or 3",
+    "Cr(CO)6": "d6; give their number: 0 or 2 or 4",
+    "[Co(NH3)6]3+": "does not decide; give the charge: +1 for Co(I), +2 for Co(II), +3 for Co(III)",
+    "trans-[OsO2Cl4]2-": "fall short at the multiple bonds of Os1; give the charge",
+    "MnO4 3-": "may lack hydrogen (hydroxo?); add the hydrogens or give the charge",
+    "[TiOCl4]2-": "O2 may lack hydrogen (hydroxo?)",
+}
+
+
+@pytest.mark.parametrize("name", REFUSED)
+def test_refusals_name_the_candidates(name):
+    with pytest.raises(ElectronCountError) as caught:
+        _assign(SPECIES[name].bare())
+    assert REFUSED[name] in str(caught.value)
+
+
+@pytest.mark.parametrize(
+    ("given", "said"),
+    [
+        ({"charge": 2, "unpaired": 0}, "0 unpaired electrons do not fit 81 electrons; with 81 electrons it is 1, 3, 5"),
+        ({"charge": 3, "unpaired": 1}, "1 unpaired electrons do not fit 80"),
+        ({"charge": 2, "unpaired": -1}, "-1 unpaired electrons are impossible"),
+        ({"charge": 2, "unpaired": 83}, "83 unpaired electrons are impossible"),
+        ({"charge": 90}, "charge +90 is impossible"),
+        ({"charge": -101}, "charge -101 is impossible"),
+        ({"charge": 4}, "asks for V(VI), 1 electrons more than it has"),
+    ],
+)
+def test_impossible_counts(given, said):
+    """The electrons of [VO(OH2)5]2+ are 23 + 6 x 8 + 10 - 2 = 79 for V; with the sums below."""
+    fragment = SPECIES["[VO(OH2)5]2+"].bare()
+    electrons = 23 + 48 + 10 - 2
+    said = said.replace("81 electrons", f"{electrons} electrons").replace("fit 80", f"fit {electrons - 1}")
+    with pytest.raises(ElectronCountError) as caught:
+        _assign(fragment, **given)
+    assert said in str(caught.value)
+    assert caught.value.mend
+
+
+def test_guess_must_fit_a_given_spin():
+    with pytest.raises(ElectronCountError, match="does not fit 0 unpaired electrons; give the charge"):
+        _assign(SPECIES["[VO(OH2)5]2+"].bare(), unpaired=0)
+
+
+def test_counts_and_oxidation_states():
+    found = _assign(SPECIES["[FeO(OH2)5]2+"].fragment())
+    assert (found.metal_oxidation_total, found.d_electrons) == (4, 4)
+    found = _assign(SPECIES["PuO2 2+"].bare())
+    assert (found.metal_oxidation_total, found.d_electrons) == (6, 2)
+    assert "Hund's rule" in found.unpaired_reason
+
+
+def test_several_d0_metals():
+    found = _assign(dichromate())
+    assert (found.charge, found.unpaired_electrons) == (-2, 0)
+    assert (found.metal_oxidation_total, found.d_electrons) == (12, None)
+
+
+def test_several_metals_with_electrons_are_refused():
+    with pytest.raises(ElectronCountError, match="cannot be counted; give their number: 0, 2, 4"):
+        _assign(dichromate(), charge=-4)
+
+
+def test_organometallic_and_macrocycle():
+    iron = ferrocene()
+    with pytest.raises(ElectronCountError, match="d6; give their number: 0 or 2 or 4"):
+        _assign(iron)
+    assert _assign(iron, unpaired=0).charge == 0
+    assert "eighteen-electron rule" in _assign(iron, unpaired=0).charge_reason
+    assert _assign(titanyl_porphyrin()).charge == 0
+
+
+def test_doubtful_hydrogens_run_with_a_given_charge_only():
+    fragment, _, _ = CASES["bare O at 2.10"]
+    with pytest.raises(ElectronCountError, match="O5 may lack hydrogen"):
+        _assign(fragment)
+    found = _assign(fragment, charge=-1, unpaired=0)
+    assert found.metal_oxidation_total is None
+
+
+def test_counter_ions_take_part_in_the_charge():
+    chromate = SPECIES["CrO4 2-"]
+    salt = Fragment((*chromate.symbols, "K", "K"), np.vstack([chromate.positions_A, [[3.5, 0, 0], [-3.5, 0, 0]]]))
+    assert _assign(salt).charge == 0
+
+
+def test_main_group_metals_are_closed_shells():
+    fragment = Fragment(
+        ("Al", "Cl", "Cl", "Cl"), np.array([[0, 0, 0], [2.06, 0, 0], [-1.03, 1.784, 0], [-1.03, -1.784, 0]])
+    )
+    found = _assign(fragment)
+    assert (found.charge, found.unpaired_electrons) == (0, 0)
+
+
+def test_lanthanides_follow_hund():
+    fragment = Fragment(("Gd", "Cl", "Cl", "Cl"), np.array([[0, 0, 0], [2.6, 0, 0], [-1.3, 2.25, 0], [-1.3, -2.25, 0]]))
+    assert _assign(fragment, charge=0).unpaired_electrons == 7

@@ -1,0 +1,21 @@
+"""Constants against CODATA 2022 as carried by SciPy (1.15 or later)."""
+
+from __future__ import annotations
+
+import pytest
+from scipy import constants
+
+from ehmo import units
+
+
+def test_bohr_radius_codata_2022():
+    assert pytest.approx(constants.value("Bohr radius") * 1e10, rel=1e-12) == units.BOHR_A
+
+
+def test_hartree_codata_2022():
+    assert pytest.approx(constants.value("Hartree energy in eV"), rel=1e-12) == units.HARTREE_EV
+
+
+def test_coulomb_constant_codata_2022():
+    expected = constants.e / (4 * constants.pi * constants.epsilon_0) * 1e10
+    assert pytest.approx(expected, rel=1e-9) == units.COULOMB_EV_A
