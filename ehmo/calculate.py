@@ -91,7 +91,7 @@ def bond_report(
         state=bonding.state,
         populations=bonding.populations,
         orders=bonding.orders,
-        assumptions=_assumptions(fragment, table, electrons),
+        assumptions=_assumptions(fragment, coordination, table, electrons),
         warnings=coordination.warnings + _electronic_warnings(fragment, coordination, bonding),
     )
 
@@ -219,13 +219,33 @@ def _method(table: ParameterTable, settings: ModelSettings, bonding: Bonding) ->
     )
 
 
-def _assumptions(fragment: Fragment, table: ParameterTable, electrons: ElectronAssignment) -> tuple[str, ...]:
-    said = [*fragment.notes, f"charge {electrons.charge:+d}: {electrons.charge_reason}"]
-    said.append(f"{electrons.unpaired_electrons} unpaired electrons: {electrons.unpaired_reason}")
+def _assumptions(
+    fragment: Fragment, coordination: Coordination, table: ParameterTable, electrons: ElectronAssignment
+) -> tuple[str, ...]:
+    charge = f"{electrons.charge:+d}" if electrons.charge else "0"
+    said = [
+        *fragment.notes,
+        f"charge {charge}: {electrons.charge_reason}",
+        f"unpaired electrons {electrons.unpaired_electrons}: {electrons.unpaired_reason}",
+        *_ligand_charges(fragment, coordination),
+    ]
     if table.inherited:
         keys = ", ".join(table.inherited)
         said.append(f"the table {table.name} does not state {keys}: taken from the standard set")
     return tuple(said)
+
+
+def _ligand_charges(fragment: Fragment, coordination: Coordination) -> tuple[str, ...]:
+    """Formal charge of each kind of ligand, with the donors or first atoms that carry it."""
+    carriers: dict[tuple[str, int | None], list[str]] = {}
+    for ligand in coordination.ligands:
+        named = ligand.donors or ligand.atoms[:1]
+        carriers.setdefault((ligand.formula, ligand.charge), []).append("/".join(fragment.labels[i] for i in named))
+    parts = [
+        f"{formula} {'unknown' if charge is None else f'{charge:+d}' if charge else '0'} ({', '.join(atoms)})"
+        for (formula, charge), atoms in carriers.items()
+    ]
+    return (f"ligand charges by counting: {', '.join(parts)}",) if parts else ()
 
 
 def _electronic_warnings(fragment: Fragment, coordination: Coordination, bonding: Bonding) -> tuple[str, ...]:

@@ -20,7 +20,8 @@ CLOSE_WEIGHTS = 0.15
 
 _WORTH_TURNING = 0.1  # below, a channel is a trace and its name does not matter
 _MIXED = 0.02
-_FROM_MOMENTS = np.linalg.inv(np.vander([0.0, 1.0, 4.0, 9.0], increasing=True))
+_SQUARES = np.array([0.0, 1.0, 4.0, 9.0])
+_FROM_MOMENTS = np.linalg.inv(np.vander(_SQUARES, increasing=True))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -83,11 +84,20 @@ def _separated(matrices: FloatArray, squared_m: FloatArray) -> tuple[FloatArray,
     spread = (turned * turned).sum(axis=1) - (vectors * turned).sum(axis=1) ** 2
     for b in ((spread > _MIXED) & (weights > _WORTH_TURNING)).any(axis=1).nonzero()[0]:
         for first, stop in _close_sets(weights[b]):
-            inside = vectors[b][:, first:stop]
-            turn = np.linalg.eigh(inside.T @ squared_m[b] @ inside)[1]
-            vectors[b][:, first:stop] = inside @ turn
+            vectors[b][:, first:stop] = _of_definite_m(vectors[b][:, first:stop], matrices[b], squared_m[b])
         weights[b] = np.einsum("ik,ij,jk->k", vectors[b], matrices[b], vectors[b])
     return weights, vectors
+
+
+def _of_definite_m(vectors: FloatArray, matrix: FloatArray, squared_m: FloatArray) -> FloatArray:
+    """Same space, block by block of |m|; within a block the eigenvectors of the matrix, so that rounding has no say."""
+    values, turn = np.linalg.eigh(vectors.T @ squared_m @ vectors)
+    turned: FloatArray = vectors @ turn
+    nearest = np.abs(values[:, None] - _SQUARES).argmin(axis=1)
+    for m in set(nearest.tolist()):
+        block = turned[:, nearest == m]
+        turned[:, nearest == m] = block @ np.linalg.eigh(block.T @ matrix @ block)[1]
+    return turned
 
 
 def _close_sets(weights: FloatArray) -> list[tuple[int, int]]:

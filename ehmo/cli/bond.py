@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from ehmo.cli.output import write_whole
 from ehmo.errors import InputError
 
 if TYPE_CHECKING:
+    from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
-    from ehmo.records.report import BondReport
 
 _SWITCH = {"on": True, "off": False}
 
@@ -87,28 +88,27 @@ def calculation_options(chosen: argparse.Namespace) -> Options:
 
 def run(chosen: argparse.Namespace) -> str:
     """Report of each structure in the file."""
-    from ehmo.calculate import bond_report
-    from ehmo.orbitals.parameters import load_parameters
     from ehmo.structure import read_frames
 
-    options = calculation_options(chosen)
-    table = load_parameters(chosen.params)
-    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
-    reports = [bond_report(fragment, table, options) for fragment in fragments]
-    return present(reports, chosen.json)
+    return report_on(read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes), chosen)
 
 
-def present(reports: list[BondReport], json_path: str | None) -> str:
+def report_on(fragments: Sequence[Fragment], chosen: argparse.Namespace) -> str:
     """Text for the terminal; the JSON document goes to its file, or replaces the text."""
-    if json_path is not None:
+    from ehmo.calculate import bond_report
+    from ehmo.orbitals.parameters import load_parameters
+
+    if chosen.json == "":
+        raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
+    options, table = calculation_options(chosen), load_parameters(chosen.params)
+    reports = [bond_report(fragment, table, options) for fragment in fragments]
+    if chosen.json is not None:
         from ehmo.report.document import json_text
 
         document = json_text(reports)
-        if json_path == "-":
+        if chosen.json == "-":
             return document
-        if not json_path:
-            raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
-        write_whole(json_path, document)
+        write_whole(chosen.json, document)
     from ehmo.report.text import bond_text
 
     rule = "\n" + "=" * 100 + "\n\n"

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from dataclasses import replace
 from importlib import resources
 from typing import Any
 
@@ -30,7 +31,9 @@ def add_command(commands: Any) -> None:
 
 def run(chosen: argparse.Namespace) -> str:
     """Story and report."""
+    from ehmo.structure import read
+
     with resources.as_file(resources.files("ehmo.cli").joinpath("data", "demo.xyz")) as path:
-        chosen.file = str(path)
-        text = bond.run(chosen)
+        fragment = replace(read(path), source="built-in example")
+    text = bond.report_on([fragment], chosen)
     return text if chosen.json == "-" else STORY + text

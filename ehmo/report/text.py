@@ -16,6 +16,7 @@ from ehmo.records.coordination import MetalDonorBond
 from ehmo.records.report import BondReport
 from ehmo.records.table import aligned
 from ehmo.report.cautions import CAUTIONS
+from ehmo.structure.elements import F_BLOCK, with_state
 
 WIDTH = 100
 FULL_CHANNEL = 0.60
@@ -66,19 +67,44 @@ def channels_in_words(channels: Sequence[BondChannel]) -> str:
     return ", ".join(parts) or "traces only"
 
 
+def electrons_in_words(report: BondReport) -> str:
+    """Formula, charge and unpaired electrons, such as ``H10O6V, charge +2, 1 unpaired electron``."""
+    fragment = report.fragment
+    unpaired = fragment.unpaired_electrons
+    charge = f"{fragment.charge:+d}" if fragment.charge else "0"
+    return f"{fragment.formula}, charge {charge}, {unpaired or 'no'} unpaired electron{'' if unpaired == 1 else 's'}"
+
+
+def _count_in_words(report: BondReport) -> str:
+    """Oxidation state and d count by textbook counting, where they can be told."""
+    total, metals = report.electrons.metal_oxidation_total, report.coordination.metals
+    if total is None:
+        return ""
+    if len(metals) > 1:
+        return f"; metals {total:+d} in all by counting"
+    symbol = report.fragment.symbols[metals[0]]
+    count = report.electrons.d_electrons
+    configuration = "" if count is None else f" {'f' if symbol in F_BLOCK else 'd'}{count}"
+    return f"; {with_state(symbol, total)}{configuration} by counting"
+
+
+def _axes(report: BondReport) -> list[str]:
+    """Local axes of each metal, in words."""
+    labels = report.fragment.labels
+    return [f"Axes of {labels[f.metal]}: z {f.z_reason}, x {f.x_reason}" for f in report.coordination.frames]
+
+
 def _heading(report: BondReport) -> list[str]:
     fragment, method = report.fragment, report.method
-    unpaired = fragment.unpaired_electrons
-    electrons = f"{unpaired} unpaired electron{'' if unpaired == 1 else 's'}"
     charges = (
         "fixed charges"
         if method.charge_model == "fixed"
         else f"self-consistent charges (lambda {method.lambda_:g}, converged in {method.iterations} iterations)"
     )
-    title = f"  {visible(fragment.title)}" if fragment.title else ""
     return [
-        f"{visible(fragment.source) or 'fragment'}{title}",
-        f"{fragment.formula}, charge {fragment.charge:+d}, {electrons}",
+        visible(fragment.source) or "fragment",
+        *([f"Title: {visible(fragment.title)}"] if fragment.title else []),
+        f"{electrons_in_words(report)}{_count_in_words(report)}",
         f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
     ]
 
@@ -182,8 +208,8 @@ def _frontier(report: BondReport) -> list[str]:
         ]
         for place, k in enumerate(shown)
     ]
-    heading = "Frontier orbitals (overlap population for two electrons, positive = bonding; functions in local axes)"
-    return [heading, *aligned(rows, numeric=range(7), indent="  ")]
+    heading = "Frontier orbitals (overlap population for two electrons, positive = bonding)"
+    return [heading, *_axes(report), *aligned(rows, numeric=range(7), indent="  ")]
 
 
 def _leading_part(report: BondReport, gross: FloatArray) -> str:

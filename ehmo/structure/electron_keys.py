@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable
+from collections.abc import Iterable, Set
 from dataclasses import dataclass
 
 from ehmo.errors import InputError
@@ -15,6 +15,8 @@ _SIGN_LAST = re.compile(r"(\d{1,4})([+-])")
 _CHARGE_KEYS = frozenset({"charge", "total_charge"})
 _UNPAIRED_KEYS = frozenset({"unpaired", "unpaired_electrons", "spin2s", "2s"})
 _MULTIPLICITY_KEYS = frozenset({"multiplicity", "mult"})
+ELECTRON_KEYS = _CHARGE_KEYS | _UNPAIRED_KEYS | _MULTIPLICITY_KEYS
+"""Keys, in lower case, that state charge or spin."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,6 +30,11 @@ class StatedElectrons:
 def comment_pairs(comment: str) -> list[tuple[str, str]]:
     """Pairs ``key=value`` of a comment line, quotes taken off."""
     return [(key, value.strip("\"'")) for key, value in _PAIR.findall(comment)]
+
+
+def without_keys(comment: str, keys: Set[str]) -> str:
+    """Comment line with the pairs of some keys (in lower case) taken out."""
+    return _PAIR.sub(lambda pair: "" if pair[1].lower() in keys else pair[0], comment).strip()
 
 
 def stated_electrons(pairs: Iterable[tuple[str, object]], place: str) -> StatedElectrons:

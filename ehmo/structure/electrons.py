@@ -9,7 +9,7 @@ from ehmo.errors import ElectronCountError
 from ehmo.records.coordination import Coordination, DonorKind, ElectronAssignment
 from ehmo.records.fragment import Fragment
 from ehmo.structure.elements import (
-    ACTINIDES,
+    F_BLOCK,
     LANTHANIDES,
     OXIDATION_STATES,
     TRANSITION_METALS,
@@ -213,7 +213,7 @@ def _guessed_unpaired(
             mend=f"give their number: {parity}, {parity + 2}, {parity + 4} ...",
         )
     symbol = fragment.symbols[coordination.metals[0]]
-    f_block = symbol in LANTHANIDES | ACTINIDES
+    f_block = symbol in F_BLOCK
     shell, size = ("f", 7) if f_block else ("d", 5)
     most = min(count, 2 * size - count)
     candidates = [n for n in range(most % 2, most + 1, 2) if n % 2 == parity]

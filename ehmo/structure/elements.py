@@ -16,7 +16,8 @@ def _span(first: str, last: str) -> frozenset[str]:
 
 LANTHANIDES: Final = _span("La", "Yb")
 ACTINIDES: Final = _span("Ac", "No")
-TRANSITION_METALS: Final = _span("Sc", "Zn") | _span("Y", "Cd") | _span("Lu", "Hg") | {"Lr"} | LANTHANIDES | ACTINIDES
+F_BLOCK: Final = LANTHANIDES | ACTINIDES
+TRANSITION_METALS: Final = _span("Sc", "Zn") | _span("Y", "Cd") | _span("Lu", "Hg") | {"Lr"} | F_BLOCK
 """Groups 3 to 12 with the lanthanides and actinides: always metals."""
 
 P_BLOCK_METALS: Final = frozenset({"Al", "Ga", "In", "Tl", "Sn", "Pb", "Bi"})
@@ -138,5 +139,5 @@ def valence_d_or_f_electrons(symbol: str, oxidation_state: int) -> int | None:
         return None
     noble_gas = max(z for z in (18, 36, 54, 86) if z < atomic_number(symbol))
     beyond = atomic_number(symbol) - noble_gas
-    filled_f = 14 if noble_gas >= 54 and symbol not in LANTHANIDES | ACTINIDES else 0
+    filled_f = 14 if noble_gas >= 54 and symbol not in F_BLOCK else 0
     return beyond - filled_f - oxidation_state

@@ -151,7 +151,7 @@ def _frame_fragments(frame: XyzFrame, place: str) -> tuple[Fragment, ...]:
         return (plain_fragment(frame, place),)
     stated = stated_electrons(comment_pairs(frame.comment), f"{place}, line {frame.first_line + 1}")
     source = place if frame.number == 1 else f"{place}, frame {frame.number}"
-    return _fragments_of(extended_atoms(frame, place), source, frame.comment, stated)
+    return _fragments_of(extended_atoms(frame, place), source, frame.title, stated)
 
 
 def _fragments_of(atoms: Atoms, source: str, title: str, stated: StatedElectrons) -> tuple[Fragment, ...]:

@@ -33,8 +33,27 @@ def test_plain_frame(read):
     assert fragment.symbols == ("V", "O", "Cl", "Cl", "Cl")
     assert fragment.charge == 0
     assert fragment.unpaired_electrons == 0
-    assert fragment.title == "VOCl3 charge=0 unpaired=0"
+    assert fragment.title == "VOCl3"
     assert fragment.positions_A[1, 2] == 1.57
+
+
+def test_extended_frame_with_the_usual_columns_equals_ases_reading(tmp_path, read):
+    """Cross-check: ASE 3.29 wrote and reads the same frame, with a further column."""
+    from ase import Atoms
+    from ase.io import read as read_with_ase
+    from ase.io import write
+
+    (plain,) = read(VOCL3)
+    atoms = Atoms(plain.symbols, plain.positions_A, info={"charge": 0, "unpaired": 0, "note": "an oxo"})
+    atoms.set_initial_charges([0.5, -0.5, 0, 0, 0])
+    path = tmp_path / "a.extxyz"
+    write(path, atoms)
+    (fragment,) = read(path.read_text())
+    again = read_with_ase(path)
+    assert fragment.symbols == tuple(again.get_chemical_symbols())
+    assert (fragment.positions_A == again.positions).all()
+    assert (fragment.charge, fragment.unpaired_electrons) == (0, 0)
+    assert fragment.title == 'note="an oxo"'
 
 
 @pytest.mark.parametrize(
@@ -139,8 +158,9 @@ FAULTS = {
     "blank": (" \n\t\n", "the file is empty"),
     "binary": ("5\n\0\1\2", "binary"),
     "bad properties": (VOCL3.replace("VOCl3", "Properties=species:S:1:pos:R:9"), "line 2: extended XYZ"),
-    "extended nan": (VOCL3.replace("VOCl3", "Properties=species:S:1:pos:R:3").replace("1.57", "nan"), "at atom 2"),
-    "extended non-number": (VOCL3.replace("VOCl3", "Properties=species:S:1:pos:R:3").replace("1.57", "x"), "line 2"),
+    "extended nan": (VOCL3.replace("VOCl3", "Properties=species:S:1:pos:R:3").replace("1.57", "nan"), "line 4"),
+    "other columns nan": (VOCL3.replace("VOCl3", "Properties=pos:R:3:species:S:1").replace("1.57", "nan"), "line 2"),
+    "extended non-number": (VOCL3.replace("VOCl3", "Properties=species:S:1:pos:R:3").replace("1.57", "x"), "line 4"),
 }
 
 
