@@ -33,6 +33,7 @@ from ehmo.records.electronic import ElectronicState, OverlapSpectrum
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 from ehmo.records.report import BondReport, Method
+from ehmo.records.wording import signed
 from ehmo.structure import assign_electrons, perceive
 
 _THREADS_PAY_FROM = 400
@@ -222,10 +223,9 @@ def _method(table: ParameterTable, settings: ModelSettings, bonding: Bonding) ->
 def _assumptions(
     fragment: Fragment, coordination: Coordination, table: ParameterTable, electrons: ElectronAssignment
 ) -> tuple[str, ...]:
-    charge = f"{electrons.charge:+d}" if electrons.charge else "0"
     said = [
         *fragment.notes,
-        f"charge {charge}: {electrons.charge_reason}",
+        f"charge {signed(electrons.charge)}: {electrons.charge_reason}",
         f"unpaired electrons {electrons.unpaired_electrons}: {electrons.unpaired_reason}",
         *_ligand_charges(fragment, coordination),
     ]
@@ -241,10 +241,7 @@ def _ligand_charges(fragment: Fragment, coordination: Coordination) -> tuple[str
     for ligand in coordination.ligands:
         named = ligand.donors or ligand.atoms[:1]
         carriers.setdefault((ligand.formula, ligand.charge), []).append("/".join(fragment.labels[i] for i in named))
-    parts = [
-        f"{formula} {'unknown' if charge is None else f'{charge:+d}' if charge else '0'} ({', '.join(atoms)})"
-        for (formula, charge), atoms in carriers.items()
-    ]
+    parts = [f"{formula} {signed(charge)} ({', '.join(atoms)})" for (formula, charge), atoms in carriers.items()]
     return (f"ligand charges by counting: {', '.join(parts)}",) if parts else ()
 
 

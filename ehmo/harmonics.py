@@ -35,7 +35,7 @@ def real_harmonics(directions: FloatArray, l_max: int) -> FloatArray:
 
     References
     ----------
-    .. [1] varshalovich1988: D. A. Varshalovich, A. N. Moskalev, V. K. Khersonskii, Quantum Theory of Angular
+    .. [1] varshalovich-1988: D. A. Varshalovich, A. N. Moskalev, V. K. Khersonskii, Quantum Theory of Angular
        Momentum, World Scientific 1988, chapter 5 (from memory).
     """
     polynomials, azimuth = _harmonic_factors(l_max)

@@ -129,7 +129,7 @@ def mulliken_charges(coefficients: FloatArray, overlap: FloatArray, filling: Flo
 
     References
     ----------
-    .. [1] mulliken1955: R. S. Mulliken, J. Chem. Phys. 23, 1833 (1955).
+    .. [1] mulliken-1955: R. S. Mulliken, J. Chem. Phys. 23, 1833 (1955).
     """
     occupied = coefficients[:, : int(filling.nonzero()[0][-1]) + 1]
     gross = ((overlap @ occupied) * occupied) @ filling[: occupied.shape[1]]
@@ -158,8 +158,8 @@ def charge_interaction(positions_A: FloatArray, hardness_eV: FloatArray, weight:
 
     References
     ----------
-    .. [1] klopman1964: G. Klopman, J. Am. Chem. Soc. 86, 4550 (1964).
-    .. [2] ohno1964: K. Ohno, Theor. Chim. Acta 2, 219 (1964).
+    .. [1] klopman-1964: G. Klopman, J. Am. Chem. Soc. 86, 4550 (1964).
+    .. [2] ohno-1964: K. Ohno, Theor. Chim. Acta 2, 219 (1964).
     """
     difference = positions_A[:, None, :] - positions_A
     squared = np.einsum("abi,abi->ab", difference, difference)

@@ -40,9 +40,9 @@ def wolfsberg_helmholz(
 
     References
     ----------
-    .. [1] wolfsberg1952: M. Wolfsberg, L. Helmholz, J. Chem. Phys. 20, 837 (1952).
-    .. [2] hoffmann1963: R. Hoffmann, J. Chem. Phys. 39, 1397 (1963).
-    .. [3] ammeter1978: J. H. Ammeter, H.-B. Bürgi, J. C. Thibeault, R. Hoffmann, J. Am. Chem. Soc. 100, 3686 (1978).
+    .. [1] wolfsberg-1952: M. Wolfsberg, L. Helmholz, J. Chem. Phys. 20, 837 (1952).
+    .. [2] hoffmann-1963: R. Hoffmann, J. Chem. Phys. 39, 1397 (1963).
+    .. [3] ammeter-1978: J. H. Ammeter, H.-B. Bürgi, J. C. Thibeault, R. Hoffmann, J. Am. Chem. Soc. 100, 3686 (1978).
     """
     h = basis.type_h_ii_eV
     mean = (h[:, None] + h) / 2

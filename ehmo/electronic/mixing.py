@@ -26,7 +26,7 @@ class AndersonMixer:
 
     References
     ----------
-    .. [1] anderson1965: D. G. Anderson, J. Assoc. Comput. Mach. 12, 547 (1965).
+    .. [1] anderson-1965: D. G. Anderson, J. Assoc. Comput. Mach. 12, 547 (1965).
     """
 
     def __init__(self, start: FloatArray, *, damping: float = 0.5, depth: int = 5) -> None:

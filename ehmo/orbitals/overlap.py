@@ -36,8 +36,8 @@ class ChannelScale:
 
     References
     ----------
-    .. [1] wolfsberg1952: K differs for sigma and pi.
-    .. [2] calzaferri1989: exponential dependence on distance.
+    .. [1] wolfsberg-1952: K differs for sigma and pi.
+    .. [2] calzaferri-1989: exponential dependence on distance.
     """
 
     by_m: tuple[float, float, float, float]

@@ -38,7 +38,7 @@ def channel_overlaps(first: RadialFunction, second: RadialFunction, distances_bo
 
     References
     ----------
-    .. [1] mulliken1949: R. S. Mulliken, C. A. Rieke, D. Orloff, H. Orloff, J. Chem. Phys. 17, 1248 (1949):
+    .. [1] mulliken-1949: R. S. Mulliken, C. A. Rieke, D. Orloff, H. Orloff, J. Chem. Phys. 17, 1248 (1949):
        coordinates and closed formulas (from memory).
     """
     distances = np.asarray(distances_bohr, dtype=np.float64)

@@ -16,6 +16,7 @@ from ehmo.records.coordination import Coordination, ElectronAssignment, MetalDon
 from ehmo.records.electronic import ElectronicState
 from ehmo.records.fragment import Fragment
 from ehmo.records.table import aligned
+from ehmo.records.wording import BOND_NUMBERS, bond_rows, electrons_in_words
 
 
 @dataclass(frozen=True, slots=True)
@@ -128,12 +129,12 @@ class BondReport:
             for shell in dict.fromkeys(shells)
         }
 
+    def orders_of(self, metal: int) -> tuple[BondOrders, ...]:
+        """Orders of the bonds of one metal, in the order of `coordination.bonds_of`."""
+        return tuple(orders for bond, orders in self.bonds() if bond.metal == metal)
+
     def __str__(self) -> str:
-        heading = (
-            f"{self.fragment.formula}, charge {self.fragment.charge:+d}, "
-            f"{self.fragment.unpaired_electrons} unpaired, set {self.method.parameter_set}"
-        )
-        return "\n".join([heading, *aligned(self._rows(), numeric=(2, 3, 4, 5))])
+        return "\n".join([self._heading(), *aligned(self._rows(), numeric=BOND_NUMBERS)])
 
     __repr__ = __str__
 
@@ -141,18 +142,16 @@ class BondReport:
         head, *body = self._rows()
         rows = ["".join(f"<th>{escape(cell)}</th>" for cell in head)]
         rows += ["".join(f"<td>{escape(cell)}</td>" for cell in row) for row in body]
-        return "<table>" + "".join(f"<tr>{row}</tr>" for row in rows) + "</table>"
+        return (
+            f"<table><caption>{escape(self._heading())}</caption>"
+            + "".join(f"<tr>{row}</tr>" for row in rows)
+            + "</table>"
+        )
+
+    def _heading(self) -> str:
+        fragment, method = self.fragment, self.method
+        model = f"set {method.parameter_set}, {method.charge_model} charges"
+        return f"{fragment.formula}, {electrons_in_words(fragment)}, {model}"
 
     def _rows(self) -> list[list[str]]:
-        rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg"]]
-        for bond, orders in self.bonds():
-            numbers = (orders.overlap_population, orders.mayer, orders.wiberg)
-            rows.append(
-                [
-                    self.bond_label(bond),
-                    bond.kind,
-                    f"{bond.length_A:.3f}",
-                    *(f"{value:.2f}" for value in numbers),
-                ]
-            )
-        return rows
+        return bond_rows(self.coordination.bonds, self.orders, self.fragment.labels)

@@ -8,24 +8,18 @@ from collections.abc import Sequence
 import numpy as np
 
 from ehmo.analysis.local_frame import local_gross_populations
-from ehmo.conventions import BOND_SYMMETRIES
 from ehmo.errors import visible
 from ehmo.records.arrays import FloatArray
 from ehmo.records.bonding import BondChannel
 from ehmo.records.coordination import MetalDonorBond
 from ehmo.records.report import BondReport
 from ehmo.records.table import aligned
+from ehmo.records.wording import BOND_NUMBERS, PARTIAL_CHANNEL, bond_rows, electrons_in_words
 from ehmo.report.cautions import CAUTIONS
 from ehmo.structure.elements import F_BLOCK, with_state
 
 WIDTH = 100
-FULL_CHANNEL = 0.60
-PARTIAL_CHANNEL = 0.20
-"""Weights from which a channel counts as full or as partial when a bond is put into words."""
-
-_LISTED_CHANNEL = 0.05
 _FRONTIER = 6
-_NUMBER_WORDS = ("no", "one", "two", "three", "four", "five", "six")
 
 
 def bond_text(report: BondReport) -> str:
@@ -52,27 +46,6 @@ def bond_text(report: BondReport) -> str:
         _sentences("Cautions", CAUTIONS),
     ]
     return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
-
-
-def channels_in_words(channels: Sequence[BondChannel]) -> str:
-    """Reading of a bond such as ``one sigma, two pi``; weaker channels are called partial."""
-    full = [channel.type for channel in channels if channel.weight >= FULL_CHANNEL]
-    partial = [c.type for c in channels if PARTIAL_CHANNEL <= c.weight < FULL_CHANNEL]
-    parts = [
-        f"{_NUMBER_WORDS[kinds.count(symmetry)]} {prefix}{symmetry}"
-        for prefix, kinds in (("", full), ("partial ", partial))
-        for symmetry in BOND_SYMMETRIES
-        if symmetry in kinds
-    ]
-    return ", ".join(parts) or "traces only"
-
-
-def electrons_in_words(report: BondReport) -> str:
-    """Formula, charge and unpaired electrons, such as ``H10O6V, charge +2, 1 unpaired electron``."""
-    fragment = report.fragment
-    unpaired = fragment.unpaired_electrons
-    charge = f"{fragment.charge:+d}" if fragment.charge else "0"
-    return f"{fragment.formula}, charge {charge}, {unpaired or 'no'} unpaired electron{'' if unpaired == 1 else 's'}"
 
 
 def _count_in_words(report: BondReport) -> str:
@@ -104,38 +77,14 @@ def _heading(report: BondReport) -> list[str]:
     return [
         visible(fragment.source) or "fragment",
         *([f"Title: {visible(fragment.title)}"] if fragment.title else []),
-        f"{electrons_in_words(report)}{_count_in_words(report)}",
+        f"{fragment.formula}, {electrons_in_words(fragment)}{_count_in_words(report)}",
         f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
     ]
 
 
 def _bonds_of(report: BondReport, metal: int) -> list[str]:
-    rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "channels", "weights"]]
-    for bond, orders in report.bonds():
-        if bond.metal == metal:
-            rows.append(
-                [
-                    report.bond_label(bond),
-                    bond.kind,
-                    f"{bond.length_A:.3f}",
-                    f"{orders.overlap_population:.2f}",
-                    f"{orders.mayer:.2f}",
-                    f"{orders.wiberg:.2f}",
-                    channels_in_words(orders.channels),
-                    _weights(orders.channels),
-                ]
-            )
-    return [f"Bonds of {report.fragment.labels[metal]}", *aligned(rows, numeric=(2, 3, 4, 5), indent="  ")]
-
-
-def _weights(channels: Sequence[BondChannel]) -> str:
-    """Weights grouped by symmetry, such as ``sigma 0.75 0.15  pi 0.81 0.80``."""
-    groups = []
-    for symmetry in BOND_SYMMETRIES:
-        weights = [f"{c.weight:.2f}" for c in channels if c.type == symmetry and c.weight >= _LISTED_CHANNEL]
-        if weights:
-            groups.append(f"{symmetry} {' '.join(weights)}")
-    return "  ".join(groups)
+    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), report.fragment.labels)
+    return [f"Bonds of {report.fragment.labels[metal]}", *aligned(rows, numeric=BOND_NUMBERS, indent="  ")]
 
 
 def _hybrids(report: BondReport) -> list[str]:
@@ -202,8 +151,8 @@ def _frontier(report: BondReport) -> list[str]:
             str(k + 1),
             f"{state.energies_eV[k]:.2f}",
             f"{filling[k]:g}" if filling[k] in (0, 1, 2) else f"{filling[k]:.2f}",
-            *(f"{share:.0f}" for share in composition[k]),
-            f"{overlap[k]:+.2f}",
+            *(f"{share:z.0f}" for share in composition[k]),
+            f"{overlap[k]:+z.2f}",
             _leading_part(report, gross[:, place]),
         ]
         for place, k in enumerate(shown)

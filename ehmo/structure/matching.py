@@ -11,8 +11,8 @@ FREE = -1
 def maximum_matching(neighbours: Sequence[Sequence[int]]) -> list[int]:
     """Partner of each vertex in a matching of the largest size, -1 where unmatched.
 
-    Augmenting paths with contraction of odd cycles (Edmonds, Can. J. Math. 17, 449 (1965)): odd rings such as
-    cyclopentadienyl rule out the simpler bipartite methods.
+    Augmenting paths with contraction of odd cycles: odd rings such as cyclopentadienyl rule out the simpler
+    bipartite methods.
 
     Parameters
     ----------
@@ -22,6 +22,10 @@ def maximum_matching(neighbours: Sequence[Sequence[int]]) -> list[int]:
     Returns
     -------
     partner : list of int
+
+    References
+    ----------
+    .. [1] edmonds-1965: J. Edmonds, Can. J. Math. 17, 449 (1965).
     """
     partner = [FREE] * len(neighbours)
     for vertex, near in enumerate(neighbours):

@@ -57,7 +57,7 @@ def perceive(fragment: Fragment) -> Coordination:
         )
         for site in sites
     )
-    bonds = tuple(sorted(bonds, key=lambda bond: (bond.metal, bond.length_A, bond.donor)))
+    bonds = tuple(sorted(bonds, key=lambda bond: (bond.metal, round(bond.length_A, 3), bond.donor)))
     frames = tuple(
         local_frame(fragment, metal, tuple(bond for bond in bonds if bond.metal == metal)) for metal in graph.metals
     )
