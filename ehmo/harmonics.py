@@ -14,8 +14,8 @@ from numpy.typing import NDArray
 
 FloatArray = NDArray[np.float64]
 
-MAX_L = 6
-"""Highest degree evaluated: products of two f functions reach 6."""
+MAX_L = 7
+"""Highest degree evaluated: products of two f functions reach 6, and their dipole integrals 7."""
 
 
 def real_harmonics(directions: FloatArray, l_max: int) -> FloatArray:
@@ -26,7 +26,7 @@ def real_harmonics(directions: FloatArray, l_max: int) -> FloatArray:
     directions : (n, 3) ndarray
         Unit vectors.
     l_max : int
-        Highest degree, at most 6.
+        Highest degree, at most 7.
 
     Returns
     -------

@@ -114,14 +114,13 @@ def _assemble(
     n_ao = len(plan.basis)
     overlap = np.eye(n_ao)
     scaled = None if scale is None else np.zeros((n_ao, n_ao))
-    for group, chunk in _chunks(plan):
+    for index, chunk in pair_chunks(plan):
+        group = plan.groups[index]
         segments, powers = table_positions(distances[chunk])
         harmonics = real_harmonics(vectors[chunk] / distances[chunk, None], group.structure.l_max)
         angular = harmonics[:, group.structure.angular_column]
-        kind = group.kind[chunk.start - group.pairs.start : chunk.stop - group.pairs.start]
-        pieces = group.coefficients[kind, np.minimum(segments, group.coefficients.shape[1] - 1)]
-        channels = (powers[:, None, :] @ pieces)[:, 0]
-        targets = _flat_targets(plan, group, chunk)
+        channels = _channels(group, chunk, segments, powers)
+        targets = flat_targets(plan, group, chunk)
         _put(overlap, targets, _blocks(group.structure, channels, angular))
         if scale is not None and scaled is not None:
             excess = distances[chunk] * BOHR_A - scale.pair_radii(plan.first[chunk], plan.second[chunk])
@@ -130,10 +129,27 @@ def _assemble(
     return overlap, scaled
 
 
-def _chunks(plan: OrbitalPlan) -> Iterator[tuple[PairGroup, slice]]:
-    for group in plan.groups:
+def pair_chunks(plan: OrbitalPlan) -> Iterator[tuple[int, slice]]:
+    """Group number and range of the pairs that are worked on at once."""
+    for index, group in enumerate(plan.groups):
         for start in range(group.pairs.start, group.pairs.stop, _CHUNK):
-            yield group, slice(start, min(start + _CHUNK, group.pairs.stop))
+            yield index, slice(start, min(start + _CHUNK, group.pairs.stop))
+
+
+def channel_blocks(
+    group: PairGroup, chunk: slice, segments: IntArray, powers: FloatArray, harmonics: FloatArray
+) -> FloatArray:
+    """Blocks (n_pairs, n_first * n_second) of some pairs from table positions and harmonics of their directions."""
+    channels = _channels(group, chunk, segments, powers)
+    return _blocks(group.structure, channels, harmonics[:, group.structure.angular_column])
+
+
+def _channels(group: PairGroup, chunk: slice, segments: IntArray, powers: FloatArray) -> FloatArray:
+    """Two-centre integrals (n_pairs, n_channels) out of the tables."""
+    kind = group.kind[chunk.start - group.pairs.start : chunk.stop - group.pairs.start]
+    pieces = group.coefficients[kind, np.minimum(segments, group.coefficients.shape[1] - 1)]
+    channels: FloatArray = (powers[:, None, :] @ pieces)[:, 0]
+    return channels
 
 
 def _blocks(structure: BlockStructure, channels: FloatArray, angular: FloatArray) -> FloatArray:
@@ -143,7 +159,7 @@ def _blocks(structure: BlockStructure, channels: FloatArray, angular: FloatArray
     return blocks
 
 
-def _flat_targets(plan: OrbitalPlan, group: PairGroup, chunk: slice) -> tuple[IntArray, IntArray]:
+def flat_targets(plan: OrbitalPlan, group: PairGroup, chunk: slice) -> tuple[IntArray, IntArray]:
     """Positions of each block's elements in the flattened matrix, and of their mirror images."""
     n_ao = len(plan.basis)
     rows, columns = group.structure.element_rows, group.structure.element_columns

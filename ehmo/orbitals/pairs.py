@@ -2,16 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
 
-from basis_params import ParameterTable, Shell
+from basis_params import ParameterTable
 from ehmo.orbitals.blocks import BlockStructure, block_structure
 from ehmo.orbitals.parameters import element_parameters
-from ehmo.orbitals.tables import overlap_table
+from ehmo.orbitals.tables import OverlapTable, overlap_table
 from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.records.basis import Basis
 
@@ -96,7 +96,9 @@ def orbital_plan(symbols: tuple[str, ...], table: ParameterTable) -> OrbitalPlan
                 continue
             firsts.append(first)
             seconds.append(second)
-            kind, coefficients = _stacked_tables(symbols, shells, first, second)
+            kind, coefficients = stacked_tables(
+                symbols, first, second, lambda a, b: overlap_table(shells[a], shells[b])
+            )
             groups.append(
                 PairGroup(slice(start, start + len(first)), block_structure(layout_a, layout_b), kind, coefficients)
             )
@@ -132,18 +134,15 @@ def _pairs_between(first: list[int], second: list[int], same: bool) -> tuple[Int
     return np.repeat(a, len(b)), np.tile(b, len(a))
 
 
-def _stacked_tables(
-    symbols: Sequence[str], shells: dict[str, tuple[Shell, ...]], first: IntArray, second: IntArray
+def stacked_tables(
+    symbols: Sequence[str], first: IntArray, second: IntArray, table_of: Callable[[str, str], OverlapTable]
 ) -> tuple[IntArray, FloatArray]:
     """Element-pair index of each pair, and the tables of those element pairs in one array."""
     names = sorted(set(symbols))
     code = np.array([names.index(symbol) for symbol in symbols], dtype=np.intp)
     pair_code = code[first] * len(names) + code[second]
     present, kind = np.unique(pair_code, return_inverse=True)
-    tables = [
-        overlap_table(shells[names[value // len(names)]], shells[names[value % len(names)]]).coefficients
-        for value in present
-    ]
+    tables = [table_of(names[value // len(names)], names[value % len(names)]).coefficients for value in present]
     n_segments = max(len(table) for table in tables)
     stacked = np.zeros((len(tables), n_segments, *tables[0].shape[1:]))
     for index, table in enumerate(tables):

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from math import factorial, sqrt
 
 from basis_params import Shell
@@ -55,7 +55,8 @@ def radial_function(shell: Shell) -> RadialFunction:
     )
 
 
-def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction, ...]:
+@lru_cache(maxsize=256)
+def orthogonal_radial_functions(shells: tuple[Shell, ...]) -> tuple[RadialFunction, ...]:
     """Radial functions of one atom, outer shells made orthogonal to inner ones of the same l.
 
     Slater functions such as 6p and 7p overlap on their own atom, while their tabulated energies are those of
@@ -64,7 +65,7 @@ def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction
 
     Parameters
     ----------
-    shells : sequence of Shell
+    shells : tuple of Shell
         Shells of one element.
 
     Returns
@@ -91,6 +92,26 @@ def orthogonal_radial_functions(shells: Sequence[Shell]) -> tuple[RadialFunction
             )
         functions[index] = _normalised(function.l, function.primitives)
     return tuple(functions[index] for index in range(len(shells)))
+
+
+def moment_functions(functions: tuple[RadialFunction, ...]) -> tuple[RadialFunction, ...]:
+    """Radial parts of r times each function: r R with l - 1 and l + 1, for dipole integrals.
+
+    Parameters
+    ----------
+    functions : tuple of RadialFunction
+        Functions of one atom.
+
+    Returns
+    -------
+    moments : tuple of RadialFunction
+        For each function the one of lower l (none for s), then the one of higher l; not normalised.
+    """
+    moments = []
+    for function in functions:
+        raised = tuple((n + 1, zeta, weight) for n, zeta, weight in function.primitives)
+        moments += [RadialFunction(l, raised) for l in (function.l - 1, function.l + 1) if l >= 0]
+    return tuple(moments)
 
 
 def _normalised(l: int, primitives: tuple[Primitive, ...]) -> RadialFunction:

@@ -16,7 +16,7 @@ from basis_params import Shell
 from ehmo.conventions import NEGLECTED_OVERLAP
 from ehmo.errors import ParameterError
 from ehmo.orbitals.quadrature import channel_overlaps
-from ehmo.orbitals.radial import orthogonal_radial_functions
+from ehmo.orbitals.radial import RadialFunction, orthogonal_radial_functions
 from ehmo.records.arrays import FloatArray
 
 SHORTEST_BOHR = 0.7
@@ -42,7 +42,6 @@ class OverlapTable:
     coefficients: FloatArray
 
 
-@lru_cache(maxsize=1024)
 def overlap_table(first: tuple[Shell, ...], second: tuple[Shell, ...]) -> OverlapTable:
     """Table for a pair of elements, built once per process and parameter set.
 
@@ -60,7 +59,28 @@ def overlap_table(first: tuple[Shell, ...], second: tuple[Shell, ...]) -> Overla
     ParameterError
         If an exponent is so small that the overlap does not die out within the table.
     """
-    functions = [(a, b) for a in orthogonal_radial_functions(first) for b in orthogonal_radial_functions(second)]
+    return function_table(orthogonal_radial_functions(first), orthogonal_radial_functions(second))
+
+
+@lru_cache(maxsize=2048)
+def function_table(first: tuple[RadialFunction, ...], second: tuple[RadialFunction, ...]) -> OverlapTable:
+    """Table for any radial functions on two centres; see `overlap_table`.
+
+    Parameters
+    ----------
+    first, second : tuple of RadialFunction
+        Functions on the two centres.
+
+    Returns
+    -------
+    table : OverlapTable
+
+    Raises
+    ------
+    ParameterError
+        If an exponent is so small that the overlap does not die out within the table.
+    """
+    functions = [(a, b) for a in first for b in second]
     nodes = np.cos(np.pi * (np.arange(DEGREE + 1) + 0.5) / (DEGREE + 1))
     to_powers = np.linalg.inv(np.vander(nodes, increasing=True))
     pieces: list[FloatArray] = []

@@ -1,4 +1,4 @@
-"""Overlap matrices from PySCF, each Slater function written as a sum of many Gaussians.
+"""Overlap and dipole integrals from PySCF, each Slater function written as a sum of many Gaussians.
 
 r^k exp(-zeta r) = int dt (pi t)^(-1/2) (2 sqrt t)^(-k-1) H_(k+1)(zeta / 2 sqrt t) exp(-zeta^2 / 4t) exp(-t r^2)
 (derived from the transform of exp(-zeta r), Shavitt & Karplus, J. Chem. Phys. 43, 398 (1965), memory), by the
@@ -26,23 +26,39 @@ def gaussian_overlap(
     symbols: Sequence[str], positions_bohr: np.ndarray, shells: Mapping[str, tuple[Shell, ...]]
 ) -> np.ndarray:
     """Overlap matrix in the order atom, shell, m; outer shells Schmidt-orthogonalised to inner ones."""
+    return gaussian_integrals(("int1e_ovlp",), symbols, positions_bohr, shells)[0]
+
+
+def gaussian_integrals(
+    names: Sequence[str], symbols: Sequence[str], positions_bohr: np.ndarray, shells: Mapping[str, tuple[Shell, ...]]
+) -> np.ndarray:
+    """Matrices (n_components, n, n) of PySCF's symmetric one-electron integrals, one after the other."""
     molecule = uncontracted(symbols, positions_bohr, shells)
     contractions = [contraction(molecule, atom, shells[symbol]) for atom, symbol in enumerate(symbols)]
     bounds = molecule.aoslice_by_atom()[:, :2]
     starts = np.concatenate([[0], np.cumsum([c.shape[1] for c in contractions])])
-    overlap = np.zeros((starts[-1], starts[-1]))
-    for a in range(len(symbols)):
-        for b in range(a + 1):
-            block = molecule.intor("int1e_ovlp", shls_slice=(*bounds[a], *bounds[b]))
-            block = contractions[a].T @ block @ contractions[b]
-            overlap[starts[a] : starts[a + 1], starts[b] : starts[b + 1]] = block
-            overlap[starts[b] : starts[b + 1], starts[a] : starts[a + 1]] = block.T
-    schmidt = np.zeros_like(overlap)
+
+    def matrix(name: str) -> np.ndarray:
+        parts = []
+        for a in range(len(symbols)):
+            for b in range(a + 1):
+                block = molecule.intor(name, shls_slice=(*bounds[a], *bounds[b]))
+                block = contractions[a].T @ block.reshape(-1, *block.shape[-2:]) @ contractions[b]
+                parts.append((a, b, block))
+        whole = np.zeros((len(parts[0][2]), starts[-1], starts[-1]))
+        for a, b, block in parts:
+            rows, columns = slice(starts[a], starts[a + 1]), slice(starts[b], starts[b + 1])
+            whole[:, rows, columns] = block
+            whole[:, columns, rows] = block.transpose(0, 2, 1)
+        return whole
+
+    overlap = matrix("int1e_ovlp")
+    schmidt = np.zeros_like(overlap[0])
     for a in range(len(symbols)):
         own = slice(starts[a], starts[a + 1])
         # Shells run by l, then n: the upper-triangular factor of the on-site block is Gram-Schmidt, inner first.
-        schmidt[own, own] = np.linalg.inv(np.linalg.cholesky(overlap[own, own])).T
-    return schmidt.T @ overlap @ schmidt
+        schmidt[own, own] = np.linalg.inv(np.linalg.cholesky(overlap[0, own, own])).T
+    return np.concatenate([schmidt.T @ matrix(name) @ schmidt for name in names])
 
 
 def uncontracted(
