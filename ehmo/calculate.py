@@ -22,14 +22,14 @@ from ehmo.electronic.charges import (
 )
 from ehmo.electronic.eigen import overlap_spectrum
 from ehmo.electronic.hamiltonian import wolfsberg_helmholz
-from ehmo.errors import InputError, LimitError
+from ehmo.errors import EhmoError, InputError, LimitError
 from ehmo.orbitals.overlap import ChannelScale, overlap_matrix, scaled_overlap_matrices
 from ehmo.orbitals.pairs import OrbitalPlan, orbital_plan
 from ehmo.orbitals.parameters import load_parameters
 from ehmo.records.arrays import FloatArray
 from ehmo.records.bonding import BondOrders, Populations
 from ehmo.records.coordination import Coordination, ElectronAssignment
-from ehmo.records.electronic import ElectronicState, OverlapSpectrum
+from ehmo.records.electronic import NO_ELECTRON, ElectronicState, OverlapSpectrum
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 from ehmo.records.report import BondReport, Method
@@ -38,6 +38,9 @@ from ehmo.structure import assign_electrons, perceive
 
 _THREADS_PAY_FROM = 400
 """Below this many functions a second BLAS thread costs more than it brings."""
+
+_LARGEST_CONSTANT = 10.0
+"""Far above any K, decay or lambda in use; beyond lie slips of the pen and numbers that overflow."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -78,6 +81,14 @@ def bond_report(
     options = options or Options()
     table = params if isinstance(params, ParameterTable) else load_parameters(params)
     settings = effective_settings(table.settings, options)
+    try:
+        return _report(fragment, table, settings, options)
+    except EhmoError as error:
+        error.place = error.place or fragment.source
+        raise
+
+
+def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, options: Options) -> BondReport:
     coordination = perceive(fragment)
     electrons = assign_electrons(fragment, coordination, options.charge, options.unpaired_electrons)
     fragment = fragment.with_electrons(electrons.charge, electrons.unpaired_electrons)
@@ -98,10 +109,18 @@ def bond_report(
 
 
 def effective_settings(settings: ModelSettings, options: Options) -> ModelSettings:
-    """Settings of the set with the constants that the options override."""
+    """Settings of the set with the constants that the options override; refused outside any sensible range."""
     names = ("K", "weighting", "K_sigma", "K_pi", "K_delta", "K_decay_per_A", "lambda_")
     chosen = {name: getattr(options, name) for name in names if getattr(options, name) is not None}
-    return replace(settings, **chosen)
+    combined = replace(settings, **chosen)
+    for name in names:
+        value = getattr(combined, name)
+        if value is not None and not 0 <= value <= _LARGEST_CONSTANT:
+            raise InputError(
+                f"{name.rstrip('_')} is {value:g}",
+                mend=f"give the option or the table a number from 0 to {_LARGEST_CONSTANT:g}",
+            )
+    return combined
 
 
 def calculate_bonding(
@@ -216,6 +235,7 @@ def _method(table: ParameterTable, settings: ModelSettings, bonding: Bonding) ->
         lambda_=settings.lambda_,
         iterations=bonding.state.iterations,
         charge_residual=bonding.state.charge_residual,
+        smearing_eV=bonding.state.smearing_eV,
         smallest_overlap_eigenvalue=float(bonding.overlap.eigenvalues[0]),
     )
 
@@ -256,13 +276,24 @@ def _electronic_warnings(fragment: Fragment, coordination: Coordination, bonding
     )
 
 
+def _electrons(count: float) -> str:
+    return f"{count:g} electron{'' if round(count, 6) == 1 else 's'}"
+
+
 def _frontier_warning(state: ElectronicState) -> str:
     occupations = state.occupations.sum(axis=0)
-    shared = np.flatnonzero(((state.occupations > 1e-9) & (state.occupations < 1 - 1e-9)).any(axis=0))
+    part = (state.occupations > NO_ELECTRON) & (state.occupations < 1 - NO_ELECTRON)
+    shared = np.flatnonzero(part.any(axis=0))
     if len(shared):
         levels = ", ".join(str(k + 1) for k in shared)
+        if state.smearing_eV:
+            held = _electrons(round(float(occupations[shared].sum()), 1))
+            return (
+                f"orbitals {levels} cross as the charges settle: they share {held} by a filling smeared over "
+                f"{state.smearing_eV:g} eV; the ground state is nearly degenerate and may distort"
+            )
         return (
-            f"orbitals {levels} are degenerate and share {occupations[shared].sum():g} electrons evenly: "
+            f"orbitals {levels} are degenerate and share {_electrons(occupations[shared].sum())} evenly: "
             "the ground state may distort"
         )
     lumo = state.lumo
@@ -290,5 +321,5 @@ def _spin_warning(fragment: Fragment, coordination: Coordination, bonding: Bondi
     atom = int(np.add.reduceat(gross, bonding.plan.basis.atom_start[:-1]).argmax())
     return (
         f"only {100 * on_metal:.0f} % of the unpaired density is on the metal: orbital {worst + 1} holds an unpaired "
-        f"electron and lies mostly on {atom_label(fragment.symbols[atom], atom)}; check the spin state"
+        f"electron and has its largest part on {atom_label(fragment.symbols[atom], atom)}; check the spin state"
     )

@@ -60,3 +60,7 @@ class LimitError(EhmoError):
 
 class ConvergenceError(EhmoError):
     """Charges that do not settle; such a calculation is never reported as a result."""
+
+
+class MultipletError(EhmoError):
+    """Terms or magnetism asked of a shell that has none to give, or more than are computed here."""

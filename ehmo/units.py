@@ -14,3 +14,12 @@ HARTREE_EV = 27.211386245981
 
 COULOMB_EV_A = HARTREE_EV * BOHR_A
 """e^2 / (4 pi epsilon_0) [eV angstrom]."""
+
+PER_CM_PER_EV = 8065.543937349211
+"""Wavenumber of one electronvolt [cm^-1]."""
+
+BOLTZMANN_PER_CM_K = 0.6950348004861274
+"""Boltzmann constant [cm^-1 / K]."""
+
+ELECTRON_G = 2.00231930436092
+"""g factor of the free electron, taken positive."""

@@ -19,3 +19,16 @@ def test_hartree_codata_2022():
 def test_coulomb_constant_codata_2022():
     expected = constants.e / (4 * constants.pi * constants.epsilon_0) * 1e10
     assert pytest.approx(expected, rel=1e-9) == units.COULOMB_EV_A
+
+
+def test_wavenumber_of_an_electronvolt_codata_2022():
+    assert pytest.approx(constants.e / (constants.h * constants.c) / 100, rel=1e-12) == units.PER_CM_PER_EV
+
+
+def test_boltzmann_constant_in_wavenumbers_codata_2022():
+    expected = constants.k / (constants.h * constants.c) / 100
+    assert pytest.approx(expected, rel=1e-12) == units.BOLTZMANN_PER_CM_K
+
+
+def test_electron_g_factor_codata_2022():
+    assert pytest.approx(-constants.value("electron g factor"), rel=1e-12) == units.ELECTRON_G

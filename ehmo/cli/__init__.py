@@ -36,17 +36,32 @@ def main(arguments: Sequence[str] | None = None) -> int:
     try:
         chosen = _parser().parse_args(arguments)
         handler: Handler = chosen.handler
-        sys.stdout.write(handler(chosen))
-        sys.stdout.flush()
+        return _show(handler(chosen))
     except EhmoError as error:
         print(f"ehmo: {error}", file=sys.stderr)
         return USAGE_ERROR
-    except BrokenPipeError:
-        # The reader of a pipe, such as head, has seen enough; the interpreter must not complain at exit.
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
     except KeyboardInterrupt:
         return INTERRUPTED
+
+
+def _show(text: str) -> int:
+    """Write the text on the standard output; the status says whether it arrived."""
+    try:
+        sys.stdout.write(text)
+        sys.stdout.flush()
+    except BrokenPipeError:
+        # The reader of a pipe, such as head, has seen enough.
+        _discard_the_rest()
+    except OSError as fault:
+        _discard_the_rest()
+        print(f"ehmo: cannot write the output ({fault.strerror or fault}); choose a place with room", file=sys.stderr)
+        return USAGE_ERROR
     return 0
+
+
+def _discard_the_rest() -> None:
+    """Lead what is still buffered nowhere, so that the interpreter has nothing to fail on at exit."""
+    os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
 
 
 class _Parser(argparse.ArgumentParser):

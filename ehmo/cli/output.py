@@ -12,7 +12,8 @@ from ehmo.errors import InputError
 def write_whole(path: str | Path, text: str) -> None:
     """Write a text file so that a failure leaves no half of it behind.
 
-    The text goes to a temporary file in the same folder, which then takes the name of the target.
+    The text goes to a temporary file in the same folder, which then takes the name of the target. A link keeps
+    pointing where it does; a pipe or a device is written to and never replaced.
 
     Parameters
     ----------
@@ -29,6 +30,10 @@ def write_whole(path: str | Path, text: str) -> None:
     target = Path(path)
     temporary: str | None = None
     try:
+        target = target.resolve()
+        if target.exists() and not target.is_file():
+            target.write_text(text, encoding="utf-8")
+            return
         with tempfile.NamedTemporaryFile(
             "w", encoding="utf-8", dir=target.parent, prefix=f".{target.name}.", delete=False
         ) as file:
@@ -36,12 +41,12 @@ def write_whole(path: str | Path, text: str) -> None:
             file.write(text)
         _give_usual_permissions(temporary)
         Path(temporary).replace(target)
-    except OSError as fault:
+    except (OSError, ValueError, RuntimeError) as fault:  # ValueError: a null character; RuntimeError: a loop of links
         if temporary is not None:
             Path(temporary).unlink(missing_ok=True)
         raise InputError(
-            f"cannot write the file ({fault.strerror or fault})",
-            place=str(target),
+            f"cannot write the file ({getattr(fault, 'strerror', None) or fault})",
+            place=str(path),
             mend="choose a folder that exists, is writable and has room",
         ) from fault
 

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import argparse
+import re
 import textwrap
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from ehmo.errors import ParameterError, visible
@@ -23,7 +25,7 @@ def add_command(commands: Any) -> None:
     actions = parser.add_subparsers(metavar="ACTION", required=True)
     listed = actions.add_parser("list", help="names of the shipped sets and the elements they cover")
     listed.set_defaults(handler=run_list)
-    shown = actions.add_parser("show", help="rows of a set with their sources")
+    shown = actions.add_parser("show", help="rows of a set, hardness of its atoms, references")
     shown.add_argument("set", metavar="NAME|FILE", help="shipped set or table file")
     shown.add_argument("elements", metavar="ELEMENT", nargs="*", help="only these elements")
     shown.set_defaults(handler=run_show)
@@ -61,7 +63,7 @@ def run_show(chosen: argparse.Namespace) -> str:
             f"the set {table.name} has no {', '.join(missing)}",
             mend=f"choose from {' '.join(table.elements)}",
         )
-    rows = [["element", "valence e", "shell", "H_ii/eV", "zeta (c)", "source", "known by"]]
+    rows = [["element", "valence e", "shell", "H_ii/eV", "zeta/bohr^-1 (c)", "source", "origin"]]
     for symbol in elements:
         element = table.elements[symbol]
         for shell in element.shells:
@@ -83,8 +85,58 @@ def run_show(chosen: argparse.Namespace) -> str:
     ]
     if table.inherited:
         head.append(f"not stated in the table, taken from the standard set: {', '.join(table.inherited)}")
-    notes = [line for note in table.notes for line in textwrap.wrap(visible(note), 100, subsequent_indent="  ")]
-    return "\n".join([*head, "", *aligned(rows, numeric=(1, 3)), *(["", "Notes", *notes] if notes else [])]) + "\n"
+    shown = [note for note in table.notes if not (found := _OUTLIER.match(note)) or found[1] in elements]
+    notes = [line for note in shown for line in textwrap.wrap(visible(note), 100, subsequent_indent="  ")]
+    keys = sorted({shell.source_key for symbol in elements for shell in table.elements[symbol].shells})
+    sections = [_COLUMNS, _atoms_text(elements), _references_text(keys), ["Notes", *notes] if notes else []]
+    lines = [line for section in sections if section for line in ("", *section)]
+    return "\n".join([*head, "", *aligned(rows, numeric=(1, 3)), *lines]) + "\n"
+
+
+_OUTLIER = re.compile(r"Audit outlier: (\w+) ")
+
+_CHECKS = [
+    "norm: integral of the squared function, 1. radius: mean radius, energy: H_ii, both against the orbital of a",
+    "  computed free atom. ionisation: highest filled shell against the measured ionisation energy.",
+    "Functions meant for molecules are tighter and deeper than those of free atoms, empty p shells most of all:",
+    "  the audits find wrong digits, exponents and elements; an outlier is a question, not a verdict.",
+]
+
+_COLUMNS = [
+    "valence e: electrons the neutral atom brings. H_ii: minus the valence-state ionisation energy. zeta: exponent",
+    "  of each Slater function, c its coefficient. origin: how the figure came into the table, read in the source,",
+    "  from memory, or derived by a script.",
+]
+
+
+def _atoms_text(elements: Sequence[str]) -> list[str]:
+    """Hardness of the elements, which the charge model adds to the set."""
+    import basis_params
+
+    rows = [["element", "I/eV", "A/eV", "U/eV"]]
+    for symbol in elements:
+        atom = basis_params.atom(symbol)
+        affinity = "-" if atom.electron_affinity_eV is None else f"{atom.electron_affinity_eV:.3f}"
+        rows.append([symbol, f"{atom.ionisation_energy_eV:.3f}", affinity, f"{atom.hardness_U_eV:.3f}"])
+    return [
+        "Hardness U = I - A of the neutral atoms, for self-consistent charges (the same in every set; A below 0",
+        "  or unknown counts as 0)",
+        *aligned(rows, numeric=(1, 2, 3)),
+    ]
+
+
+def _references_text(keys: Sequence[str]) -> list[str]:
+    """What the source keys stand for, as far as they are known."""
+    import basis_params
+
+    known = basis_params.references()
+    width = max(len(key) for key in keys)
+    lines = []
+    for key in keys:
+        text = known[key].text if key in known else "given by the table alone"
+        hanging = " " * (width + 2)
+        lines += textwrap.wrap(f"{visible(key):<{width}}  {text}", 100, subsequent_indent=hanging)
+    return ["References", *lines]
 
 
 def run_check(chosen: argparse.Namespace) -> str:
@@ -114,11 +166,12 @@ def run_check(chosen: argparse.Namespace) -> str:
     lines = [f"{visible(table.name)} (edition {visible(table.edition)}), {visible(table.origin)}"]
     lines += aligned(counts, numeric=(1, 2, 3), indent="  ")
     if outliers:
-        heading = ["element", "shell", "check", "table", "reference", "ratio", "bounds"]
-        lines += ["", "Outside the bounds; free atoms are a yardstick for wrong digits, not a verdict:"]
+        heading = ["element", "shell", "check", "table", "free atom", "ratio", "bounds"]
+        lines += ["", "Outside the bounds of table/free atom (radius in bohr, energy and ionisation in eV):"]
         lines += aligned([heading, *outliers], numeric=(3, 4, 5), indent="  ")
     else:
         lines += ["", "Nothing is outside the bounds."]
+    lines += ["", *_CHECKS]
     return "\n".join(lines) + "\n"
 
 
@@ -135,4 +188,5 @@ def _settings_text(table: ParameterTable) -> str:
     ]
     decay = [f"K_decay {settings.K_decay_per_A:g} per Å"] if settings.K_decay_per_A else []
     weighting = "weighted" if settings.weighting else "not weighted"
-    return ", ".join([f"K {settings.K:g} ({weighting})", *channels, *decay, f"lambda {settings.lambda_:g}"])
+    charge = f"charge weight lambda {settings.lambda_:g}"
+    return ", ".join([f"K {settings.K:g} ({weighting})", *channels, *decay, charge])

@@ -13,7 +13,7 @@ import numpy as np
 
 from ehmo.electronic.eigen import solve
 from ehmo.electronic.mixing import AndersonMixer
-from ehmo.electronic.occupation import fill
+from ehmo.electronic.occupation import fill, fill_smeared
 from ehmo.errors import ConvergenceError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.basis import Basis
@@ -22,6 +22,9 @@ from ehmo.units import COULOMB_EV_A
 
 CHARGE_TOLERANCE = 1e-8
 """Largest change of a charge at convergence [e]."""
+
+SMEARING_EV = 0.02
+"""Width of the Fermi-Dirac filling that takes over where levels cross as the charges settle [eV]."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,7 +81,8 @@ def self_consistent_charges(
     interaction_eV : (n_atoms, n_atoms) ndarray
         lambda gamma, see `charge_interaction` [eV].
     max_iterations : int
-        Diagonalisations allowed.
+        Diagonalisations allowed. If the first half of them does not settle the charges, levels cross at the
+        frontier: the rest is spent with the filling smeared by `SMEARING_EV`, which the state tells.
 
     Returns
     -------
@@ -89,25 +93,69 @@ def self_consistent_charges(
     ConvergenceError
         If the charges still change by more than `CHARGE_TOLERANCE`.
     """
-    mixer = AndersonMixer(np.zeros(len(basis.symbols)))
-    residual = np.inf
-    for iteration in range(1, max_iterations + 1):
-        potential = -interaction_eV @ mixer.value
-        half = 0.5 * potential[basis.atom_of]
-        energies, coefficients = solve(hamiltonian + overlap * (half[:, None] + half), overlap, basis)
-        occupations = fill(energies, electrons.total, electrons.unpaired)
-        filling = occupations.sum(axis=0)
-        charges = mulliken_charges(coefficients, overlap, filling, basis)
-        residual = float(np.abs(charges - mixer.value).max())
-        if residual < CHARGE_TOLERANCE:
-            gross = basis.core_charges - charges
-            energy = float(energies @ filling - gross @ potential + 0.5 * charges @ interaction_eV @ charges)
-            return ElectronicState(energies, coefficients, occupations, energy, "self-consistent", iteration, residual)
-        mixer.update(charges)
-    raise ConvergenceError(
-        f"the charges still change by {residual:.1e} e after {max_iterations} iterations",
-        mend="try another number of unpaired electrons (a frontier level may be crossing), or --charges fixed",
-    )
+    run = _ChargeIteration(hamiltonian, overlap, basis, electrons, interaction_eV)
+    state = run.settle(0.0, max_iterations // 2) or run.settle(SMEARING_EV, max_iterations)
+    if state is None:
+        raise ConvergenceError(
+            f"the charges still change by {run.residual:.1e} e after {max_iterations} iterations",
+            mend="try another number of unpaired electrons, or --charges fixed",
+        )
+    return state
+
+
+class _ChargeIteration:
+    """The iteration with its current charges: sharp filling first, smeared filling if levels cross."""
+
+    def __init__(
+        self,
+        hamiltonian: FloatArray,
+        overlap: FloatArray,
+        basis: Basis,
+        electrons: ElectronCount,
+        interaction_eV: FloatArray,
+    ) -> None:
+        self._hamiltonian = hamiltonian
+        self._overlap = overlap
+        self._basis = basis
+        self._electrons = electrons
+        self._interaction = interaction_eV
+        self._charges = np.zeros(len(basis.symbols))
+        self.iterations = 0
+        self.residual = np.inf
+
+    def settle(self, smearing_eV: float, limit: int) -> ElectronicState | None:
+        """State whose charges reproduce themselves; None once `limit` diagonalisations are spent in all."""
+        basis, electrons = self._basis, self._electrons
+        mixer = AndersonMixer(self._charges)
+        while self.iterations < limit:
+            self.iterations += 1
+            potential = -self._interaction @ mixer.value
+            half = 0.5 * potential[basis.atom_of]
+            shifted = self._hamiltonian + self._overlap * (half[:, None] + half)
+            energies, coefficients = solve(shifted, self._overlap, basis)
+            if smearing_eV:
+                occupations = fill_smeared(energies, electrons.total, electrons.unpaired, smearing_eV)
+            else:
+                occupations = fill(energies, electrons.total, electrons.unpaired)
+            filling = occupations.sum(axis=0)
+            charges = mulliken_charges(coefficients, self._overlap, filling, basis)
+            self.residual = float(np.abs(charges - mixer.value).max())
+            if self.residual < CHARGE_TOLERANCE:
+                gross = basis.core_charges - charges
+                energy = float(energies @ filling - gross @ potential + 0.5 * charges @ self._interaction @ charges)
+                return ElectronicState(
+                    energies,
+                    coefficients,
+                    occupations,
+                    energy,
+                    "self-consistent",
+                    self.iterations,
+                    self.residual,
+                    smearing_eV,
+                )
+            mixer.update(charges)
+        self._charges = mixer.value
+        return None
 
 
 def mulliken_charges(coefficients: FloatArray, overlap: FloatArray, filling: FloatArray, basis: Basis) -> FloatArray:

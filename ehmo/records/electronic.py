@@ -6,6 +6,9 @@ from dataclasses import dataclass
 
 from ehmo.records.arrays import FloatArray, frozen_floats
 
+NO_ELECTRON = 0.01
+"""Occupation up to which an orbital counts as empty: smeared filling has long tails."""
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class ElectronicState:
@@ -27,6 +30,8 @@ class ElectronicState:
         Diagonalisations.
     charge_residual : float
         Largest change of a charge in the last iteration, 0 for fixed charges [e].
+    smearing_eV : float
+        Width of the Fermi-Dirac filling, 0 for whole electrons [eV].
     """
 
     energies_eV: FloatArray
@@ -36,6 +41,7 @@ class ElectronicState:
     charge_model: str
     iterations: int
     charge_residual: float
+    smearing_eV: float = 0.0
 
     def __post_init__(self) -> None:
         n_mo = len(self.energies_eV)
@@ -47,12 +53,12 @@ class ElectronicState:
     @property
     def homo(self) -> int:
         """Index of the highest orbital that holds electrons."""
-        return int((self.occupations[0] > 0).nonzero()[0][-1])
+        return int((self.occupations[0] > NO_ELECTRON).nonzero()[0][-1])
 
     @property
     def lumo(self) -> int | None:
         """Index of the lowest empty orbital; None if every orbital is filled."""
-        empty = (self.occupations[0] == 0).nonzero()[0]
+        empty = (self.occupations[0] <= NO_ELECTRON).nonzero()[0]
         return int(empty[0]) if len(empty) else None
 
 

@@ -9,6 +9,7 @@ from html import escape
 import numpy as np
 
 from ehmo.conventions import atom_label
+from ehmo.errors import visible
 from ehmo.records.arrays import FloatArray
 from ehmo.records.basis import Basis
 from ehmo.records.bonding import BondOrders, Populations
@@ -43,6 +44,8 @@ class Method:
         Diagonalisations.
     charge_residual : float
         Largest last change of a charge [e].
+    smearing_eV : float
+        Width of the Fermi-Dirac filling, 0 for whole electrons [eV].
     smallest_overlap_eigenvalue : float
         Near zero means nearly dependent functions.
     """
@@ -61,6 +64,7 @@ class Method:
     lambda_: float
     iterations: int
     charge_residual: float
+    smearing_eV: float
     smallest_overlap_eigenvalue: float
 
 
@@ -150,7 +154,7 @@ class BondReport:
 
     def _heading(self) -> str:
         fragment, method = self.fragment, self.method
-        model = f"set {method.parameter_set}, {method.charge_model} charges"
+        model = f"set {visible(method.parameter_set)}, {method.charge_model} charges"
         return f"{fragment.formula}, {electrons_in_words(fragment)}, {model}"
 
     def _rows(self) -> list[list[str]]:

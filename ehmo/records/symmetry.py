@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
+
+import numpy as np
 
 from ehmo.records.arrays import FloatArray, IntArray, frozen_floats, frozen_ints
 
@@ -12,7 +14,8 @@ class PointGroup:
     """A point group with its operations and real character table.
 
     Complex-conjugate pairs of one-dimensional representations are joined into one real representation E. The
-    linear groups are held by the operations of a finite subgroup that tells sigma to phi apart.
+    linear groups are held by the operations of a finite subgroup that tells |m| from 0 to 8 apart; its classes
+    are those of the subgroup.
 
     Attributes
     ----------
@@ -25,7 +28,7 @@ class PointGroup:
     class_of : (n_ops,) ndarray of int
         Class of each operation.
     irreps : tuple of str
-        Mulliken symbols, such as ``b2`` (lower case: orbitals; terms use capitals).
+        Mulliken symbols, such as ``b2`` or ``σg+`` (lower case: orbitals; terms use capitals).
     dimensions : (n_irreps,) ndarray of int
     characters : (n_irreps, n_classes) ndarray
     setting : str
@@ -40,6 +43,10 @@ class PointGroup:
     dimensions: IntArray
     characters: FloatArray
     setting: str
+    by_operation: FloatArray = field(init=False)
+    """(n_irreps, n_ops) Character of each operation."""
+    projection_weights: FloatArray = field(init=False)
+    """(n_irreps, n_ops) Factors p such that sum_R p(R) D(R) projects on the irrep, joined pairs included."""
 
     def __post_init__(self) -> None:
         n_irreps, n_classes, n_ops = len(self.irreps), len(self.class_labels), len(self.operations)
@@ -48,11 +55,37 @@ class PointGroup:
         put(self, "class_of", frozen_ints(self.class_of, (n_ops,), "class_of"))
         put(self, "dimensions", frozen_ints(self.dimensions, (n_irreps,), "dimensions"))
         put(self, "characters", frozen_floats(self.characters, (n_irreps, n_classes), "characters"))
+        by_operation = self.characters[:, self.class_of]
+        put(self, "by_operation", frozen_floats(by_operation, (n_irreps, n_ops), "by_operation"))
+        # d / h, or half of it where E joins two representations: sum_R chi^2 is h, or 2 h.
+        weights = by_operation * (self.dimensions / (by_operation**2).sum(axis=1))[:, None]
+        put(self, "projection_weights", frozen_floats(weights, (n_irreps, n_ops), "projection_weights"))
+
+    def __len__(self) -> int:
+        return len(self.operations)
+
+    def multiplicities(self, characters: FloatArray) -> IntArray:
+        """How often each irrep occurs in a representation.
+
+        Parameters
+        ----------
+        characters : (n_ops,) ndarray
+            Trace of the representation under each operation.
+
+        Returns
+        -------
+        counts : (n_irreps,) ndarray of int
+        """
+        counts: IntArray = np.round(self.projection_weights @ characters / self.dimensions).astype(np.intp)
+        return counts
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Symmetry:
     """Symmetry of some atoms of a fragment, exact or within a tolerance.
+
+    Distances and measure refer to the symmetrised positions in place: they are the nearest that the group allows
+    with its axes at their best.
 
     Attributes
     ----------
@@ -68,9 +101,10 @@ class Symmetry:
     symmetrised_A : (n_atoms, 3) ndarray
         Nearest positions that have the symmetry exactly [angstrom].
     rms_A : float
-        Root mean square distance of the atoms from them [angstrom].
+        Root mean square distance of the atoms from them, an atom at the fixed point not counted [angstrom].
     continuous_measure : float
-        Continuous symmetry measure, 0 (exact) to 100.
+        100 times the sum of squared distances from the symmetrised positions over that from the fixed point:
+        0 is exact.
     """
 
     group: PointGroup
@@ -90,3 +124,50 @@ class Symmetry:
         put(self, "origin_A", frozen_floats(self.origin_A, (3,), "origin_A"))
         put(self, "permutations", frozen_ints(self.permutations, (n_ops, n_atoms), "permutations"))
         put(self, "symmetrised_A", frozen_floats(self.symmetrised_A, (n_atoms, 3), "symmetrised_A"))
+
+
+@dataclass(frozen=True, slots=True)
+class ShapeMeasure:
+    """Distance of a coordination sphere from an ideal polyhedron.
+
+    Attributes
+    ----------
+    shape : str
+        Name of the polyhedron, such as ``octahedron``.
+    measure : float
+        Continuous shape measure, 0 (ideal) to 100.
+    """
+
+    shape: str
+    measure: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class OrbitalIrreps:
+    """Irreps of the orbitals of a fragment, judged on the atoms of a `Symmetry`.
+
+    Attributes
+    ----------
+    labels : tuple of str
+        Irrep with the largest share, per orbital; empty where the orbital has next to nothing on those atoms.
+    shares : (n_mo, n_irreps) ndarray
+        Share of each irrep in the part of the orbital on those atoms; rows add up to 1. Orbitals of one
+        degenerate set have the mean of the set.
+    parts : (n_mo,) ndarray
+        How much of each orbital lies on those atoms (Löwdin).
+    """
+
+    labels: tuple[str, ...]
+    shares: FloatArray
+    parts: FloatArray
+
+    def __post_init__(self) -> None:
+        n_mo = len(self.labels)
+        object.__setattr__(self, "shares", frozen_floats(self.shares, (n_mo, None), "shares"))
+        object.__setattr__(self, "parts", frozen_floats(self.parts, (n_mo,), "parts"))
+
+    @property
+    def label_shares(self) -> FloatArray:
+        """(n_mo,) Share of the irrep that gives the label."""
+        largest: FloatArray = self.shares.max(axis=1)
+        return largest

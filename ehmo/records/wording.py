@@ -73,6 +73,10 @@ def bond_rows(bonds: Sequence[MetalDonorBond], orders: Sequence[BondOrders], lab
         One per bond.
     labels : sequence of str
         Label of each atom.
+
+    Returns
+    -------
+    rows : list of list of str
     """
     rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "channels", "weights"]]
     for bond, order in zip(bonds, orders, strict=True):

@@ -94,6 +94,7 @@ def _method(report: BondReport) -> dict[str, Any]:
         "converged": True,  # a calculation that does not converge raises instead of reporting
         "iterations": method.iterations,
         "charge_residual_e": method.charge_residual,
+        "smearing_eV": method.smearing_eV,
         "K": method.K,
         "K_sigma": method.K_sigma,
         "K_pi": method.K_pi,

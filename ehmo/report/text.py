@@ -76,7 +76,7 @@ def _heading(report: BondReport) -> list[str]:
     )
     return [
         visible(fragment.source) or "fragment",
-        *([f"Title: {visible(fragment.title)}"] if fragment.title else []),
+        *textwrap.wrap(f"Title: {visible(fragment.title)}" if fragment.title else "", WIDTH, subsequent_indent="  "),
         f"{fragment.formula}, {electrons_in_words(fragment)}{_count_in_words(report)}",
         f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
     ]

@@ -157,7 +157,8 @@ def _metal_electrons(fragment: Fragment, coordination: Coordination, oxidation: 
     count = valence_d_or_f_electrons(symbol, oxidation)
     if count is not None and count < 0 and _counts_are_firm(coordination):
         raise ElectronCountError(
-            f"the charge asks for {with_state(symbol, oxidation)}, {-count} electrons more than it has",
+            f"the charge asks for {with_state(symbol, oxidation)}, {-count} more electron{'' if count == -1 else 's'} "
+            "than it has",
             place=place,
             mend="correct the charge, or add missing hydrogens",
         )

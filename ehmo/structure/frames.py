@@ -42,6 +42,10 @@ def local_frame(fragment: Fragment, metal: int, bonds: tuple[MetalDonorBond, ...
         Atom index.
     bonds : tuple of MetalDonorBond
         Bonds of that metal, shortest first.
+
+    Returns
+    -------
+    frame : LocalFrame
     """
     if not bonds:
         return LocalFrame(metal, np.eye(3), "no donors: axes of the file", "no donors: axes of the file")

@@ -45,6 +45,10 @@ def find_ligands(graph: BondGraph, kinds: Kinds) -> tuple[Ligand, ...]:
     graph : BondGraph
     kinds : mapping of int to DonorKind
         Kind of each donor atom.
+
+    Returns
+    -------
+    ligands : tuple of Ligand
     """
     return tuple(_ligand(graph, kinds, piece) for piece in _pieces(graph))
 

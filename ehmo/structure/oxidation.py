@@ -57,6 +57,10 @@ def oxidation_guess(fragment: Fragment, coordination: Coordination, metal: int) 
     metal : int
         Atom index.
 
+    Returns
+    -------
+    guess : OxidationGuess
+
     References
     ----------
     brown-1985

@@ -28,6 +28,7 @@ NAMES = [
     "[PuO2(OH2)5]2+",
 ]
 EXACT = 1e-10
+FAR_AWAY_A = np.array([0, 60.0, 0])
 # Charges stop within CHARGE_TOLERANCE of their fixed point, wherever the starting rounding takes them; orders and
 # levels (about 10 eV per e) follow.
 SELF_CONSISTENT = 100 * CHARGE_TOLERANCE
@@ -53,7 +54,7 @@ def reflected(species: Species) -> Move:
 
 
 def translated(species: Species) -> Move:
-    return Move(species.positions_A + [3.7, -11.3, 0.6], np.arange(len(species.symbols)))
+    return Move(species.positions_A + np.array([3.7, -11.3, 0.6]), np.arange(len(species.symbols)))
 
 
 def reordered(species: Species) -> Move:
@@ -105,7 +106,7 @@ def test_report_does_not_depend_on_how_the_molecule_lies_in_the_file(name, move)
 @pytest.mark.parametrize("name", ["VOCl3", "MnO4 -", "[VO(OH2)5]2+", "[CrNCl4]2-", "[UO2(OH2)5]2+"])
 def test_two_copies_far_apart_add_up(name):
     species = SPECIES[name]
-    positions = np.concatenate([species.positions_A, species.positions_A + [60.0, 0, 0]])
+    positions = np.concatenate([species.positions_A, species.positions_A + FAR_AWAY_A])
     pair = Fragment(species.symbols * 2, positions, 2 * species.charge, 2 * species.unpaired_electrons)
     both, single = bond_report(pair, options=FIXED), bond_report(species.fragment(), options=FIXED)
     size = len(species.symbols)
@@ -123,7 +124,7 @@ def test_two_copies_far_apart_add_up(name):
 
 def test_two_unlike_neutral_molecules_far_apart_add_up():
     first, second = SPECIES["VOCl3"], SPECIES["OsO4"]
-    positions = np.concatenate([first.positions_A, second.positions_A + [0, 60.0, 0]])
+    positions = np.concatenate([first.positions_A, second.positions_A + FAR_AWAY_A])
     both = bond_report(Fragment(first.symbols + second.symbols, positions, 0, 0), options=FIXED)
     alone = [bond_report(species.fragment(), options=FIXED) for species in (first, second)]
     assert both.state.energy_eV == pytest.approx(sum(report.state.energy_eV for report in alone), abs=1e-9)

@@ -8,7 +8,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from ehmo.conventions import DEGENERACY_TOLERANCE_EV
-from ehmo.electronic.occupation import fill, frontier_set
+from ehmo.electronic.occupation import fill, fill_smeared, frontier_set
 from ehmo.errors import ElectronCountError
 
 T2_BELOW_E = np.array([-10.0, -10.0, -10.0, -9.0, -9.0])
@@ -88,3 +88,22 @@ def test_refusal_states_a_mend(n_electrons, unpaired):
     with pytest.raises(ElectronCountError) as caught:
         fill(T2_BELOW_E, n_electrons, unpaired)
     assert caught.value.mend
+
+
+def test_smeared_filling_is_fermi_dirac_about_a_common_level():
+    # Law: with f = 1/(1 + exp((e - mu)/kT)) the difference of two logits is the difference of energies over kT.
+    energies, width = np.array([-12.0, -11.99, -11.95, -9.0]), 0.02
+    alpha, beta = fill_smeared(energies, 3, 1, width)
+    for occupation, electrons in ((alpha, 2), (beta, 1)):
+        assert occupation.sum() == pytest.approx(electrons, abs=1e-10)
+        logits = np.log(occupation[:3] / (1 - occupation[:3]))
+        np.testing.assert_allclose(np.diff(logits), -np.diff(energies[:3]) / width, rtol=1e-6)
+    assert beta[3] < 1e-12
+
+
+@pytest.mark.parametrize(("n_electrons", "unpaired"), [(1, 1), (4, 0), (5, 3), (10, 0)])
+def test_narrow_smearing_equals_sharp_filling(n_electrons, unpaired):
+    energies = np.array([-3.0, -2.0, -1.0, 0.0, 1.0])
+    np.testing.assert_allclose(
+        fill_smeared(energies, n_electrons, unpaired, 1e-3), fill(energies, n_electrons, unpaired), atol=1e-12
+    )

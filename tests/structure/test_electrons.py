@@ -94,7 +94,7 @@ def test_refusals_name_the_candidates(name):
         ({"charge": 2, "unpaired": 83}, "83 unpaired electrons are impossible"),
         ({"charge": 90}, "charge +90 is impossible"),
         ({"charge": -101}, "charge -101 is impossible"),
-        ({"charge": 4}, "asks for V(VI), 1 electrons more than it has"),
+        ({"charge": 4}, "asks for V(VI), 1 more electron than it has"),
     ],
 )
 def test_impossible_counts(given, said):
