@@ -8,6 +8,7 @@ import numpy as np
 
 from basis_params import ElementParameters, ModelSettings, ParameterTable, Shell, atom
 from ehmo.analysis import analyse_bonding
+from ehmo.analysis.bonded import bonded_functions
 from ehmo.electronic.charges import (
     ElectronCount,
     charge_interaction,
@@ -73,7 +74,8 @@ def run(job: Job, bonds: tuple[MetalDonorBond, ...] | None = None) -> Outcome:
     spectrum = overlap_spectrum(overlap, plan.basis)
     state = solve_state(job, plan, overlap, hamiltonian)
     bonds = bonds_from_first_atom(job.symbols, job.positions_A) if bonds is None else bonds
-    populations, orders = analyse_bonding(bonds, job.positions_A, plan.basis, spectrum, state)
+    bonded = bonded_functions(bonds, plan.basis, spectrum, state)
+    populations, orders = analyse_bonding(bonds, job.positions_A, plan.basis, spectrum, state, bonded)
     return Outcome(plan, overlap, spectrum, hamiltonian, state, populations, bonds, orders)
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from ehmo.analysis.bonded import bonded_functions
+from ehmo.analysis.bonded import BondedFunctions
 from ehmo.analysis.bonds import bond_orders
 from ehmo.analysis.populations import mulliken
 from ehmo.records.arrays import FloatArray
@@ -22,6 +22,7 @@ def analyse_bonding(
     basis: Basis,
     overlap: OverlapSpectrum,
     state: ElectronicState,
+    bonded: BondedFunctions,
 ) -> tuple[Populations, tuple[BondOrders, ...]]:
     """Populations of the fragment, and orders and channels of its metal-donor bonds.
 
@@ -37,6 +38,8 @@ def analyse_bonding(
         S with its eigenvectors.
     state : ElectronicState
         Orbitals and their filling.
+    bonded : BondedFunctions
+        Their rows on metals and donors.
 
     Returns
     -------
@@ -44,7 +47,6 @@ def analyse_bonding(
     orders : tuple of BondOrders
         In the order of `bonds`.
     """
-    bonded = bonded_functions(bonds, basis, overlap, state)
     populations = mulliken(state, overlap.matrix, basis, bonded)
     orders = bond_orders(bonds, positions_A, basis, bonded, state, populations.atom_overlap)
     return populations, orders

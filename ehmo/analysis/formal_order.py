@@ -108,7 +108,7 @@ def formal_orders(
         return tuple(_single(bond) for bond in bonds)
     if ladder is None:
         return tuple(None if place in multiple else _single(bond) for place, bond in enumerate(bonds))
-    capacity, lost = np.zeros(len(bonds)), np.zeros(len(bonds))
+    capacity, lost = np.zeros(len(bonds)), 0.0
     sigma_lost = np.zeros(len(bonds))
     total = 0
     for l in (2, 3) if with_f else (2,):
@@ -139,13 +139,14 @@ def _single(bond: MetalDonorBond) -> FormalOrder:
 
 def _offered(kind: DonorKind, place: int, directions: FloatArray, pi_normals: Mapping[int, FloatArray]) -> FloatArray:
     """(n, 3) directions across the bond of the pi functions that a donor offers."""
-    across = pi_axes(directions[place : place + 1])[0].T
+    across: FloatArray = pi_axes(directions[place : place + 1])[0].T
     if kind in _TWO_PI:
         return across
     if place not in pi_normals or (kind not in MULTIPLY_BONDED_KINDS and kind is not DonorKind.AMIDO):
         return np.zeros((0, 3))
     normal = pi_normals[place] - directions[place] * (pi_normals[place] @ directions[place])
-    return (normal / np.linalg.norm(normal))[None]
+    unit: FloatArray = normal / np.linalg.norm(normal)
+    return unit[None]
 
 
 def _frame(directions: FloatArray, offered: Sequence[FloatArray], l: int) -> _Frame:

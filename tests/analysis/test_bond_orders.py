@@ -8,6 +8,7 @@ import pytest
 from pyscf.lo import orth
 
 from ehmo.analysis import analyse_bonding
+from ehmo.analysis.bonded import bonded_functions
 from ehmo.records.basis import Basis
 from ehmo.records.electronic import ElectronicState, OverlapSpectrum
 from tests.analysis import plain_loops
@@ -112,9 +113,9 @@ def test_orders_and_charges_on_a_pyscf_density(name):
     spectrum = OverlapSpectrum(sorted_S, *np.linalg.eigh(sorted_S))
     state = ElectronicState(np.asarray(calculation.mo_energy), C[order], occupations, 0.0, "fixed", 1, 0.0)
     pairs = [(i, j) for i in range(molecule.natm) for j in range(i)]
-    populations, orders = analyse_bonding(
-        [bond(*p) for p in pairs], molecule.atom_coords(unit="Ang"), basis, spectrum, state
-    )
+    bonds = [bond(*p) for p in pairs]
+    bonded = bonded_functions(bonds, basis, spectrum, state)
+    populations, orders = analyse_bonding(bonds, molecule.atom_coords(unit="Ang"), basis, spectrum, state, bonded)
 
     # mulliken_pop of the total density: its one-density form serves restricted and open shells alike.
     _, charges = pyscf.scf.hf.mulliken_pop(molecule, alpha + beta, S, verbose=0)

@@ -1,0 +1,164 @@
+"""Fragment with known bonds and electrons -> orbitals, populations and bond orders."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass, replace
+from functools import lru_cache
+
+import numpy as np
+from threadpoolctl import ThreadpoolController
+
+import basis_params
+from basis_params import ModelSettings, ParameterTable
+from ehmo.analysis import analyse_bonding
+from ehmo.analysis.bonded import BondedFunctions, bonded_functions
+from ehmo.electronic.charges import (
+    ElectronCount,
+    charge_interaction,
+    fixed_charges,
+    self_consistent_charges,
+)
+from ehmo.electronic.eigen import overlap_spectrum
+from ehmo.electronic.hamiltonian import wolfsberg_helmholz
+from ehmo.errors import InputError, LimitError
+from ehmo.orbitals.overlap import ChannelScale, overlap_matrix, scaled_overlap_matrices
+from ehmo.orbitals.pairs import OrbitalPlan, orbital_plan
+from ehmo.records.arrays import FloatArray
+from ehmo.records.bonding import BondOrders, Populations
+from ehmo.records.coordination import Coordination
+from ehmo.records.electronic import ElectronicState, OverlapSpectrum
+from ehmo.records.fragment import Fragment
+from ehmo.records.options import Options
+
+_THREADS_PAY_FROM = 400
+"""Below this many functions a second BLAS thread costs more than it brings."""
+
+_LARGEST_CONSTANT = 10.0
+"""Far above any K, decay or lambda in use; beyond lie slips of the pen and numbers that overflow."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Bonding:
+    """The numeric result on a fragment whose bonds and electrons are known."""
+
+    plan: OrbitalPlan
+    overlap: OverlapSpectrum
+    state: ElectronicState
+    bonded: BondedFunctions
+    populations: Populations
+    orders: tuple[BondOrders, ...]
+
+
+def effective_settings(settings: ModelSettings, options: Options) -> ModelSettings:
+    """Settings of the set with the constants that the options override; refused outside any sensible range."""
+    names = ("K", "weighting", "K_sigma", "K_pi", "K_delta", "K_decay_per_A", "lambda_")
+    chosen = {name: getattr(options, name) for name in names if getattr(options, name) is not None}
+    combined = replace(settings, **chosen)
+    for name in names:
+        value = getattr(combined, name)
+        if value is not None and not 0 <= value <= _LARGEST_CONSTANT:
+            raise InputError(
+                f"{name.rstrip('_')} is {value:g}",
+                mend=f"give the option or the table a number from 0 to {_LARGEST_CONSTANT:g}",
+            )
+    return combined
+
+
+def calculate_bonding(
+    fragment: Fragment,
+    coordination: Coordination,
+    table: ParameterTable,
+    settings: ModelSettings,
+    options: Options,
+) -> Bonding:
+    """Overlap, Hamiltonian, orbitals, populations and bond orders.
+
+    Parameters
+    ----------
+    fragment : Fragment
+        Atoms with charge and unpaired electrons set.
+    coordination : Coordination
+        Its metal-donor bonds.
+    table : ParameterTable
+        Shells of its elements.
+    settings : ModelSettings
+        Constants of the Hamiltonian; those of the table unless overridden.
+    options : Options
+        Charge model and limits.
+
+    Returns
+    -------
+    bonding : Bonding
+
+    Raises
+    ------
+    EhmoError
+        See `bond_report`.
+    """
+    if fragment.charge is None or fragment.unpaired_electrons is None:
+        raise InputError("charge and unpaired electrons are not set", mend="set them with Fragment.with_electrons")
+    plan = orbital_plan(fragment.symbols, table)
+    if len(plan.basis) > options.max_functions:
+        raise LimitError(
+            f"{len(plan.basis)} basis functions, more than the limit of {options.max_functions}",
+            mend="cut the fragment, or raise the limit with --max-functions",
+        )
+    with _threads_for(len(plan.basis)):
+        overlap, hamiltonian = _matrices(plan, fragment, settings)
+        spectrum = overlap_spectrum(overlap, plan.basis)
+        total = round(float(plan.basis.core_charges.sum())) - fragment.charge
+        count = ElectronCount(total, fragment.unpaired_electrons)
+        if options.charge_model == "fixed":
+            state = fixed_charges(hamiltonian, overlap, plan.basis, count)
+        else:
+            hardness = np.array([basis_params.atom(symbol).hardness_U_eV for symbol in fragment.symbols])
+            interaction = charge_interaction(fragment.positions_A, hardness, settings.lambda_)
+            state = self_consistent_charges(
+                hamiltonian, overlap, plan.basis, count, interaction, max_iterations=options.max_iterations
+            )
+        bonded = bonded_functions(coordination.bonds, plan.basis, spectrum, state)
+        populations, orders = analyse_bonding(
+            coordination.bonds, fragment.positions_A, plan.basis, spectrum, state, bonded
+        )
+    return Bonding(plan, spectrum, state, bonded, populations, orders)
+
+
+def _matrices(plan: OrbitalPlan, fragment: Fragment, settings: ModelSettings) -> tuple[FloatArray, FloatArray]:
+    """Overlap and fixed Hamiltonian; channels are scaled apart only where the set says so."""
+    by_channel = channel_constants(settings)
+    if len(set(by_channel)) == 1 and not settings.K_decay_per_A:
+        overlap = overlap_matrix(plan, fragment.positions_A)
+        scaled = None
+    else:
+        radii = tuple(basis_params.atom(symbol).covalent_radius_A for symbol in fragment.symbols)
+        scale = ChannelScale(by_channel, settings.K_decay_per_A, radii)
+        overlap, scaled = scaled_overlap_matrices(plan, fragment.positions_A, scale)
+    hamiltonian = wolfsberg_helmholz(
+        plan.basis, overlap, by_channel[0], weighting=settings.weighting, scaled_overlap=scaled
+    )
+    return overlap, hamiltonian
+
+
+def channel_constants(settings: ModelSettings) -> tuple[float, float, float, float]:
+    """K of sigma, pi, delta and phi; phi follows the general K."""
+    sigma, pi, delta = (
+        settings.K if constant is None else constant for constant in (settings.K_sigma, settings.K_pi, settings.K_delta)
+    )
+    return sigma, pi, delta, settings.K
+
+
+@lru_cache(maxsize=1)
+def _thread_controller() -> ThreadpoolController:
+    # Finding the thread pools takes milliseconds, limiting them microseconds: look once.
+    return ThreadpoolController()
+
+
+@contextmanager
+def _threads_for(n_functions: int) -> Iterator[None]:
+    if n_functions >= _THREADS_PAY_FROM:
+        yield
+    else:
+        with _thread_controller().limit(limits=1):
+            yield

@@ -1,0 +1,89 @@
+"""The whole way from a fragment to its bond report."""
+
+from __future__ import annotations
+
+from basis_params import ModelSettings, ParameterTable
+from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
+from ehmo.calculate.remarks import assumptions, electronic_warnings
+from ehmo.errors import EhmoError
+from ehmo.orbitals.parameters import load_parameters
+from ehmo.records.fragment import Fragment
+from ehmo.records.options import Options
+from ehmo.records.report import BondReport, Method
+from ehmo.structure import assign_electrons, perceive
+
+
+def bond_report(
+    fragment: Fragment, params: str | ParameterTable = "standard", options: Options | None = None
+) -> BondReport:
+    """Bond report of a fragment.
+
+    Parameters
+    ----------
+    fragment : Fragment
+        Atoms; charge and unpaired electrons if known.
+    params : str or ParameterTable
+        Name of a shipped set, path of a table, or a loaded table.
+    options : Options, optional
+        Choices that override the fragment and the set.
+
+    Returns
+    -------
+    report : BondReport
+
+    Raises
+    ------
+    EhmoError
+        If the fragment has no metal or no donors, if charge and spin do not fit, if the set lacks an element, or
+        if the charges do not converge; the message names the mend.
+    """
+    options = options or Options()
+    table = params if isinstance(params, ParameterTable) else load_parameters(params)
+    settings = effective_settings(table.settings, options)
+    try:
+        return _report(fragment, table, settings, options)
+    except EhmoError as error:
+        error.place = error.place or fragment.source
+        raise
+
+
+def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, options: Options) -> BondReport:
+    coordination = perceive(fragment)
+    electrons = assign_electrons(fragment, coordination, options.charge, options.unpaired_electrons)
+    fragment = fragment.with_electrons(electrons.charge, electrons.unpaired_electrons)
+    bonding = calculate_bonding(fragment, coordination, table, settings, options)
+    return BondReport(
+        fragment=fragment,
+        coordination=coordination,
+        electrons=electrons,
+        method=_method(table, settings, bonding),
+        basis=bonding.plan.basis,
+        overlap=bonding.overlap.matrix,
+        state=bonding.state,
+        populations=bonding.populations,
+        orders=bonding.orders,
+        assumptions=assumptions(fragment, coordination, table, electrons),
+        warnings=coordination.warnings + electronic_warnings(fragment, coordination, bonding),
+    )
+
+
+def _method(table: ParameterTable, settings: ModelSettings, bonding: Bonding) -> Method:
+    sigma, pi, delta, _ = channel_constants(settings)
+    return Method(
+        parameter_set=table.name,
+        edition=table.edition,
+        parameter_sha256=table.content_sha256,
+        parameter_origin=table.origin,
+        charge_model=bonding.state.charge_model,
+        K=settings.K,
+        K_sigma=sigma,
+        K_pi=pi,
+        K_delta=delta,
+        weighting=settings.weighting,
+        K_decay_per_A=settings.K_decay_per_A,
+        lambda_=settings.lambda_,
+        iterations=bonding.state.iterations,
+        charge_residual=bonding.state.charge_residual,
+        smearing_eV=bonding.state.smearing_eV,
+        smallest_overlap_eigenvalue=float(bonding.overlap.eigenvalues[0]),
+    )
