@@ -1,0 +1,205 @@
+"""Ligand field fitted to observed bands, damped towards the computed one.
+
+Every level of the field may move, and Racah's B with it where electrons repel; what the bands do not determine stays
+where the calculation put it. Bands are assigned in the order of energy to the spin-allowed terms.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from ehmo.analysis.multiplets import multiplet_terms
+from ehmo.errors import InputError
+from ehmo.records.arrays import FloatArray
+from ehmo.records.bands import BandAssignment, BandFit, FittedParameter
+from ehmo.records.multiplets import ElectronRepulsion, Term, Terms
+from ehmo.records.symmetry import PointGroup
+from ehmo.units import PER_CM_PER_EV
+
+LEVEL_WIDTH_PER_CM = 10_000.0
+"""Standard deviation that a level of the computed field is allowed [cm^-1]."""
+
+REPULSION_WIDTH = 0.2
+"""Standard deviation that B is allowed, as a part of its start."""
+
+BAND_WIDTH_PER_CM = 200.0
+"""Standard deviation of an observed band [cm^-1]."""
+
+DETERMINED = 0.5
+"""A parameter counts as determined if the bands narrow its width below this part of the allowed one."""
+
+_STEPS = 12
+_SAME_LEVEL_EV = 0.05  # levels that an idealised sphere would make degenerate move together
+_DIFFERENCE = 1e-3  # of the allowed widths
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class FieldModel:
+    """What a field needs to make terms.
+
+    Attributes
+    ----------
+    field_eV : (n, n) ndarray
+        Computed field in the local axes [eV].
+    n_electrons : int
+    repulsion : ElectronRepulsion or None
+    B_per_cm : float
+        Racah B of `repulsion`, or 0 [cm^-1].
+    group : PointGroup or None
+    axes : (3, 3) ndarray
+        Rows are the group's axes in the local ones.
+    """
+
+    field_eV: FloatArray
+    n_electrons: int
+    repulsion: ElectronRepulsion | None
+    B_per_cm: float
+    group: PointGroup | None
+    axes: FloatArray
+
+    def terms(self, shifts_per_cm: FloatArray, projectors: FloatArray, scale: float) -> Terms:
+        """Terms with every level shifted and the repulsion scaled."""
+        field = self.field_eV + np.tensordot(shifts_per_cm, projectors, axes=1) / PER_CM_PER_EV
+        repulsion = self.repulsion
+        if repulsion is not None:
+            repulsion = ElectronRepulsion(
+                scale * repulsion.F2_per_cm, scale * repulsion.F4_per_cm, scale * repulsion.F6_per_cm
+            )
+        return multiplet_terms(field, self.n_electrons, repulsion, self.group, self.axes)
+
+
+def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
+    """Assign observed bands and fit the field to them.
+
+    Parameters
+    ----------
+    model : FieldModel
+        Computed field.
+    observed_per_cm : sequence of float
+        Band maxima [cm^-1].
+
+    Returns
+    -------
+    fit : BandFit
+
+    Raises
+    ------
+    InputError
+        If there are more bands than spin-allowed terms, or a wavenumber is not positive.
+    """
+    observed = np.sort(np.asarray(observed_per_cm, dtype=np.float64))
+    if not len(observed) or not np.isfinite(observed).all() or observed[0] <= 0:
+        raise InputError("observed bands must be positive wavenumbers", mend="give them in cm-1, such as 13000,16000")
+    # Only differences of levels show, so the lowest one stays.
+    lowest, *moving = _level_projectors(model.field_eV)
+    projectors = np.array(moving).reshape(-1, *lowest.shape)
+    n_levels = len(projectors)
+    with_repulsion = model.repulsion is not None and model.B_per_cm > 0
+    n_parameters = n_levels + int(with_repulsion)
+
+    def terms_at(parameters: FloatArray) -> Terms:
+        scale = 1 + REPULSION_WIDTH * parameters[n_levels] if with_repulsion else 1.0
+        return model.terms(LEVEL_WIDTH_PER_CM * parameters[:n_levels], projectors, float(scale))
+
+    start = terms_at(np.zeros(n_parameters))
+    upper = _spin_allowed(start)
+    if len(observed) > len(upper):
+        raise InputError(
+            f"{len(observed)} observed bands, but only {len(upper)} spin-allowed ones within the shell",
+            mend="leave out charge-transfer and spin-forbidden bands",
+        )
+    computed = np.array([term.energy_per_cm for term in upper[: len(observed)]])
+    parameters, covariance, fitted = _damped_fit(terms_at, observed, n_parameters)
+    names = [level.label for level in start.levels][1:]
+    if len(names) != n_levels:
+        names = [f"level {place + 2}" for place in range(n_levels)]
+    names += ["B"] if with_repulsion else []
+    return BandFit(
+        assignments=tuple(
+            BandAssignment(float(seen), float(before), float(after), term.label)
+            for seen, before, after, term in zip(observed, computed, fitted, upper, strict=False)
+        ),
+        parameters=_fitted(names, model, (lowest, *projectors), parameters, covariance),
+        undetermined=_undetermined(names, covariance),
+    )
+
+
+def _level_projectors(field_eV: FloatArray) -> FloatArray:
+    """(n_levels, n, n) projectors on the levels of a field, nearly degenerate ones together."""
+    energies, vectors = np.linalg.eigh(field_eV)
+    starts = np.flatnonzero(np.diff(energies, prepend=-np.inf) > _SAME_LEVEL_EV).tolist()
+    blocks = [vectors[:, a:b] for a, b in zip(starts, [*starts[1:], len(energies)], strict=True)]
+    return np.array([block @ block.T for block in blocks])
+
+
+def _spin_allowed(terms: Terms) -> list[Term]:
+    return [term for term in terms.terms[1:] if term.multiplicity == terms.ground.multiplicity]
+
+
+def _damped_fit(
+    terms_at: Callable[[FloatArray], Terms], observed: FloatArray, n_parameters: int
+) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Gauss-Newton on bands and on the parameters themselves, both in units of their widths.
+
+    Returns the parameters, their covariance and the fitted bands.
+    """
+
+    def bands(parameters: FloatArray) -> FloatArray:
+        found = [term.energy_per_cm for term in _spin_allowed(terms_at(parameters))[: len(observed)]]
+        return np.array(found)
+
+    parameters: FloatArray = np.zeros(n_parameters)
+    information: FloatArray = np.eye(n_parameters)
+    for _ in range(_STEPS):
+        base = bands(parameters)
+        slopes = np.array(
+            [(bands(parameters + _DIFFERENCE * unit) - base) / _DIFFERENCE for unit in np.eye(n_parameters)]
+        ).T
+        weighted = slopes / BAND_WIDTH_PER_CM
+        information = weighted.T @ weighted + np.eye(n_parameters)
+        gradient = weighted.T @ ((observed - base) / BAND_WIDTH_PER_CM) - parameters
+        step = np.linalg.solve(information, gradient)
+        parameters = np.asarray(parameters + step, dtype=np.float64)
+        if np.abs(step).max() < 1e-6:
+            break
+    covariance: FloatArray = np.linalg.inv(information)
+    return parameters, covariance, bands(parameters)
+
+
+def _fitted(
+    names: Sequence[str],
+    model: FieldModel,
+    projectors: Sequence[FloatArray],
+    parameters: FloatArray,
+    covariance: FloatArray,
+) -> tuple[FittedParameter, ...]:
+    """Parameters in their own units; levels count from the lowest of the computed field."""
+    levels = np.array([np.tensordot(model.field_eV, p) / np.trace(p) for p in projectors]) * PER_CM_PER_EV
+    levels = levels[1:] - levels[0]
+    starts, scales = list(levels), [LEVEL_WIDTH_PER_CM] * len(levels)
+    if len(names) > len(levels):
+        starts.append(model.B_per_cm)
+        scales.append(REPULSION_WIDTH * model.B_per_cm)
+    widths = np.sqrt(np.diag(covariance))
+    return tuple(
+        FittedParameter(
+            name, float(start), float(start + scale * value), float(scale * width), bool(width < DETERMINED)
+        )
+        for name, start, scale, value, width in zip(names, starts, scales, parameters, widths, strict=True)
+    )
+
+
+def _undetermined(names: Sequence[str], covariance: FloatArray) -> tuple[str, ...]:
+    """Directions whose width the bands have not narrowed, as combinations of parameters in allowed widths."""
+    variances, directions = np.linalg.eigh(covariance)
+    said = []
+    for variance, direction in zip(variances, directions.T, strict=True):
+        if variance < DETERMINED**2:
+            continue
+        scaled = direction / direction[np.abs(direction).argmax()]
+        terms = [f"{value:+.2f} {name}" for name, value in zip(names, scaled, strict=True) if abs(value) > 0.05]
+        said.append(" ".join(terms).removeprefix("+"))
+    return tuple(said)
