@@ -3,15 +3,18 @@
 from basis_params.atomic_orbitals import AtomicOrbitalData, atomic_orbital
 from basis_params.atoms import AtomData, atom, atom_symbols, ionisation_energy
 from basis_params.audits import AuditReport, AuditRow, audit
+from basis_params.bibliography import Reference, references
 from basis_params.bond_valence import BondValence, bond_valence_R0
 from basis_params.catalogue import available_sets, load, load_set, read_table
 from basis_params.faults import ParameterFileError
 from basis_params.ligand_field import (
     PairingEnergy,
     RacahParameters,
+    SlaterIntegrals,
     SpinOrbitConstant,
     pairing_energy,
     racah,
+    slater_integrals,
     spin_orbit,
 )
 from basis_params.model import (
@@ -38,7 +41,9 @@ __all__ = [
     "ParameterTable",
     "Provenance",
     "RacahParameters",
+    "Reference",
     "Shell",
+    "SlaterIntegrals",
     "SpinOrbitConstant",
     "atom",
     "atom_symbols",
@@ -53,5 +58,7 @@ __all__ = [
     "pairing_energy",
     "racah",
     "read_table",
+    "references",
+    "slater_integrals",
     "spin_orbit",
 ]

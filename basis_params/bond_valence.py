@@ -57,6 +57,10 @@ def bond_valence_R0(cation: str, anion: str, oxidation_state: int | None = None)
     cation, anion : str
     oxidation_state : int, optional
 
+    Returns
+    -------
+    parameters : BondValence
+
     Raises
     ------
     KeyError
@@ -100,21 +104,34 @@ def _atom_parameters() -> Mapping[str, tuple[float, float]]:
     return {row["symbol"]: (float(row["c"]), float(row["r_A"])) for row in side_table("bond_valence_atoms")}
 
 
+def estimated_R0(cation: tuple[float, float], anion: tuple[float, float]) -> float:
+    """Return r1 + r2 - r1 r2 (sqrt c1 - sqrt c2)^2 / (c1 r1 + c2 r2) [A].
+
+    Parameters
+    ----------
+    cation, anion : tuple of float
+        Electronegativity c and size r [A] of each atom.
+
+    References
+    ----------
+    okeeffe-1991
+    """
+    (c1, r1), (c2, r2) = cation, anion
+    return r1 + r2 - r1 * r2 * (math.sqrt(c1) - math.sqrt(c2)) ** 2 / (c1 * r1 + c2 * r2)
+
+
 def _estimate(cation: str, anion: str) -> BondValence:
-    """R0 = r1 + r2 - r1 r2 (sqrt c1 - sqrt c2)^2 / (c1 r1 + c2 r2), O'Keeffe and Brese 1991."""
     missing = [symbol for symbol in (cation, anion) if symbol not in _atom_parameters()]
     if missing:
         raise KeyError(
             f"no bond-valence parameters for {cation!a}-{anion!a}: neither a row for the pair "
             f"nor atom parameters of {', '.join(ascii(symbol) for symbol in missing)}"
         )
-    (c1, r1), (c2, r2) = _atom_parameters()[cation], _atom_parameters()[anion]
-    R0 = r1 + r2 - r1 * r2 * (math.sqrt(c1) - math.sqrt(c2)) ** 2 / (c1 * r1 + c2 * r2)
     return BondValence(
         cation=cation,
         anion=anion,
         oxidation_state=None,
-        R0_A=R0,
+        R0_A=estimated_R0(_atom_parameters()[cation], _atom_parameters()[anion]),
         B_A=ESTIMATED_B_A,
         source_key="okeeffe-1991",
         locator="equation with atom parameters",

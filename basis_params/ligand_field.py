@@ -1,4 +1,4 @@
-"""Free-ion constants of ligand-field theory: Racah B and C, spin-orbit coupling, spin-pairing energy."""
+"""Free-ion constants of ligand-field theory: Racah and Slater parameters, spin-orbit coupling, pairing energy."""
 
 from __future__ import annotations
 
@@ -39,6 +39,15 @@ class RacahParameters(FreeIon):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class SlaterIntegrals(FreeIon):
+    """Slater integrals `F2_per_cm`, `F4_per_cm`, `F6_per_cm` of a 5f shell [cm^-1]."""
+
+    F2_per_cm: float
+    F4_per_cm: float
+    F6_per_cm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class SpinOrbitConstant(FreeIon):
     """One-electron spin-orbit constant `zeta_per_cm` of the d shell, 5f in actinides [cm^-1]."""
 
@@ -70,6 +79,21 @@ def racah(symbol: str, charge: int) -> RacahParameters:
     return _find(_racah(), "Racah parameters", symbol, charge)
 
 
+def slater_integrals(symbol: str, charge: int) -> SlaterIntegrals:
+    """Return the Slater integrals of a free actinide ion with two or more 5f electrons.
+
+    Raises
+    ------
+    KeyError
+        If the table has no such ion.
+
+    References
+    ----------
+    van-deurzen-1984, average-atom
+    """
+    return _find(_slater(), "Slater integrals", symbol, charge)
+
+
 def spin_orbit(symbol: str, charge: int) -> SpinOrbitConstant:
     """Return the one-electron spin-orbit constant of a free ion.
 
@@ -80,7 +104,7 @@ def spin_orbit(symbol: str, charge: int) -> SpinOrbitConstant:
 
     References
     ----------
-    dunn-1961, goodman-1970
+    nist-asd-levels, dunn-1961, goodman-1970, average-atom
     """
     return _find(_spin_orbit(), "spin-orbit constant", symbol, charge)
 
@@ -112,6 +136,19 @@ def _racah() -> Mapping[tuple[str, int], RacahParameters]:
     return _by_ion(
         RacahParameters(**_ion(row), B_per_cm=float(row["B_per_cm"]), C_per_cm=float(row["C_per_cm"]))
         for row in side_table("racah")
+    )
+
+
+@cache
+def _slater() -> Mapping[tuple[str, int], SlaterIntegrals]:
+    return _by_ion(
+        SlaterIntegrals(
+            **_ion(row),
+            F2_per_cm=float(row["F2_per_cm"]),
+            F4_per_cm=float(row["F4_per_cm"]),
+            F6_per_cm=float(row["F6_per_cm"]),
+        )
+        for row in side_table("slater")
     )
 
 

@@ -46,6 +46,10 @@ def read_table(path: str | Path, base: ParameterTable | None = None) -> Paramete
     base : ParameterTable, optional
         Where header keys that the file leaves out are taken from; without it they are faults.
 
+    Returns
+    -------
+    table : ParameterTable
+
     Raises
     ------
     FileNotFoundError

@@ -19,9 +19,12 @@ def slater(n, zeta, r):
 
 
 @pytest.mark.parametrize("power", [0, 1, 2])
-def test_radial_moments_equal_quadrature(power):
+@pytest.mark.parametrize(
+    ("n", "zetas", "coefficients"),
+    [(5, (4.982, 2.068), (0.6685, 0.5424)), (3, (6.2, 2.9, 1.3), (0.31, 0.52, 0.33)), (2, (2.275,), (1.0,))],
+)
+def test_radial_moments_equal_quadrature(power, n, zetas, coefficients):
     """Cross-check: SciPy quadrature of the function itself."""
-    n, zetas, coefficients = 5, (4.982, 2.068), (0.6685, 0.5424)
 
     def integrand(r):
         return r**power * sum(c * slater(n, z, r) for z, c in zip(zetas, coefficients, strict=True)) ** 2
