@@ -165,7 +165,7 @@ def _damped_fit(
         parameters = np.asarray(parameters + step, dtype=np.float64)
         if np.abs(step).max() < 1e-6:
             break
-    covariance: FloatArray = np.linalg.inv(information)
+    covariance = np.asarray(np.linalg.inv(information), dtype=np.float64)
     return parameters, covariance, bands(parameters)
 
 

@@ -10,7 +10,11 @@ from ehmo.conventions import FRONTIER_TOLERANCE_EV, atom_label
 from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.electronic import NO_ELECTRON, ElectronicState
 from ehmo.records.fragment import Fragment
+from ehmo.records.site import MetalSite
 from ehmo.records.wording import signed
+
+BOND_VALENCE_GAP = 0.5
+"""Bond-valence sums that differ from the oxidation state by more are reported [valence units]."""
 
 
 def assumptions(
@@ -49,6 +53,28 @@ def electronic_warnings(fragment: Fragment, coordination: Coordination, bonding:
         )
         if warning
     )
+
+
+def site_warnings(fragment: Fragment, coordination: Coordination, sites: tuple[MetalSite, ...]) -> tuple[str, ...]:
+    """Sentences on oxidation states that bond lengths contradict, on irregular spheres and on missing ladders."""
+    said = []
+    for site in sites:
+        label = fragment.labels[site.metal]
+        if site.bond_valence_sum is not None and site.oxidation_state is not None:
+            gap = site.bond_valence_sum - site.oxidation_state
+            if abs(gap) > BOND_VALENCE_GAP:
+                said.append(
+                    f"the bond-valence sum of {label} is {site.bond_valence_sum:.2f}, counting gives "
+                    f"{site.oxidation_state}: check charge, hydrogens and the oxidation state"
+                )
+        if site.ladder_withheld:
+            said.append(f"no ladder of {label}: {site.ladder_withheld}")
+    doubtful = [ligand for ligand in coordination.ligands if ligand.charge is None and ligand.donors]
+    said += [
+        f"the charge of the ligand {ligand.formula} cannot be told ({ligand.charge_reason}): oxidation states are open"
+        for ligand in doubtful
+    ]
+    return tuple(said)
 
 
 def _electrons(count: float) -> str:

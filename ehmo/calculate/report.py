@@ -3,8 +3,12 @@
 from __future__ import annotations
 
 from basis_params import ModelSettings, ParameterTable
+from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
-from ehmo.calculate.remarks import assumptions, electronic_warnings
+from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings
+from ehmo.calculate.sites import metal_sites, site_formal_orders, sphere_irreps
+from ehmo.calculate.spectroscopy import spectroscopy
+from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError
 from ehmo.orbitals.parameters import load_parameters
 from ehmo.records.fragment import Fragment
@@ -49,9 +53,19 @@ def bond_report(
 
 def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, options: Options) -> BondReport:
     coordination = perceive(fragment)
-    electrons = assign_electrons(fragment, coordination, options.charge, options.unpaired_electrons)
+    electrons = assign_electrons(
+        fragment, coordination, options.charge, options.unpaired_electrons, options.oxidation_state
+    )
     fragment = fragment.with_electrons(electrons.charge, electrons.unpaired_electrons)
     bonding = calculate_bonding(fragment, coordination, table, settings, options)
+    if electrons.spin_candidates:
+        settled = settled_spin(fragment, coordination, electrons, bonding)
+        if settled.unpaired_electrons != electrons.unpaired_electrons:
+            fragment = fragment.with_electrons(settled.charge, settled.unpaired_electrons)
+            bonding = calculate_bonding(fragment, coordination, table, settings, options)
+        electrons = settled
+    sites = metal_sites(fragment, coordination, electrons, bonding)
+    irreps = sphere_irreps(sites, bonding)
     return BondReport(
         fragment=fragment,
         coordination=coordination,
@@ -62,8 +76,24 @@ def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, 
         state=bonding.state,
         populations=bonding.populations,
         orders=bonding.orders,
+        sites=sites,
+        irreps=irreps,
+        formal_orders=site_formal_orders(fragment, coordination, sites),
+        reactivity=donor_reactivity(
+            coordination.bonds,
+            bonding.orders,
+            bonding.plan.basis,
+            bonding.overlap.matrix,
+            bonding.state,
+            bonding.populations,
+        ),
+        spectroscopy=spectroscopy(fragment, coordination, sites, irreps, bonding, table, options),
         assumptions=assumptions(fragment, coordination, table, electrons),
-        warnings=coordination.warnings + electronic_warnings(fragment, coordination, bonding),
+        warnings=(
+            *coordination.warnings,
+            *electronic_warnings(fragment, coordination, bonding),
+            *site_warnings(fragment, coordination, sites),
+        ),
     )
 
 

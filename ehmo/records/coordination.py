@@ -188,6 +188,8 @@ class ElectronAssignment:
         Sum of the metals' oxidation states by counting; None where a ligand charge is unknown.
     d_electrons : int or None
         Valence d (or f) electrons of a single metal by counting; None where it cannot be counted.
+    spin_candidates : tuple of int
+        Numbers of unpaired electrons that counting leaves open, the ladder to decide; empty if it is settled.
     """
 
     charge: int
@@ -196,3 +198,4 @@ class ElectronAssignment:
     unpaired_reason: str
     metal_oxidation_total: int | None
     d_electrons: int | None
+    spin_candidates: tuple[int, ...] = ()

@@ -24,6 +24,12 @@ class Options:
         Override the constants of the parameter set.
     weighting : bool or None
         Overrides whether K is weighted.
+    oxidation_state : int or None
+        Overrides that of counting, for a fragment with one metal.
+    racah_B_per_cm : float or None
+        Overrides the reduced free-ion value [cm^-1].
+    observed_bands_per_cm : tuple of float
+        Observed bands within the d (f) shell, to be assigned and fitted [cm^-1].
     max_iterations : int
         Diagonalisations allowed for self-consistent charges.
     max_functions : int
@@ -40,6 +46,9 @@ class Options:
     K_delta: float | None = None
     K_decay_per_A: float | None = None
     lambda_: float | None = None
+    oxidation_state: int | None = None
+    racah_B_per_cm: float | None = None
+    observed_bands_per_cm: tuple[float, ...] = ()
     max_iterations: int = 100
     max_functions: int = 4000
 

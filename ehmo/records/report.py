@@ -15,7 +15,11 @@ from ehmo.records.basis import Basis
 from ehmo.records.bonding import BondOrders, Populations
 from ehmo.records.coordination import Coordination, ElectronAssignment, MetalDonorBond
 from ehmo.records.electronic import ElectronicState
+from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
+from ehmo.records.reactivity import DonorReactivity
+from ehmo.records.site import MetalSite, Spectroscopy
+from ehmo.records.symmetry import OrbitalIrreps
 from ehmo.records.table import aligned
 from ehmo.records.wording import BOND_NUMBERS, bond_rows, electrons_in_words
 
@@ -92,6 +96,16 @@ class BondReport:
         Mulliken populations.
     orders : tuple of BondOrders
         One per bond, in the order of `coordination.bonds`.
+    sites : tuple of MetalSite
+        Symmetry, oxidation state and ladder of each metal.
+    irreps : OrbitalIrreps or None
+        Labels of the orbitals in the group of the idealised sphere; None for several metals.
+    formal_orders : tuple of FormalOrder or None
+        Textbook order of each bond, None where no ladder tells it.
+    reactivity : tuple of DonorReactivity
+        Reading of each multiply bonded donor.
+    spectroscopy : Spectroscopy
+        Terms, bands and magnetism.
     assumptions : tuple of str
         What was taken for granted, one sentence each.
     warnings : tuple of str
@@ -107,6 +121,11 @@ class BondReport:
     state: ElectronicState
     populations: Populations
     orders: tuple[BondOrders, ...]
+    sites: tuple[MetalSite, ...]
+    irreps: OrbitalIrreps | None
+    formal_orders: tuple[FormalOrder | None, ...]
+    reactivity: tuple[DonorReactivity, ...]
+    spectroscopy: Spectroscopy
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
 

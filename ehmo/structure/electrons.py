@@ -29,6 +29,7 @@ _HUND_F: Final = (1, 2, 3)
 class _Choice:
     value: int
     reason: str
+    candidates: tuple[int, ...] = ()
 
 
 def assign_electrons(
@@ -36,11 +37,13 @@ def assign_electrons(
     coordination: Coordination,
     charge: int | None = None,
     unpaired: int | None = None,
+    oxidation_state: int | None = None,
 ) -> ElectronAssignment:
     """Charge and unpaired electrons of a fragment.
 
     What is given here wins over what the file states; what neither gives is guessed, with the reasoning in
-    words, or refused with the candidates named.
+    words, or refused with the candidates named. Where counting leaves several spin states of a d shell open, the lowest is
+    taken for the time being and all are listed for the ladder to decide.
 
     Parameters
     ----------
@@ -49,6 +52,8 @@ def assign_electrons(
         Of the same fragment.
     charge, unpaired : int or None
         Total charge and number of unpaired electrons.
+    oxidation_state : int or None
+        Overrides counting, for a fragment with one metal.
 
     Returns
     -------
@@ -62,7 +67,7 @@ def assign_electrons(
     place = fragment.source or "fragment"
     total = _charge(fragment, coordination, charge, unpaired, place)
     _check_charge(fragment, total.value, place)
-    oxidation = _oxidation_total(coordination, total.value)
+    oxidation = _oxidation_total(coordination, total.value) if oxidation_state is None else oxidation_state
     count = _metal_electrons(fragment, coordination, oxidation, place)
     spin = _unpaired(fragment, coordination, total.value, unpaired, count, place)
     return ElectronAssignment(
@@ -72,6 +77,7 @@ def assign_electrons(
         unpaired_reason=spin.reason,
         metal_oxidation_total=oxidation,
         d_electrons=count,
+        spin_candidates=spin.candidates,
     )
 
 
@@ -229,9 +235,9 @@ def _guessed_unpaired(
     if f_block:
         if count in _HUND_F or symbol in LANTHANIDES:
             return _Choice(candidates[-1], f"guessed: Hund's rule for nonbonding {shell}{count}")
-    elif count <= 2 or (count >= 4 and any(bond.may_be_multiple for bond in coordination.bonds)):
-        others = ", ".join(str(n) for n in candidates[1:])
-        return _Choice(candidates[0], f"guessed: lowest for {shell}{count}; {others} is possible too: give it if so")
+    else:
+        listed = " or ".join(str(n) for n in candidates)
+        return _Choice(candidates[0], f"lowest for {shell}{count}; {listed} by counting", tuple(candidates))
     raise ElectronCountError(
         f"unpaired electrons are not given for {shell}{count}",
         place=place,

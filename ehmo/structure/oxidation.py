@@ -147,6 +147,35 @@ def _by_bond_valence(fragment: Fragment, coordination: Coordination, metal: int)
     return OxidationGuess(best, f"bond-valence sum of {label} {sums[best]:.2f}, so {with_state(symbol, best)}")
 
 
+def bond_valence_sum(fragment: Fragment, coordination: Coordination, metal: int, state: int | None) -> float | None:
+    """Sum of the bond valences about a metal.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+    metal : int
+        Atom index.
+    state : int or None
+        Oxidation state whose parameters are taken, or the nearest tabulated ones.
+
+    Returns
+    -------
+    total : float or None
+        None where a pair of elements has no parameters [valence units].
+
+    References
+    ----------
+    brown-1985
+    """
+    bonds = coordination.bonds_of(metal)
+    try:
+        rows = [bond_valence_R0(fragment.symbols[b.metal], fragment.symbols[b.donor], state) for b in bonds]
+    except KeyError:
+        return None
+    return sum(row.valence(bond.length_A) for row, bond in zip(rows, bonds, strict=True))
+
+
 def _candidates(fragment: Fragment, coordination: Coordination, metal: int) -> list[int]:
     """Usual positive oxidation states that the ligands and the charge of the ion allow."""
     symbol = fragment.symbols[metal]

@@ -1,0 +1,187 @@
+"""Metal by metal: symmetry of the sphere, ladder, ligand-field parameters, formal bond orders."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from ehmo.analysis.angular_overlap import angular_overlap, crystal_field_parameters
+from ehmo.analysis.formal_order import formal_orders
+from ehmo.analysis.ladder import LadderError, ladders
+from ehmo.analysis.pi_planes import pi_normals
+from ehmo.analysis.symmetry import find_symmetry, functions_of_atoms, lowdin_rows, orbital_irreps, shape_measures
+from ehmo.analysis.symmetry.parts import shell_parts
+from ehmo.calculate.numbers import Bonding
+from ehmo.harmonics import harmonic_rotations
+from ehmo.records.arrays import FloatArray
+from ehmo.records.coordination import Coordination, ElectronAssignment, LocalFrame
+from ehmo.records.formal_order import FormalOrder
+from ehmo.records.fragment import Fragment
+from ehmo.records.ligand_field import Ladder, LigandFieldParameters
+from ehmo.records.site import MetalSite
+from ehmo.records.symmetry import OrbitalIrreps, Symmetry
+from ehmo.structure.elements import ACTINIDES
+from ehmo.structure.oxidation import bond_valence_sum
+
+
+def sphere_symmetries(fragment: Fragment, coordination: Coordination) -> tuple[Symmetry, ...]:
+    """Idealised symmetry of each metal with its donors.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+
+    Returns
+    -------
+    symmetries : tuple of Symmetry
+        In the order of the metals; axes as near the local frames as the groups allow.
+    """
+    symmetries = []
+    for frame in coordination.frames:
+        bonds = coordination.bonds_of(frame.metal)
+        sorts = {frame.metal: (fragment.symbols[frame.metal], "metal")}
+        sorts |= {bond.donor: (fragment.symbols[bond.donor], str(bond.kind)) for bond in bonds}
+        numbers = {sort: number for number, sort in enumerate(dict.fromkeys(sorts.values()))}
+        kinds = np.full(len(fragment), -1)
+        kinds[list(sorts)] = [numbers[sort] for sort in sorts.values()]
+        symmetries.append(
+            find_symmetry(
+                fragment.positions_A,
+                kinds,
+                atoms=np.array(sorted(sorts)),
+                origin=frame.metal,
+                preferred_axes=frame.axes,
+            )
+        )
+    return tuple(symmetries)
+
+
+def group_axes_in_frame(symmetry: Symmetry, frame: LocalFrame) -> FloatArray:
+    """(3, 3) axes of the group as rows, in the local axes of the metal."""
+    axes: FloatArray = symmetry.axes @ frame.axes.T
+    return axes
+
+
+def metal_sites(
+    fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, bonding: Bonding
+) -> tuple[MetalSite, ...]:
+    """Symmetry, oxidation state and ladder of each metal.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+    electrons : ElectronAssignment
+        Charge, oxidation state and d count.
+    bonding : Bonding
+        Orbitals and overlap populations.
+
+    Returns
+    -------
+    sites : tuple of MetalSite
+    """
+    symmetries = sphere_symmetries(fragment, coordination)
+    found, withheld = site_ladders(coordination, electrons, bonding, symmetries)
+    sites = []
+    for place, (frame, symmetry) in enumerate(zip(coordination.frames, symmetries, strict=True)):
+        bonds = coordination.bonds_of(frame.metal)
+        state = electrons.metal_oxidation_total if len(coordination.metals) == 1 else None
+        ladder = found[place] if found else None
+        sites.append(
+            MetalSite(
+                metal=frame.metal,
+                symmetry=symmetry,
+                shapes=shape_measures(
+                    fragment.positions_A[frame.metal], fragment.positions_A[[bond.donor for bond in bonds]]
+                ),
+                oxidation_state=state,
+                d_count=electrons.d_electrons,
+                bond_valence_sum=bond_valence_sum(fragment, coordination, frame.metal, state),
+                ladder=ladder,
+                ladder_withheld=withheld,
+                parameters=None if ladder is None else _parameters(fragment, coordination, frame, symmetry, ladder),
+            )
+        )
+    return tuple(sites)
+
+
+def site_ladders(
+    coordination: Coordination,
+    electrons: ElectronAssignment,
+    bonding: Bonding,
+    symmetries: tuple[Symmetry, ...],
+) -> tuple[tuple[Ladder, ...], str]:
+    """Ladder of each metal, or none and the reason why."""
+    parts: tuple[FloatArray, ...] = ()
+    if len(coordination.metals) == 1:
+        (frame,), (symmetry,) = coordination.frames, symmetries
+        l = 3 if 3 in bonding.plan.basis.layouts[frame.metal] else 2
+        turn = harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], l)[0]
+        parts = tuple(turn @ part for part in shell_parts(symmetry.group, l))
+    overlap = np.sum([orders.orbital_overlap for orders in bonding.orders], axis=0)
+    try:
+        found = ladders(
+            coordination.frames,
+            bonding.plan.basis,
+            bonding.bonded,
+            bonding.state,
+            overlap,
+            parts=parts,
+            counted_electrons=electrons.d_electrons,
+        )
+    except LadderError as error:
+        return (), error.fault
+    return found, ""
+
+
+def sphere_irreps(sites: tuple[MetalSite, ...], bonding: Bonding) -> OrbitalIrreps | None:
+    """Irreps of all orbitals in the group of the idealised sphere; None for several metals."""
+    if len(sites) > 1:
+        return None
+    symmetry, basis = sites[0].symmetry, bonding.plan.basis
+    rows = functions_of_atoms(basis, symmetry.atoms)
+    # The bonded rows are those of metal and donors in the order of the atoms.
+    lowdin = bonding.bonded.lowdin_orbitals
+    if len(lowdin) != len(rows):
+        lowdin = lowdin_rows(bonding.overlap, rows, bonding.state.coefficients)
+    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
+
+
+def site_formal_orders(
+    fragment: Fragment, coordination: Coordination, sites: tuple[MetalSite, ...]
+) -> tuple[FormalOrder | None, ...]:
+    """Textbook order of every bond of the fragment, in the order of its bonds."""
+    found: list[FormalOrder | None] = []
+    for site, frame in zip(sites, coordination.frames, strict=True):
+        bonds = coordination.bonds_of(site.metal)
+        normals = pi_normals(bonds, coordination, fragment.symbols, fragment.positions_A)
+        found += formal_orders(
+            bonds,
+            _directions(coordination, frame, site.symmetry),
+            {place: frame.axes @ normal for place, normal in normals.items()},
+            site.ladder,
+            with_f=fragment.symbols[site.metal] in ACTINIDES,
+        )
+    return tuple(found)
+
+
+def _directions(coordination: Coordination, frame: LocalFrame, symmetry: Symmetry) -> FloatArray:
+    """Unit vectors to the donors of the idealised sphere, in the local axes."""
+    place = {int(atom): k for k, atom in enumerate(symmetry.atoms)}
+    donors = [place[bond.donor] for bond in coordination.bonds_of(frame.metal)]
+    vectors = (symmetry.symmetrised_A[donors] - symmetry.origin_A) @ frame.axes.T
+    directions: FloatArray = vectors / np.linalg.norm(vectors, axis=1)[:, None]
+    return directions
+
+
+def _parameters(
+    fragment: Fragment, coordination: Coordination, frame: LocalFrame, symmetry: Symmetry, ladder: Ladder
+) -> LigandFieldParameters:
+    bonds = coordination.bonds_of(frame.metal)
+    crystal_field: dict[str, float] = {}
+    if ladder.angular_momentum == 2:
+        turn = harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], 2)[0]
+        crystal_field = crystal_field_parameters(turn.T @ ladder.field_eV @ turn, symmetry.group.name)
+    vectors = (fragment.positions_A[[bond.donor for bond in bonds]] - fragment.positions_A[frame.metal]) @ frame.axes.T
+    directions = vectors / np.linalg.norm(vectors, axis=1)[:, None]
+    return angular_overlap(ladder, directions, [bond.kind for bond in bonds], crystal_field)

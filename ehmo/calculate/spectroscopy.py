@@ -1,0 +1,230 @@
+"""Terms, bands and magnetism of a fragment with one metal, from its ladder and the constants of the free ion."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+import basis_params
+from basis_params import ParameterTable
+from ehmo.analysis.band_fit import FieldModel, fit_bands
+from ehmo.analysis.bands import OrbitalLabels, charge_transfer_bands, shell_bands
+from ehmo.analysis.multiplets import (
+    d1_square_pyramid_g,
+    magnetic_properties,
+    multiplet_terms,
+    reduced_momentum,
+)
+from ehmo.calculate.numbers import Bonding
+from ehmo.calculate.sites import group_axes_in_frame
+from ehmo.errors import EhmoError, MultipletError
+from ehmo.orbitals.dipole import dipole_integrals
+from ehmo.records.arrays import FloatArray
+from ehmo.records.bands import Band, BandFit
+from ehmo.records.coordination import Coordination
+from ehmo.records.fragment import Fragment
+from ehmo.records.ligand_field import Ladder
+from ehmo.records.multiplets import ElectronRepulsion, Magnetism
+from ehmo.records.options import Options
+from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
+from ehmo.records.symmetry import OrbitalIrreps
+from ehmo.units import PER_CM_PER_EV
+
+_TETRAGONAL = ("C4v", "D4h", "D4", "C4")
+
+
+def spectroscopy(
+    fragment: Fragment,
+    coordination: Coordination,
+    sites: tuple[MetalSite, ...],
+    irreps: OrbitalIrreps | None,
+    bonding: Bonding,
+    table: ParameterTable,
+    options: Options,
+) -> Spectroscopy:
+    """Terms, bands and magnetism; what cannot be had is withheld with the reason.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+    sites : tuple of MetalSite
+    irreps : OrbitalIrreps or None
+        Labels of the orbitals in the group of the sphere.
+    bonding : Bonding
+    table : ParameterTable
+        Set that the calculation was made with.
+    options : Options
+        Racah B, oxidation state and observed bands, if given.
+
+    Returns
+    -------
+    spectroscopy : Spectroscopy
+    """
+    if len(sites) > 1:
+        return _nothing(f"terms, bands and magnetism: the fragment has {len(sites)} metals")
+    (site,), (frame,) = sites, coordination.frames
+    if site.ladder is None:
+        return _nothing(f"terms, bands and magnetism: {site.ladder_withheld}")
+    dipoles = dipole_integrals(bonding.plan, table, fragment.positions_A, bonding.overlap.matrix)
+    shell = _Shell(site, site.ladder, group_axes_in_frame(site.symmetry, frame))
+    bands: tuple[Band, ...] = ()
+    withheld: list[str] = []
+    constants, repulsion, terms, magnetism, fit = None, None, None, None, None
+    try:
+        constants, repulsion = _constants(fragment, site, site.ladder, options)
+        terms = multiplet_terms(
+            site.ladder.field_eV, shell.n_electrons, repulsion, site.symmetry.group, shell.group_axes
+        )
+        bands = shell_bands(terms, site.symmetry.group, site.ladder, _ladder_dipoles(site.ladder, bonding, dipoles))
+    except EhmoError as error:
+        withheld.append(f"terms: {error}")
+    if terms is not None and constants is not None:
+        magnetism, missing = _magnetism(shell, constants, repulsion)
+        withheld += missing
+        if options.observed_bands_per_cm:
+            fit, missing = _fit(shell, constants, repulsion, options)
+            withheld += missing
+    labels = OrbitalLabels(site.symmetry.group, irreps.labels if irreps else ("",) * len(bonding.state.energies_eV))
+    orbitals = [level.orbital for level in site.ladder.levels if level.orbital is not None]
+    bands += charge_transfer_bands(bonding.state, labels, orbitals, dipoles, site.symmetry.axes)
+    return Spectroscopy(
+        constants=constants,
+        terms=terms,
+        bands=bands,
+        magnetism=magnetism,
+        first_order_g=_first_order_g(shell, constants),
+        fit=fit,
+        withheld=tuple(withheld),
+    )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Shell:
+    """The open shell of the one metal."""
+
+    site: MetalSite
+    ladder: Ladder
+    group_axes: FloatArray
+
+    @property
+    def n_electrons(self) -> int:
+        """Electrons by counting, else those that the calculation put in the ladder."""
+        held = sum(level.electrons for level in self.ladder.levels)
+        return round(held) if self.site.d_count is None else self.site.d_count
+
+    @property
+    def shares(self) -> FloatArray:
+        """Metal share of each level."""
+        return np.array([level.metal_share for level in self.ladder.levels])
+
+
+def _nothing(reason: str) -> Spectroscopy:
+    return Spectroscopy(None, None, (), None, None, None, (reason,))
+
+
+def _ladder_dipoles(ladder: Ladder, bonding: Bonding, dipoles: FloatArray) -> FloatArray:
+    """(3, n, n) dipole matrices among the orbitals of the ladder [angstrom]."""
+    orbitals = [level.orbital for level in ladder.levels if level.orbital is not None]
+    columns = bonding.state.coefficients[:, orbitals]
+    matrices: FloatArray = columns.T @ dipoles @ columns
+    return matrices
+
+
+def _constants(
+    fragment: Fragment, site: MetalSite, ladder: Ladder, options: Options
+) -> tuple[ShellConstants, ElectronRepulsion | None]:
+    """Constants of the free ion, and the repulsion reduced by the square of the mean metal share."""
+    symbol, state = fragment.symbols[site.metal], site.oxidation_state
+    if state is None:
+        raise MultipletError("the oxidation state cannot be counted", mend="give it with --oxidation-state")
+    mean = float(np.mean([level.metal_share for level in ladder.levels]))
+    factor, ion, sources = mean**2, f"{symbol}{state}+", []
+    B = C = F2 = F4 = F6 = zeta = None
+    repulsion = None
+    if ladder.angular_momentum == 2:
+        try:
+            row = basis_params.racah(symbol, state)
+        except KeyError:
+            row = None
+        if options.racah_B_per_cm is not None:
+            B = options.racah_B_per_cm
+            C = B * (row.C_per_cm / row.B_per_cm if row else 4.0)
+            sources.append("B as given")
+        elif row is not None:
+            B, C = factor * row.B_per_cm, factor * row.C_per_cm
+            sources.append(row.source_key)
+        if B is not None and C is not None:
+            repulsion = ElectronRepulsion.from_racah(B, C)
+    else:
+        try:
+            integrals = basis_params.slater_integrals(symbol, state)
+        except KeyError:
+            pass
+        else:
+            F2, F4, F6 = (factor * f for f in (integrals.F2_per_cm, integrals.F4_per_cm, integrals.F6_per_cm))
+            repulsion = ElectronRepulsion(F2, F4, F6)
+            sources.append(integrals.source_key)
+    try:
+        coupling = basis_params.spin_orbit(symbol, state)
+    except KeyError:
+        pass
+    else:
+        zeta = coupling.zeta_per_cm
+        sources.append(coupling.source_key)
+    return ShellConstants(ion, B, C, F2, F4, F6, zeta, factor, mean, tuple(dict.fromkeys(sources))), repulsion
+
+
+def _magnetism(
+    shell: _Shell, constants: ShellConstants, repulsion: ElectronRepulsion | None
+) -> tuple[Magnetism | None, list[str]]:
+    if constants.zeta_per_cm is None:
+        return None, [f"magnetism: no spin-orbit constant of {constants.ion} is tabulated"]
+    momentum = reduced_momentum(shell.ladder.angular_momentum, shell.ladder.vectors, shell.shares)
+    try:
+        return (
+            magnetic_properties(shell.ladder.field_eV, shell.n_electrons, repulsion, constants.zeta_per_cm, momentum),
+            [],
+        )
+    except EhmoError as error:
+        return None, [f"magnetism: {error}"]
+
+
+def _first_order_g(shell: _Shell, constants: ShellConstants | None) -> tuple[float, float] | None:
+    """Textbook values for one electron in dxy of a tetragonal ion."""
+    if constants is None or constants.zeta_per_cm is None or shell.n_electrons != 1:
+        return None
+    if shell.ladder.angular_momentum != 2 or shell.site.symmetry.group.name not in _TETRAGONAL:
+        return None
+    by_function = {level.function: level for level in shell.ladder.levels}
+    if shell.ladder.levels[0].function != "dxy" or not {"dxz", "dyz", "dx2-y2"} <= by_function.keys():
+        return None
+    ground = by_function["dxy"]
+    e_energy = (by_function["dxz"].energy_eV + by_function["dyz"].energy_eV) / 2 - ground.energy_eV
+    e_share = (by_function["dxz"].metal_share + by_function["dyz"].metal_share) / 2
+    return d1_square_pyramid_g(
+        constants.zeta_per_cm,
+        (by_function["dx2-y2"].energy_eV - ground.energy_eV) * PER_CM_PER_EV,
+        e_energy * PER_CM_PER_EV,
+        ground.metal_share,
+        by_function["dx2-y2"].metal_share,
+        e_share,
+    )
+
+
+def _fit(
+    shell: _Shell, constants: ShellConstants, repulsion: ElectronRepulsion | None, options: Options
+) -> tuple[BandFit | None, list[str]]:
+    model = FieldModel(
+        shell.ladder.field_eV,
+        shell.n_electrons,
+        repulsion,
+        constants.racah_B_per_cm or 0.0,
+        shell.site.symmetry.group,
+        shell.group_axes,
+    )
+    try:
+        return fit_bands(model, options.observed_bands_per_cm), []
+    except EhmoError as error:
+        return None, [f"fit to the observed bands: {error}"]

@@ -1,0 +1,56 @@
+"""The spin state where counting leaves several open: the ladder of a first pass decides."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import basis_params
+from ehmo.analysis.spin_choice import choose_spin
+from ehmo.calculate.numbers import Bonding
+from ehmo.calculate.sites import site_ladders, sphere_symmetries
+from ehmo.errors import ElectronCountError
+from ehmo.records.coordination import Coordination, ElectronAssignment
+from ehmo.records.fragment import Fragment
+
+
+def settled_spin(
+    fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, bonding: Bonding
+) -> ElectronAssignment:
+    """Unpaired electrons by the ladder against the pairing energy.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    coordination : Coordination
+    electrons : ElectronAssignment
+        With the candidates.
+    bonding : Bonding
+        First pass, with the lowest candidate.
+
+    Returns
+    -------
+    electrons : ElectronAssignment
+        With the choice and its reason.
+
+    Raises
+    ------
+    ElectronCountError
+        If there is no ladder or no pairing energy; it names the candidates.
+    """
+    (metal,), state, count = coordination.metals, electrons.metal_oxidation_total, electrons.d_electrons
+    found, withheld = site_ladders(coordination, electrons, bonding, sphere_symmetries(fragment, coordination))
+    listed = " or ".join(str(candidate) for candidate in electrons.spin_candidates)
+    if not found or state is None or count is None:
+        raise ElectronCountError(
+            f"unpaired electrons are not given and no ladder decides ({withheld})", mend=f"give their number: {listed}"
+        )
+    symbol = fragment.symbols[metal]
+    try:
+        pairing = basis_params.pairing_energy(symbol, state).pairing_energy_per_cm
+    except KeyError:
+        raise ElectronCountError(
+            f"unpaired electrons are not given and no pairing energy of {symbol}{state}+ is tabulated",
+            mend=f"give their number: {listed}",
+        ) from None
+    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, f"{symbol}{state}+")
+    return replace(electrons, unpaired_electrons=choice.unpaired_electrons, unpaired_reason=choice.reason)
