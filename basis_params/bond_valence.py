@@ -112,6 +112,11 @@ def estimated_R0(cation: tuple[float, float], anion: tuple[float, float]) -> flo
     cation, anion : tuple of float
         Electronegativity c and size r [A] of each atom.
 
+    Returns
+    -------
+    R0_A : float
+        [A]
+
     References
     ----------
     okeeffe-1991

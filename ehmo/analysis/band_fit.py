@@ -51,6 +51,8 @@ class FieldModel:
     group : PointGroup or None
     axes : (3, 3) ndarray
         Rows are the group's axes in the local ones.
+    multiplicity : int
+        2S + 1 of the ground term.
     """
 
     field_eV: FloatArray
@@ -59,6 +61,7 @@ class FieldModel:
     B_per_cm: float
     group: PointGroup | None
     axes: FloatArray
+    multiplicity: int
 
     def terms(self, shifts_per_cm: FloatArray, projectors: FloatArray, scale: float) -> Terms:
         """Terms with every level shifted and the repulsion scaled."""
@@ -105,22 +108,26 @@ def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
         return model.terms(LEVEL_WIDTH_PER_CM * parameters[:n_levels], projectors, float(scale))
 
     start = terms_at(np.zeros(n_parameters))
-    upper = _spin_allowed(start)
+    upper = _spin_allowed(start, model.multiplicity)
     if len(observed) > len(upper):
         raise InputError(
             f"{len(observed)} observed bands, but only {len(upper)} spin-allowed ones within the shell",
             mend="leave out charge-transfer and spin-forbidden bands",
         )
-    computed = np.array([term.energy_per_cm for term in upper[: len(observed)]])
-    parameters, covariance, fitted = _damped_fit(terms_at, observed, n_parameters)
+
+    def bands_at(parameters: FloatArray) -> FloatArray:
+        found = _spin_allowed(terms_at(parameters), model.multiplicity)[: len(observed)]
+        return np.array([energy for _, energy in found])
+
+    parameters, covariance, fitted = _damped_fit(bands_at, observed, n_parameters)
     names = [level.label for level in start.levels][1:]
     if len(names) != n_levels:
         names = [f"level {place + 2}" for place in range(n_levels)]
     names += ["B"] if with_repulsion else []
     return BandFit(
         assignments=tuple(
-            BandAssignment(float(seen), float(before), float(after), term.label)
-            for seen, before, after, term in zip(observed, computed, fitted, upper, strict=False)
+            BandAssignment(float(seen), before, float(after), term.label)
+            for seen, (term, before), after in zip(observed, upper, fitted, strict=False)
         ),
         parameters=_fitted(names, model, (lowest, *projectors), parameters, covariance),
         undetermined=_undetermined(names, covariance),
@@ -135,28 +142,25 @@ def _level_projectors(field_eV: FloatArray) -> FloatArray:
     return np.array([block @ block.T for block in blocks])
 
 
-def _spin_allowed(terms: Terms) -> list[Term]:
-    return [term for term in terms.terms[1:] if term.multiplicity == terms.ground.multiplicity]
+def _spin_allowed(terms: Terms, multiplicity: int) -> list[tuple[Term, float]]:
+    """Terms of one spin above the lowest of them, with their energies above it."""
+    lowest, *upper = [term for term in terms.terms if term.multiplicity == multiplicity]
+    return [(term, term.energy_per_cm - lowest.energy_per_cm) for term in upper]
 
 
 def _damped_fit(
-    terms_at: Callable[[FloatArray], Terms], observed: FloatArray, n_parameters: int
+    bands_at: Callable[[FloatArray], FloatArray], observed: FloatArray, n_parameters: int
 ) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Gauss-Newton on bands and on the parameters themselves, both in units of their widths.
 
     Returns the parameters, their covariance and the fitted bands.
     """
-
-    def bands(parameters: FloatArray) -> FloatArray:
-        found = [term.energy_per_cm for term in _spin_allowed(terms_at(parameters))[: len(observed)]]
-        return np.array(found)
-
     parameters: FloatArray = np.zeros(n_parameters)
     information: FloatArray = np.eye(n_parameters)
     for _ in range(_STEPS):
-        base = bands(parameters)
+        base = bands_at(parameters)
         slopes = np.array(
-            [(bands(parameters + _DIFFERENCE * unit) - base) / _DIFFERENCE for unit in np.eye(n_parameters)]
+            [(bands_at(parameters + _DIFFERENCE * unit) - base) / _DIFFERENCE for unit in np.eye(n_parameters)]
         ).T
         weighted = slopes / BAND_WIDTH_PER_CM
         information = weighted.T @ weighted + np.eye(n_parameters)
@@ -166,7 +170,7 @@ def _damped_fit(
         if np.abs(step).max() < 1e-6:
             break
     covariance = np.asarray(np.linalg.inv(information), dtype=np.float64)
-    return parameters, covariance, bands(parameters)
+    return parameters, covariance, bands_at(parameters)
 
 
 def _fitted(
@@ -200,6 +204,7 @@ def _undetermined(names: Sequence[str], covariance: FloatArray) -> tuple[str, ..
         if variance < DETERMINED**2:
             continue
         scaled = direction / direction[np.abs(direction).argmax()]
-        terms = [f"{value:+.2f} {name}" for name, value in zip(names, scaled, strict=True) if abs(value) > 0.05]
-        said.append(" ".join(terms).removeprefix("+"))
+        parts = [(name, value) for name, value in zip(names, scaled, strict=True) if abs(value) > 0.05]
+        terms = " ".join(f"{value:+.2f} {name}" for name, value in parts)
+        said.append(parts[0][0] if len(parts) == 1 else terms.removeprefix("+"))
     return tuple(said)

@@ -11,7 +11,7 @@ from ehmo.analysis.multiplets import configuration_terms, dipole_polarisations
 from ehmo.conventions import DEGENERACY_TOLERANCE_EV
 from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.records.bands import Band, BandKind
-from ehmo.records.electronic import ElectronicState
+from ehmo.records.electronic import NO_ELECTRON, ElectronicState
 from ehmo.records.ligand_field import Ladder
 from ehmo.records.multiplets import Term, Terms
 from ehmo.records.symmetry import PointGroup
@@ -30,13 +30,17 @@ _LOWEST_LISTED = 3
 _POLARISED = 0.15  # share of the intensity along an axis that is worth its letter
 
 
-def shell_bands(terms: Terms, group: PointGroup | None, ladder: Ladder, dipoles_A: FloatArray) -> tuple[Band, ...]:
-    """Bands from the ground term to every other term.
+def shell_bands(
+    terms: Terms, ground: Term, group: PointGroup | None, ladder: Ladder, dipoles_A: FloatArray
+) -> tuple[Band, ...]:
+    """Bands from the ground term to every term above it.
 
     Parameters
     ----------
     terms : Terms
         Terms of the shell, labelled in the group.
+    ground : Term
+        Lowest term of the spin that the fragment has.
     group : PointGroup or None
         Group of the labels.
     ladder : Ladder
@@ -51,10 +55,9 @@ def shell_bands(terms: Terms, group: PointGroup | None, ladder: Ladder, dipoles_
         between the two levels, times the weight of that configuration.
     """
     kind: BandKind = "d-d" if terms.l == 2 else "f-f"
-    ground = terms.ground
     strengths = (dipoles_A**2).sum(axis=0)
     bands = []
-    for term in terms.terms[1:]:
+    for term in terms.terms[terms.terms.index(ground) + 1 :]:
         spin_allowed = term.multiplicity == ground.multiplicity
         polarisation = dipole_polarisations(group, ground.irrep, term.irrep)
         strength = None
@@ -160,105 +163,94 @@ def charge_transfer_bands(
     ----------
     .. [1] mulliken-1939: R. S. Mulliken, J. Chem. Phys. 7, 14 (1939): f = (2/3) dE |D|^2 in atomic units.
     """
-    sets = _orbital_sets(state, labels)
-    bands = []
-    highest, lowest = state.energies_eV[state.homo], state.energies_eV[_first_open(state)]
-    sources = [
-        s
-        for s in sets
-        if state.occupations[0, s[0]] > 0.01 and lowest - state.energies_eV[s[0]] < CHARGE_TRANSFER_WINDOW_EV
-    ]
-    targets = [
-        s
-        for s in sets
-        if state.occupations[1, s[0]] < 0.99 and state.energies_eV[s[0]] - highest < CHARGE_TRANSFER_WINDOW_EV
-    ]
-    columns = np.concatenate(targets) if targets else np.zeros(0, dtype=np.intp)
-    rows = np.concatenate(sources) if sources else np.zeros(0, dtype=np.intp)
+    rows, columns = _movable_orbitals(state)
     moments = np.einsum(
         "pi,kpq,qj->kij", state.coefficients[:, rows], dipoles_A, state.coefficients[:, columns], optimize=True
     )
     moments = np.tensordot(axes, moments, axes=1)
-    places = {int(orbital): place for place, orbital in enumerate(rows)}, {int(o): p for p, o in enumerate(columns)}
-    ladder = frozenset(ladder_orbitals)
-    for source in sources:
-        for target in targets:
-            gap = float(state.energies_eV[target].mean() - state.energies_eV[source].mean())
-            if not DEGENERACY_TOLERANCE_EV < gap < CHARGE_TRANSFER_WINDOW_EV:
-                continue
-            if ladder.issuperset(source.tolist()) and ladder.issuperset(target.tolist()):
-                continue
-            i, j = ([place[int(o)] for o in orbitals] for place, orbitals in zip(places, (source, target), strict=True))
-            squared = (moments[:, i][:, :, j] ** 2 * _movable(state, source, target)).sum(axis=(1, 2))
-            strength = 2 / 3 * gap / HARTREE_EV * float(squared.sum()) / BOHR_A**2
-            bands.append(_transfer_band(state, labels, source, target, gap, strength, squared))
-    bands.sort(key=lambda band: band.wavenumber_per_cm)
-    return tuple(
-        band
-        for place, band in enumerate(bands)
-        if place < _LOWEST_LISTED or (band.oscillator_strength or 0.0) >= LISTED_STRENGTH
-    )
+    squared = moments**2 * np.einsum("si,sj->ij", state.occupations[:, rows], 1 - state.occupations[:, columns])
+    sources, targets = _set_starts(state, labels, rows), _set_starts(state, labels, columns)
+    by_axis = np.add.reduceat(np.add.reduceat(squared, sources, axis=1), targets, axis=2)
+    gaps = state.energies_eV[columns[targets]] - state.energies_eV[rows[sources]][:, None]
+    strengths = 2 / 3 * gaps / HARTREE_EV * by_axis.sum(axis=0) / BOHR_A**2
+    ladder = np.array(sorted(ladder_orbitals), dtype=np.intp)
+    within = np.isin(rows[sources], ladder)[:, None] & np.isin(columns[targets], ladder)
+    possible = (gaps > DEGENERACY_TOLERANCE_EV) & (gaps < CHARGE_TRANSFER_WINDOW_EV) & ~within
+    first, second = np.nonzero(possible)
+    order = np.argsort(gaps[first, second], kind="stable")
+    first, second = first[order], second[order]
+    listed = (strengths[first, second] >= LISTED_STRENGTH) | (np.arange(len(first)) < _LOWEST_LISTED)
+    closed_shell = bool(np.allclose(state.occupations[0], state.occupations[1]))
+    bands = []
+    for source, target in zip(first[listed].tolist(), second[listed].tolist(), strict=True):
+        transfer = _Transfer(
+            _members(rows, sources, source),
+            _members(columns, targets, target),
+            float(gaps[source, target]),
+            float(strengths[source, target]),
+            by_axis[:, source, target],
+        )
+        bands.append(_transfer_band(labels, transfer, closed_shell=closed_shell))
+    return tuple(bands)
 
 
-def _first_open(state: ElectronicState) -> int:
-    """Lowest orbital with room for an electron."""
-    return int(np.flatnonzero(state.occupations[1] < 0.99)[0])
+@dataclass(frozen=True, slots=True, eq=False)
+class _Transfer:
+    """Electrons moved from one set of orbitals to another."""
+
+    source: IntArray
+    target: IntArray
+    gap_eV: float
+    strength: float
+    by_axis: FloatArray
 
 
-def _movable(state: ElectronicState, source: IntArray, target: IntArray) -> FloatArray:
-    """Electrons that can move from each source to each target orbital, spin by spin."""
-    filled, room = state.occupations[:, source], 1 - state.occupations[:, target]
-    electrons: FloatArray = np.einsum("si,sj->ij", filled, room)
-    return electrons
+def _movable_orbitals(state: ElectronicState) -> tuple[IntArray, IntArray]:
+    """Orbitals that can lose and that can take an electron within the window."""
+    energies, (alpha, beta) = state.energies_eV, state.occupations
+    filled, open_ = alpha > NO_ELECTRON, beta < 1 - NO_ELECTRON
+    lowest_open = energies[open_][0] if open_.any() else np.inf
+    rows = np.flatnonzero(filled & (energies > lowest_open - CHARGE_TRANSFER_WINDOW_EV))
+    columns = np.flatnonzero(open_ & (energies < energies[filled][-1] + CHARGE_TRANSFER_WINDOW_EV))
+    return rows, columns
 
 
-def _orbital_sets(state: ElectronicState, labels: OrbitalLabels) -> list[IntArray]:
-    """Orbitals of one energy and irrep."""
-    sets: list[list[int]] = []
-    for k, energy in enumerate(state.energies_eV):
-        if (
-            sets
-            and energy - state.energies_eV[sets[-1][-1]] < 10 * DEGENERACY_TOLERANCE_EV
-            and (labels.irreps[k] == labels.irreps[sets[-1][-1]])
-        ):
-            sets[-1].append(k)
-        else:
-            sets.append([k])
-    return [np.array(members, dtype=np.intp) for members in sets]
+def _set_starts(state: ElectronicState, labels: OrbitalLabels, orbitals: IntArray) -> IntArray:
+    """Places in a list of orbitals where a new energy or irrep begins."""
+    if not len(orbitals):
+        return orbitals
+    names = np.array([labels.irreps[k] for k in orbitals])
+    gap = np.diff(state.energies_eV[orbitals]) > 10 * DEGENERACY_TOLERANCE_EV
+    return np.concatenate([[0], 1 + np.flatnonzero(gap | (names[1:] != names[:-1]))])
 
 
-def _transfer_band(
-    state: ElectronicState,
-    labels: OrbitalLabels,
-    source: IntArray,
-    target: IntArray,
-    gap: float,
-    strength: float,
-    by_axis: FloatArray,
-) -> Band:
+def _members(orbitals: IntArray, starts: IntArray, place: int) -> IntArray:
+    stop = starts[place + 1] if place + 1 < len(starts) else len(orbitals)
+    return orbitals[starts[place] : stop]
+
+
+def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: bool) -> Band:
+    source, target = transfer.source, transfer.target
     lower, upper = labels.irreps[source[0]], labels.irreps[target[0]]
-    allowed = strength >= ALLOWED_STRENGTH
-    letters = [
-        letter for letter, part in zip("xyz", by_axis, strict=True) if allowed and part > _POLARISED * by_axis.sum()
-    ]
+    allowed = transfer.strength >= ALLOWED_STRENGTH
+    weak = _POLARISED * transfer.by_axis.sum()
+    letters = [letter for letter, part in zip("xyz", transfer.by_axis, strict=True) if allowed and part > weak]
     return Band(
         "charge transfer",
-        gap * PER_CM_PER_EV,
+        transfer.gap_eV * PER_CM_PER_EV,
         f"{int(source[0]) + 1} {lower} to {int(target[0]) + 1} {upper}",
-        _closed_shell_terms(state, labels.group, (lower, len(source)), (upper, len(target))),
+        _singlets(labels.group, (lower, len(source)), (upper, len(target))) if closed_shell else "",
         len(source) * len(target),
         True,
         allowed,
         ", ".join(letters),
-        strength,
+        transfer.strength,
     )
 
 
-def _closed_shell_terms(
-    state: ElectronicState, group: PointGroup | None, lower: tuple[str, int], upper: tuple[str, int]
-) -> str:
-    """Singlets of a hole and an electron; an open-shell ground state makes too many terms to name."""
-    if group is None or not np.allclose(state.occupations[0], state.occupations[1]):
+def _singlets(group: PointGroup | None, lower: tuple[str, int], upper: tuple[str, int]) -> str:
+    """Singlets of a hole and an electron, where both sets are whole in the group."""
+    if group is None:
         return ""
     dimensions = dict(zip(group.irreps, group.dimensions.tolist(), strict=True))
     if dimensions.get(lower[0]) != lower[1] or dimensions.get(upper[0]) != upper[1]:

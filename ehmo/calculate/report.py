@@ -6,7 +6,7 @@ from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
 from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings
-from ehmo.calculate.sites import metal_sites, site_formal_orders, sphere_irreps
+from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders, sphere_irreps
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError
@@ -76,6 +76,7 @@ def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, 
         state=bonding.state,
         populations=bonding.populations,
         orders=bonding.orders,
+        molecule_symmetry=molecule_symmetry(fragment),
         sites=sites,
         irreps=irreps,
         formal_orders=site_formal_orders(fragment, coordination, sites),

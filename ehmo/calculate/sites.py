@@ -11,6 +11,7 @@ from ehmo.analysis.pi_planes import pi_normals
 from ehmo.analysis.symmetry import find_symmetry, functions_of_atoms, lowdin_rows, orbital_irreps, shape_measures
 from ehmo.analysis.symmetry.parts import shell_parts
 from ehmo.calculate.numbers import Bonding
+from ehmo.conventions import ELEMENT_SYMBOLS
 from ehmo.harmonics import harmonic_rotations
 from ehmo.records.arrays import FloatArray
 from ehmo.records.coordination import Coordination, ElectronAssignment, LocalFrame
@@ -21,6 +22,9 @@ from ehmo.records.site import MetalSite
 from ehmo.records.symmetry import OrbitalIrreps, Symmetry
 from ehmo.structure.elements import ACTINIDES
 from ehmo.structure.oxidation import bond_valence_sum
+
+MOST_ATOMS = 120
+"""Largest fragment whose whole symmetry is searched."""
 
 
 def sphere_symmetries(fragment: Fragment, coordination: Coordination) -> tuple[Symmetry, ...]:
@@ -54,6 +58,13 @@ def sphere_symmetries(fragment: Fragment, coordination: Coordination) -> tuple[S
             )
         )
     return tuple(symmetries)
+
+
+def molecule_symmetry(fragment: Fragment) -> Symmetry | None:
+    """Symmetry of all atoms; None beyond `MOST_ATOMS`, where the search would outlast the calculation."""
+    if len(fragment) > MOST_ATOMS:
+        return None
+    return find_symmetry(fragment.positions_A, [ELEMENT_SYMBOLS.index(symbol) for symbol in fragment.symbols])
 
 
 def group_axes_in_frame(symmetry: Symmetry, frame: LocalFrame) -> FloatArray:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -16,12 +16,13 @@ from ehmo.analysis.multiplets import (
     multiplet_terms,
     reduced_momentum,
 )
+from ehmo.analysis.symmetry import term_symbol
 from ehmo.calculate.numbers import Bonding
 from ehmo.calculate.sites import group_axes_in_frame
 from ehmo.errors import EhmoError, MultipletError
 from ehmo.orbitals.dipole import dipole_integrals
 from ehmo.records.arrays import FloatArray
-from ehmo.records.bands import Band, BandFit
+from ehmo.records.bands import BandFit
 from ehmo.records.coordination import Coordination
 from ehmo.records.fragment import Fragment
 from ehmo.records.ligand_field import Ladder
@@ -67,32 +68,53 @@ def spectroscopy(
     (site,), (frame,) = sites, coordination.frames
     if site.ladder is None:
         return _nothing(f"terms, bands and magnetism: {site.ladder_withheld}")
+    shell = _Shell(site, site.ladder, group_axes_in_frame(site.symmetry, frame), fragment.unpaired_electrons or 0)
     dipoles = dipole_integrals(bonding.plan, table, fragment.positions_A, bonding.overlap.matrix)
-    shell = _Shell(site, site.ladder, group_axes_in_frame(site.symmetry, frame))
-    bands: tuple[Band, ...] = ()
-    withheld: list[str] = []
-    constants, repulsion, terms, magnetism, fit = None, None, None, None, None
-    try:
-        constants, repulsion = _constants(fragment, site, site.ladder, options)
-        terms = multiplet_terms(
-            site.ladder.field_eV, shell.n_electrons, repulsion, site.symmetry.group, shell.group_axes
-        )
-        bands = shell_bands(terms, site.symmetry.group, site.ladder, _ladder_dipoles(site.ladder, bonding, dipoles))
-    except EhmoError as error:
-        withheld.append(f"terms: {error}")
-    if terms is not None and constants is not None:
-        magnetism, missing = _magnetism(shell, constants, repulsion)
-        withheld += missing
-        if options.observed_bands_per_cm:
-            fit, missing = _fit(shell, constants, repulsion, options)
-            withheld += missing
+    found = _shell_results(fragment, shell, _ladder_dipoles(site.ladder, bonding, dipoles), options)
     labels = OrbitalLabels(site.symmetry.group, irreps.labels if irreps else ("",) * len(bonding.state.energies_eV))
     orbitals = [level.orbital for level in site.ladder.levels if level.orbital is not None]
-    bands += charge_transfer_bands(bonding.state, labels, orbitals, dipoles, site.symmetry.axes)
+    transfer = charge_transfer_bands(bonding.state, labels, orbitals, dipoles, site.symmetry.axes)
+    return replace(found, bands=found.bands + transfer)
+
+
+def _shell_results(fragment: Fragment, shell: _Shell, dipoles_A: FloatArray, options: Options) -> Spectroscopy:
+    """Terms of the open shell and what follows from them, each part as far as it can be had."""
+    group, closed = shell.site.symmetry.group, 2 * len(shell.ladder.levels)
+    if shell.n_electrons in (0, closed):
+        return replace(
+            _nothing("terms, bands within the shell and magnetism: the shell is empty or full"),
+            ground_term=f"1{term_symbol(group.irreps[0])}" if shell.unpaired == 0 else "",
+        )
+    try:
+        constants, repulsion = _constants(fragment, shell.site, shell.ladder, shell.n_electrons, options)
+        terms = multiplet_terms(shell.ladder.field_eV, shell.n_electrons, repulsion, group, shell.group_axes)
+    except EhmoError as error:
+        return _nothing(f"terms, bands within the shell and magnetism: {error}")
+    ground = terms.lowest(shell.unpaired + 1)
+    if ground is None:
+        return replace(
+            _nothing(f"bands and magnetism: the shell has no terms with {shell.unpaired} unpaired electrons"),
+            constants=constants,
+            terms=terms,
+        )
+    withheld: list[str] = []
+    magnetism, fit = None, None
+    if ground is terms.ground:
+        magnetism, missing = _magnetism(shell, constants, repulsion)
+        withheld += missing
+    else:
+        withheld.append(
+            f"magnetism: the lowest term of the computed ladder, {terms.ground.label}, has not the "
+            f"{shell.unpaired} unpaired electrons of the calculation; the ladder may be too wide"
+        )
+    if options.observed_bands_per_cm:
+        fit, missing = _fit(shell, constants, repulsion, options)
+        withheld += missing
     return Spectroscopy(
         constants=constants,
         terms=terms,
-        bands=bands,
+        ground_term=ground.label,
+        bands=shell_bands(terms, ground, group, shell.ladder, dipoles_A),
         magnetism=magnetism,
         first_order_g=_first_order_g(shell, constants),
         fit=fit,
@@ -107,6 +129,7 @@ class _Shell:
     site: MetalSite
     ladder: Ladder
     group_axes: FloatArray
+    unpaired: int
 
     @property
     def n_electrons(self) -> int:
@@ -121,7 +144,7 @@ class _Shell:
 
 
 def _nothing(reason: str) -> Spectroscopy:
-    return Spectroscopy(None, None, (), None, None, None, (reason,))
+    return Spectroscopy(None, None, "", (), None, None, None, (reason,))
 
 
 def _ladder_dipoles(ladder: Ladder, bonding: Bonding, dipoles: FloatArray) -> FloatArray:
@@ -133,7 +156,7 @@ def _ladder_dipoles(ladder: Ladder, bonding: Bonding, dipoles: FloatArray) -> Fl
 
 
 def _constants(
-    fragment: Fragment, site: MetalSite, ladder: Ladder, options: Options
+    fragment: Fragment, site: MetalSite, ladder: Ladder, n_electrons: int, options: Options
 ) -> tuple[ShellConstants, ElectronRepulsion | None]:
     """Constants of the free ion, and the repulsion reduced by the square of the mean metal share."""
     symbol, state = fragment.symbols[site.metal], site.oxidation_state
@@ -143,7 +166,9 @@ def _constants(
     factor, ion, sources = mean**2, f"{symbol}{state}+", []
     B = C = F2 = F4 = F6 = zeta = None
     repulsion = None
-    if ladder.angular_momentum == 2:
+    if n_electrons in (1, 4 * ladder.angular_momentum + 1):
+        pass  # one electron or one hole: nothing repels it within the shell
+    elif ladder.angular_momentum == 2:
         try:
             row = basis_params.racah(symbol, state)
         except KeyError:
@@ -223,6 +248,7 @@ def _fit(
         constants.racah_B_per_cm or 0.0,
         shell.site.symmetry.group,
         shell.group_axes,
+        shell.unpaired + 1,
     )
     try:
         return fit_bands(model, options.observed_bands_per_cm), []

@@ -45,12 +45,21 @@ def settled_spin(
             f"unpaired electrons are not given and no ladder decides ({withheld})", mend=f"give their number: {listed}"
         )
     symbol = fragment.symbols[metal]
-    try:
-        pairing = basis_params.pairing_energy(symbol, state).pairing_energy_per_cm
-    except KeyError:
+    # Low-valent ions are not tabulated; the nearest charge of the metal is close enough for their strong fields.
+    nearest = next((charge for charge in (state, 1, 2, 3) if charge >= state and _pairing(symbol, charge)), None)
+    pairing = None if nearest is None else _pairing(symbol, nearest)
+    if pairing is None:
         raise ElectronCountError(
             f"unpaired electrons are not given and no pairing energy of {symbol}{state}+ is tabulated",
             mend=f"give their number: {listed}",
-        ) from None
-    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, f"{symbol}{state}+")
+        )
+    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, f"{symbol}{nearest}+")
     return replace(electrons, unpaired_electrons=choice.unpaired_electrons, unpaired_reason=choice.reason)
+
+
+def _pairing(symbol: str, charge: int) -> float | None:
+    """Pairing energy of an ion [cm^-1]; None if it is not tabulated."""
+    try:
+        return basis_params.pairing_energy(symbol, charge).pairing_energy_per_cm
+    except KeyError:
+        return None

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import argparse
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any
 
 from ehmo.cli.output import write_whole
@@ -12,6 +12,7 @@ from ehmo.errors import InputError
 if TYPE_CHECKING:
     from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
+    from ehmo.records.report import BondReport
 
 _SWITCH = {"on": True, "off": False}
 
@@ -34,6 +35,9 @@ def add_calculation_options(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--charge", type=int, metavar="Q", help="total charge (default: from the file, or a guess)")
     parser.add_argument(
         "--unpaired", type=int, metavar="N", help="unpaired electrons (default: from the file, or a guess)"
+    )
+    parser.add_argument(
+        "--oxidation-state", type=int, metavar="N", help="oxidation state of the one metal (default: by counting)"
     )
     parser.add_argument("--params", default="standard", metavar="NAME|FILE", help="parameter set (default: standard)")
     parser.add_argument(
@@ -73,6 +77,7 @@ def calculation_options(chosen: argparse.Namespace) -> Options:
     return Options(
         charge=chosen.charge,
         unpaired_electrons=chosen.unpaired,
+        oxidation_state=chosen.oxidation_state,
         charge_model=chosen.charges,
         K=chosen.K,
         weighting=None if chosen.weighting is None else _SWITCH[chosen.weighting],
@@ -93,14 +98,19 @@ def run(chosen: argparse.Namespace) -> str:
     return report_on(read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes), chosen)
 
 
-def report_on(fragments: Sequence[Fragment], chosen: argparse.Namespace) -> str:
+def report_on(
+    fragments: Sequence[Fragment],
+    chosen: argparse.Namespace,
+    options: Options | None = None,
+    text_of: Callable[[BondReport], str] | None = None,
+) -> str:
     """Text for the terminal; the JSON document goes to its file, or replaces the text."""
     from ehmo.calculate import bond_report
     from ehmo.orbitals.parameters import load_parameters
 
     if chosen.json == "":
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
-    options, table = calculation_options(chosen), load_parameters(chosen.params)
+    options, table = options or calculation_options(chosen), load_parameters(chosen.params)
     reports = [bond_report(fragment, table, options) for fragment in fragments]
     if chosen.json is not None:
         from ehmo.report.document import json_text
@@ -112,4 +122,4 @@ def report_on(fragments: Sequence[Fragment], chosen: argparse.Namespace) -> str:
     from ehmo.report.text import bond_text
 
     rule = "\n" + "=" * 100 + "\n\n"
-    return rule.join(bond_text(report) for report in reports)
+    return rule.join((text_of or bond_text)(report) for report in reports)

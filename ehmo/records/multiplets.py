@@ -174,6 +174,10 @@ class Terms:
         """Lowest term."""
         return self.terms[0]
 
+    def lowest(self, multiplicity: int) -> Term | None:
+        """Lowest term of a multiplicity 2S + 1; None if the shell has none."""
+        return next((term for term in self.terms if term.multiplicity == multiplicity), None)
+
 
 @dataclass(frozen=True, eq=False)
 class SpinOrbitStates:

@@ -19,7 +19,7 @@ from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
 from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.site import MetalSite, Spectroscopy
-from ehmo.records.symmetry import OrbitalIrreps
+from ehmo.records.symmetry import OrbitalIrreps, Symmetry
 from ehmo.records.table import aligned
 from ehmo.records.wording import BOND_NUMBERS, bond_rows, electrons_in_words
 
@@ -96,6 +96,8 @@ class BondReport:
         Mulliken populations.
     orders : tuple of BondOrders
         One per bond, in the order of `coordination.bonds`.
+    molecule_symmetry : Symmetry or None
+        Of all atoms; None if they are too many to search.
     sites : tuple of MetalSite
         Symmetry, oxidation state and ladder of each metal.
     irreps : OrbitalIrreps or None
@@ -121,6 +123,7 @@ class BondReport:
     state: ElectronicState
     populations: Populations
     orders: tuple[BondOrders, ...]
+    molecule_symmetry: Symmetry | None
     sites: tuple[MetalSite, ...]
     irreps: OrbitalIrreps | None
     formal_orders: tuple[FormalOrder | None, ...]
@@ -152,6 +155,10 @@ class BondReport:
             for shell in dict.fromkeys(shells)
         }
 
+    def site_of(self, metal: int) -> MetalSite:
+        """Site of one metal."""
+        return next(site for site in self.sites if site.metal == metal)
+
     def orders_of(self, metal: int) -> tuple[BondOrders, ...]:
         """Orders of the bonds of one metal, in the order of `coordination.bonds_of`."""
         return tuple(orders for bond, orders in self.bonds() if bond.metal == metal)
@@ -177,4 +184,4 @@ class BondReport:
         return f"{fragment.formula}, {electrons_in_words(fragment)}, {model}"
 
     def _rows(self) -> list[list[str]]:
-        return bond_rows(self.coordination.bonds, self.orders, self.fragment.labels)
+        return bond_rows(self.coordination.bonds, self.orders, self.formal_orders, self.fragment.labels)

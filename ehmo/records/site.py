@@ -87,6 +87,8 @@ class Spectroscopy:
     ----------
     constants : ShellConstants or None
     terms : Terms or None
+    ground_term : str
+        Lowest term of the spin that the fragment has, such as ``2B2``; empty if it cannot be told.
     bands : tuple of Band
         By rising wavenumber, those within the shell before charge transfer.
     magnetism : Magnetism or None
@@ -100,6 +102,7 @@ class Spectroscopy:
 
     constants: ShellConstants | None
     terms: Terms | None
+    ground_term: str
     bands: tuple[Band, ...]
     magnetism: Magnetism | None
     first_order_g: tuple[float, float] | None

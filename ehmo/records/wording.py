@@ -8,13 +8,14 @@ from typing import Final
 from ehmo.conventions import BOND_SYMMETRIES
 from ehmo.records.bonding import BondChannel, BondOrders
 from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
 
 FULL_CHANNEL: Final = 0.60
 PARTIAL_CHANNEL: Final = 0.20
 """Weights from which a channel counts as full or as partial when a bond is put into words."""
 
-BOND_NUMBERS: Final = (2, 3, 4, 5)
+BOND_NUMBERS: Final = (2, 3, 4, 5, 6)
 """Columns of `bond_rows` that hold numbers."""
 
 _LISTED_CHANNEL = 0.05
@@ -63,13 +64,20 @@ def channel_weights(channels: Sequence[BondChannel]) -> str:
     return "  ".join(groups)
 
 
-def bond_rows(bonds: Sequence[MetalDonorBond], orders: Sequence[BondOrders], labels: Sequence[str]) -> list[list[str]]:
+def bond_rows(
+    bonds: Sequence[MetalDonorBond],
+    orders: Sequence[BondOrders],
+    formal_orders: Sequence[FormalOrder | None],
+    labels: Sequence[str],
+) -> list[list[str]]:
     """Heading and one row of cells for each bond.
 
     Parameters
     ----------
     bonds : sequence of MetalDonorBond
     orders : sequence of BondOrders
+        One per bond.
+    formal_orders : sequence of FormalOrder or None
         One per bond.
     labels : sequence of str
         Label of each atom.
@@ -78,8 +86,8 @@ def bond_rows(bonds: Sequence[MetalDonorBond], orders: Sequence[BondOrders], lab
     -------
     rows : list of list of str
     """
-    rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "channels", "weights"]]
-    for bond, order in zip(bonds, orders, strict=True):
+    rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "formal", "channels and their weights"]]
+    for bond, order, formal in zip(bonds, orders, formal_orders, strict=True):
         rows.append(
             [
                 f"{labels[bond.metal]}-{labels[bond.donor]}",
@@ -88,7 +96,7 @@ def bond_rows(bonds: Sequence[MetalDonorBond], orders: Sequence[BondOrders], lab
                 f"{order.overlap_population:.2f}",
                 f"{order.mayer:.2f}",
                 f"{order.wiberg:.2f}",
-                channels_in_words(order.channels),
+                "?" if formal is None else str(formal.order),
                 channel_weights(order.channels),
             ]
         )

@@ -10,8 +10,10 @@ from typing import Any
 from ehmo import __version__
 from ehmo.records.bonding import BondOrders
 from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.report import BondReport
 from ehmo.report.cautions import CAUTIONS
+from ehmo.report.ladder_document import ladder_part, spectroscopy_part, symmetry_part
 
 SCHEMA = "ehmo bond report 1"
 """Name and version of the document; the version rises when a field changes its meaning."""
@@ -36,10 +38,15 @@ def bond_document(report: BondReport) -> dict[str, Any]:
             "program_version": __version__,
             "fragment": _fragment(report),
             "method": _method(report),
+            "symmetry": symmetry_part(report),
+            "oxidation_state": report.electrons.metal_oxidation_total if len(report.sites) == 1 else None,
+            "d_count": report.electrons.d_electrons,
             "orbitals": _orbitals(report),
             "atoms": _atoms(report),
             "ligands": _ligands(report),
-            "bonds": [_bond(report, bond, orders) for bond, orders in report.bonds()],
+            "bonds": [_bond(report, place, bond, orders) for place, (bond, orders) in enumerate(report.bonds())],
+            "ladder": [ladder_part(report, site) for site in report.sites],
+            **spectroscopy_part(report.spectroscopy),
             "local_frames": [
                 {
                     "metal": frame.metal,
@@ -110,10 +117,12 @@ def _method(report: BondReport) -> dict[str, Any]:
 def _orbitals(report: BondReport) -> list[dict[str, Any]]:
     composition = report.populations.orbital_shares
     overlap = report.orbital_overlap()
-    occupations = report.state.occupations
+    occupations, irreps = report.state.occupations, report.irreps
     return [
         {
             "energy_eV": report.state.energies_eV[k],
+            "irrep": None if irreps is None else irreps.labels[k] or None,
+            "irrep_share": None if irreps is None else irreps.label_shares[k],
             "occupation": occupations[0, k] + occupations[1, k],
             "metal_share": composition[k, 0],
             "donor_share": composition[k, 1],
@@ -153,7 +162,8 @@ def _ligands(report: BondReport) -> list[dict[str, Any]]:
     ]
 
 
-def _bond(report: BondReport, bond: MetalDonorBond, orders: BondOrders) -> dict[str, Any]:
+def _bond(report: BondReport, place: int, bond: MetalDonorBond, orders: BondOrders) -> dict[str, Any]:
+    formal = report.formal_orders[place]
     return {
         "metal": bond.metal,
         "donor": bond.donor,
@@ -164,6 +174,11 @@ def _bond(report: BondReport, bond: MetalDonorBond, orders: BondOrders) -> dict[
         "overlap_population": orders.overlap_population,
         "mayer": orders.mayer,
         "wiberg": orders.wiberg,
+        "formal_order": None if formal is None else float(formal.order),
+        "formal_order_fraction": None if formal is None else str(formal.order),
+        "formal_order_words": None if formal is None else formal.words,
+        "formal_order_rule": (formal.rule or None) if formal is not None else None,
+        "reactivity": next((_reactivity(reading) for reading in report.reactivity if reading.bond == place), None),
         "channels": [
             {
                 "type": channel.type,
@@ -174,6 +189,16 @@ def _bond(report: BondReport, bond: MetalDonorBond, orders: BondOrders) -> dict[
             }
             for channel in orders.channels
         ],
+    }
+
+
+def _reactivity(reading: DonorReactivity) -> dict[str, Any]:
+    return {
+        "leaning": reading.leaning,
+        "homo_share": reading.homo_share,
+        "lumo_share": reading.lumo_share,
+        "pi_star_eV": reading.pi_star_eV,
+        "pi_star_gap_eV": reading.pi_star_gap_eV,
     }
 
 

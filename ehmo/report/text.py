@@ -12,10 +12,13 @@ from ehmo.errors import visible
 from ehmo.records.arrays import FloatArray
 from ehmo.records.bonding import BondChannel
 from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.reactivity import REACTIVITY_LIMITS, DonorReactivity
 from ehmo.records.report import BondReport
+from ehmo.records.site import MetalSite
 from ehmo.records.table import aligned
-from ehmo.records.wording import BOND_NUMBERS, PARTIAL_CHANNEL, bond_rows, electrons_in_words
+from ehmo.records.wording import BOND_NUMBERS, PARTIAL_CHANNEL, bond_rows, channels_in_words, electrons_in_words
 from ehmo.report.cautions import CAUTIONS
+from ehmo.report.ladder_text import ladder_lines, orbital_irrep, short_spectrum_lines
 from ehmo.structure.elements import F_BLOCK, with_state
 
 WIDTH = 100
@@ -36,38 +39,23 @@ def bond_text(report: BondReport) -> str:
         Lines of at most about 100 characters, control characters of the source shown.
     """
     sections = [
-        _heading(report),
+        heading_lines(report),
         *(_bonds_of(report, metal) for metal in report.coordination.metals),
+        _words(report),
         _hybrids(report),
         _charges(report),
         _frontier(report),
-        _sentences("Assumed", report.assumptions),
-        _sentences("To doubt", report.warnings or ("nothing in particular, beyond the cautions below",)),
-        _sentences("Cautions", CAUTIONS),
+        *(ladder_lines(report, site) for site in report.sites),
+        short_spectrum_lines(report),
+        sentence_lines("Assumed", report.assumptions),
+        sentence_lines("To doubt", report.warnings or ("nothing in particular, beyond the cautions below",)),
+        sentence_lines("Cautions", CAUTIONS),
     ]
     return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
 
 
-def _count_in_words(report: BondReport) -> str:
-    """Oxidation state and d count by textbook counting, where they can be told."""
-    total, metals = report.electrons.metal_oxidation_total, report.coordination.metals
-    if total is None:
-        return ""
-    if len(metals) > 1:
-        return f"; metals {total:+d} in all by counting"
-    symbol = report.fragment.symbols[metals[0]]
-    count = report.electrons.d_electrons
-    configuration = "" if count is None else f" {'f' if symbol in F_BLOCK else 'd'}{count}"
-    return f"; {with_state(symbol, total)}{configuration} by counting"
-
-
-def _axes(report: BondReport) -> list[str]:
-    """Local axes of each metal, in words."""
-    labels = report.fragment.labels
-    return [f"Axes of {labels[f.metal]}: z {f.z_reason}, x {f.x_reason}" for f in report.coordination.frames]
-
-
-def _heading(report: BondReport) -> list[str]:
+def heading_lines(report: BondReport) -> list[str]:
+    """Source, electrons, method, and each metal with its sphere."""
     fragment, method = report.fragment, report.method
     charges = (
         "fixed charges"
@@ -77,14 +65,98 @@ def _heading(report: BondReport) -> list[str]:
     return [
         visible(fragment.source) or "fragment",
         *textwrap.wrap(f"Title: {visible(fragment.title)}" if fragment.title else "", WIDTH, subsequent_indent="  "),
-        f"{fragment.formula}, {electrons_in_words(fragment)}{_count_in_words(report)}",
+        f"{fragment.formula}, {electrons_in_words(fragment)}{_metals_in_all(report)}",
         f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
+        *_molecule_lines(report),
+        *(line for site in report.sites for line in _site_lines(report, site)),
     ]
 
 
+def _molecule_lines(report: BondReport) -> list[str]:
+    whole = report.molecule_symmetry
+    return [] if whole is None else [f"Whole molecule {whole.group.name} within {whole.rms_A:.2f} Å"]
+
+
+def _metals_in_all(report: BondReport) -> str:
+    total, metals = report.electrons.metal_oxidation_total, report.coordination.metals
+    if total is None or len(metals) == 1:
+        return ""
+    return f"; metals {total:+d} in all by counting, {total / len(metals):+.2f} each on the average"
+
+
+def _site_lines(report: BondReport, site: MetalSite) -> list[str]:
+    """Oxidation state, bond valences, group and shape of one metal."""
+    symbol, said = report.fragment.symbols[site.metal], []
+    if site.oxidation_state is not None:
+        configuration = "" if site.d_count is None else f" {'f' if symbol in F_BLOCK else 'd'}{site.d_count}"
+        said.append(f"{with_state(symbol, site.oxidation_state)}{configuration} by counting")
+    if site.bond_valence_sum is not None:
+        said.append(f"bond-valence sum {site.bond_valence_sum:.2f}")
+    symmetry = site.symmetry
+    said.append(
+        f"sphere {symmetry.group.name} within {symmetry.rms_A:.2f} Å (symmetry measure "
+        f"{symmetry.continuous_measure:.2f})"
+    )
+    if site.shapes:
+        said.append(f"nearest shape {site.shapes[0].shape} ({site.shapes[0].measure:.1f})")
+    line = f"{report.fragment.labels[site.metal]}: {'; '.join(said)}"
+    return textwrap.wrap(line, WIDTH, subsequent_indent="  ")
+
+
+def _axes(report: BondReport) -> list[str]:
+    """Local axes of each metal, in words."""
+    labels = report.fragment.labels
+    return [f"Axes of {labels[f.metal]}: z {f.z_reason}, x {f.x_reason}" for f in report.coordination.frames]
+
+
 def _bonds_of(report: BondReport, metal: int) -> list[str]:
-    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), report.fragment.labels)
-    return [f"Bonds of {report.fragment.labels[metal]}", *aligned(rows, numeric=BOND_NUMBERS, indent="  ")]
+    labels = report.fragment.labels
+    formal = [
+        order
+        for bond, order in zip(report.coordination.bonds, report.formal_orders, strict=True)
+        if bond.metal == metal
+    ]
+    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), formal, labels)
+    return [f"Bonds of {labels[metal]}", *aligned(rows, numeric=BOND_NUMBERS, indent="  ")]
+
+
+def _words(report: BondReport) -> list[str]:
+    """Multiple bonds in words: by counting, by calculation, and how the donor leans."""
+    readings = {reading.bond: reading for reading in report.reactivity}
+    lines, rules = [], []
+    for place, (bond, orders) in enumerate(report.bonds()):
+        formal = report.formal_orders[place]
+        if not bond.may_be_multiple and (formal is None or formal.order == 1):
+            continue
+        counted = "no order by counting without a ladder" if formal is None else f"{formal.words} by counting"
+        said = f"{report.bond_label(bond)}: {counted}; {channels_in_words(orders.channels)} by calculation"
+        if place in readings:
+            said += f"; {_leaning(readings[place])}"
+        lines += textwrap.wrap(said, WIDTH, initial_indent="  ", subsequent_indent="    ")
+        if formal is not None and formal.rule:
+            rules.append(formal.rule)
+    if not lines:
+        return []
+    notes = [f"Counting: {rule}." for rule in dict.fromkeys(rules)]
+    if readings:
+        notes.append(REACTIVITY_LIMITS)
+    wrapped = [
+        line for note in notes for line in textwrap.wrap(note, WIDTH, initial_indent="  ", subsequent_indent="  ")
+    ]
+    return ["Multiple bonds in words", *lines, *wrapped]
+
+
+def _leaning(reading: DonorReactivity) -> str:
+    gap = (
+        ""
+        if reading.pi_star_gap_eV is None
+        else f", pi* {reading.pi_star_gap_eV:.1f} eV above its highest filled level"
+    )
+    leaning = "between nucleophilic and electrophilic" if reading.leaning == "between" else reading.leaning
+    return (
+        f"donor {leaning} (charge {reading.charge:+.2f}, p share of HOMO {100 * reading.homo_share:.0f} %, "
+        f"of LUMO {100 * reading.lumo_share:.0f} %{gap})"
+    )
 
 
 def _hybrids(report: BondReport) -> list[str]:
@@ -137,6 +209,7 @@ def _frontier(report: BondReport) -> list[str]:
     rows = [
         [
             "orbital",
+            "irrep",
             "energy/eV",
             "electrons",
             "metal/%",
@@ -149,6 +222,7 @@ def _frontier(report: BondReport) -> list[str]:
     rows += [
         [
             str(k + 1),
+            orbital_irrep(report, k),
             f"{state.energies_eV[k]:.2f}",
             f"{filling[k]:g}" if filling[k] in (0, 1, 2) else f"{filling[k]:.2f}",
             *(f"{share:z.0f}" for share in composition[k]),
@@ -157,8 +231,10 @@ def _frontier(report: BondReport) -> list[str]:
         ]
         for place, k in enumerate(shown)
     ]
-    heading = "Frontier orbitals (overlap population for two electrons, positive = bonding)"
-    return [heading, *_axes(report), *aligned(rows, numeric=range(7), indent="  ")]
+    heading = (
+        "Frontier orbitals (overlap population for two electrons, positive = bonding; irreps of the idealised sphere)"
+    )
+    return [heading, *_axes(report), *aligned(rows, numeric=(0, 2, 3, 4, 5, 6, 7), indent="  ")]
 
 
 def _leading_part(report: BondReport, gross: FloatArray) -> str:
@@ -168,7 +244,8 @@ def _leading_part(report: BondReport, gross: FloatArray) -> str:
     return ", ".join(f"{100 * gross[i]:.0f} % {labels[basis.atom_of[i]]} {basis.function_label(i)}" for i in leading)
 
 
-def _sentences(heading: str, sentences: Sequence[str]) -> list[str]:
+def sentence_lines(heading: str, sentences: Sequence[str]) -> list[str]:
+    """Heading and one dashed, wrapped entry for each sentence."""
     lines = [heading]
     for sentence in sentences:
         lines += textwrap.wrap(visible(sentence), WIDTH, initial_indent="  - ", subsequent_indent="    ")

@@ -42,8 +42,8 @@ def assign_electrons(
     """Charge and unpaired electrons of a fragment.
 
     What is given here wins over what the file states; what neither gives is guessed, with the reasoning in
-    words, or refused with the candidates named. Where counting leaves several spin states of a d shell open, the lowest is
-    taken for the time being and all are listed for the ladder to decide.
+    words, or refused with the candidates named. Where counting leaves several spin states of a d shell open, the
+    lowest is taken for the time being and all are listed for the ladder to decide.
 
     Parameters
     ----------

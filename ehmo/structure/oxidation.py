@@ -162,13 +162,16 @@ def bond_valence_sum(fragment: Fragment, coordination: Coordination, metal: int,
     Returns
     -------
     total : float or None
-        None where a pair of elements has no parameters [valence units].
+        None where a pair of elements has no parameters, and for carbon donors, whose bonds do not follow
+        valences [valence units].
 
     References
     ----------
     brown-1985
     """
     bonds = coordination.bonds_of(metal)
+    if not bonds or any(fragment.symbols[bond.donor] == "C" for bond in bonds):
+        return None
     try:
         rows = [bond_valence_R0(fragment.symbols[b.metal], fragment.symbols[b.donor], state) for b in bonds]
     except KeyError:

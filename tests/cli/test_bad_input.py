@@ -298,14 +298,18 @@ def test_hostile_element_label_and_set_name(refused, put):
     refused("params", "show", "standard", ESCAPE)
 
 
-def test_ambiguous_spin_is_refused_with_the_candidates(refused, put):
-    # A d6 hexaaqua ion without a spin in the file: high and low spin are both real.
-    put(xyz_of("[Fe(OH2)6]2+", "charge=2"))
+def test_spin_of_several_open_metals_is_refused(refused, put):
+    # Two vanadium(IV) far apart: nothing tells how their electrons are coupled.
+    species = SPECIES["[VOCl4]2-"]
+    rows = [f"{s} {x:.4f} {y:.4f} {z:.4f}" for s, (x, y, z) in zip(species.symbols, species.positions_A, strict=True)]
+    rows += [
+        f"{s} {x + 20:.4f} {y:.4f} {z:.4f}" for s, (x, y, z) in zip(species.symbols, species.positions_A, strict=True)
+    ]
+    put("\n".join((str(len(rows)), "charge=-4", *rows)) + "\n")
     line = refused("bond", "a.xyz")
     assert "a.xyz" in line
-    assert "--unpaired" in line or "unpaired" in line
-    assert "0" in line
-    assert "4" in line
+    assert "unpaired" in line
+    assert "0, 2, 4" in line
 
 
 def test_doubtful_terminal_oxygen_asks_for_the_charge(refused, ehmo, put):

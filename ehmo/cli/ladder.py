@@ -1,0 +1,67 @@
+"""``ehmo ladder``: d-orbital ladder, terms, bands and magnetism of a structure file."""
+
+from __future__ import annotations
+
+import argparse
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any
+
+from ehmo.cli import bond
+from ehmo.errors import InputError
+
+if TYPE_CHECKING:
+    from ehmo.records.report import BondReport
+
+
+def add_command(commands: Any) -> None:
+    """Add the command to the program's parser."""
+    parser = commands.add_parser(
+        "ladder",
+        help="d-orbital ladder, terms, bands and g values of a structure file",
+        description="Ladder, ligand-field parameters, terms, bands and magnetism of each structure in a file.",
+    )
+    parser.add_argument("file", metavar="FILE", help="XYZ, extended XYZ or CIF file")
+    bond.add_calculation_options(parser)
+    spectrum = parser.add_argument_group("spectrum")
+    spectrum.add_argument(
+        "--bands",
+        metavar="LIST",
+        help="observed bands within the shell, assigned and fitted [cm-1]: 13000,16000",
+    )
+    spectrum.add_argument("--racah-b", type=float, metavar="B", help="Racah B in cm-1 (default: free ion, reduced)")
+    parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
+    parser.set_defaults(handler=run)
+
+
+def run(chosen: argparse.Namespace) -> str:
+    """Ladder text of each structure in the file; the JSON is that of the whole report."""
+    from ehmo.structure import read_frames
+
+    options = replace(
+        bond.calculation_options(chosen),
+        observed_bands_per_cm=_bands(chosen.bands),
+        racah_B_per_cm=chosen.racah_b,
+    )
+    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
+    return bond.report_on(fragments, chosen, options, _text)
+
+
+def _text(report: BondReport) -> str:
+    from ehmo.report.ladder_text import ladder_text
+    from ehmo.report.text import heading_lines, sentence_lines
+
+    parts = ["\n".join(heading_lines(report)), ladder_text(report).rstrip()]
+    if report.warnings:
+        parts.append("\n".join(sentence_lines("To doubt", report.warnings)))
+    return "\n\n".join(parts) + "\n"
+
+
+def _bands(words: str | None) -> tuple[float, ...]:
+    if words is None:
+        return ()
+    try:
+        return tuple(float(word) for word in words.replace(";", ",").split(",") if word.strip())
+    except ValueError:
+        raise InputError(
+            f"--bands {words!r} are no numbers", mend="give wavenumbers in cm-1, such as 13000,16000"
+        ) from None

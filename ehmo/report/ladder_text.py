@@ -1,0 +1,283 @@
+"""Ladder, terms, bands and magnetism as text for a terminal."""
+
+from __future__ import annotations
+
+import textwrap
+from collections.abc import Sequence
+
+import numpy as np
+
+from ehmo.records.bands import Band, BandFit
+from ehmo.records.ligand_field import LadderLevel, LigandFieldParameters
+from ehmo.records.multiplets import Magnetism
+from ehmo.records.report import BondReport
+from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
+from ehmo.records.table import aligned
+from ehmo.units import PER_CM_PER_EV
+
+WIDTH = 100
+PURE = 0.995
+"""Share of an irrep from which it goes without saying."""
+
+_LISTED_BANDS = 24
+_SHORT_BANDS = 4
+_SPECTRUM_PER_CM = 60_000.0
+
+
+def orbital_irrep(report: BondReport, orbital: int) -> str:
+    """Irrep of an orbital, with its share where the structure is distorted."""
+    if report.irreps is None or not report.irreps.labels[orbital]:
+        return "-"
+    share = float(report.irreps.label_shares[orbital])
+    return report.irreps.labels[orbital] + ("" if share >= PURE else f" {100 * share:.0f} %")
+
+
+def ladder_lines(report: BondReport, site: MetalSite) -> list[str]:
+    """Levels of one metal, and the ligand-field parameters that they give."""
+    ladder = site.ladder
+    if ladder is None:
+        return []
+    rows = [
+        ["level", "mostly", "energy/eV", "above lowest/cm-1", "electrons", "metal/%", "donors/%", "overlap pop.", ""]
+    ]
+    lowest = ladder.levels[0].energy_eV
+    for level in reversed(ladder.levels):
+        label = "-" if level.orbital is None else orbital_irrep(report, level.orbital)
+        rows.append(
+            [
+                label,
+                f"{level.function} {100 * level.function_share:.0f} %",
+                f"{level.energy_eV:.2f}",
+                f"{(level.energy_eV - lowest) * PER_CM_PER_EV:.0f}",
+                f"{round(level.electrons, 2):g}",
+                f"{100 * level.metal_share:.0f}",
+                f"{100 * level.donor_share:.0f}",
+                f"{level.overlap_population:+z.2f}",
+                _inversion(level),
+            ]
+        )
+    name = report.fragment.labels[site.metal]
+    heading = f"Ladder of {name} ({ladder.shell}, group {site.symmetry.group.name}; {ladder.selection})"
+    lines = [*textwrap.wrap(heading, WIDTH, subsequent_indent="  "), *aligned(rows, numeric=range(2, 8), indent="  ")]
+    if site.parameters is not None:
+        lines += _parameter_lines(site.parameters)
+    return lines
+
+
+def _inversion(level: LadderLevel) -> str:
+    return f"inverted: its bonding partner has {100 * level.partner_share:.0f} %" if level.inverted else ""
+
+
+def _parameter_lines(parameters: LigandFieldParameters) -> list[str]:
+    lines = []
+    if parameters.crystal_field_per_cm:
+        said = ", ".join(f"{name} {value:.0f}" for name, value in parameters.crystal_field_per_cm.items())
+        lines.append(f"  Crystal field/cm-1: {said}")
+    by_kind: dict[str, list[str]] = {}
+    for item in parameters.angular_overlap:
+        value = "undetermined" if item.value_eV is None else f"{item.value_eV * PER_CM_PER_EV:.0f}"
+        by_kind.setdefault(item.kind, []).append(f"e_{item.symmetry} {value}")
+    said = "; ".join(f"{kind} {', '.join(values)}" for kind, values in by_kind.items())
+    text = f"Angular overlap/cm-1: {said}; misfit {parameters.rms_per_cm:.0f}"
+    lines += textwrap.wrap(text, WIDTH, initial_indent="  ", subsequent_indent="    ")
+    lines += [f"  Not determined by this geometry: {combination}" for combination in parameters.undetermined]
+    return lines
+
+
+def short_spectrum_lines(report: BondReport) -> list[str]:
+    """Ground term and the first bands in a few lines."""
+    spectrum = report.spectroscopy
+    if not spectrum.ground_term and not spectrum.bands:
+        return []
+    said = f"Ground term {spectrum.ground_term}" if spectrum.ground_term else "Bands"
+    within = [band for band in spectrum.bands if band.kind != "charge transfer" and band.spin_allowed][:_SHORT_BANDS]
+    transfer = [band for band in spectrum.bands if band.kind == "charge transfer" and band.dipole_allowed][:2]
+    parts = [f"{band.upper_term} {band.wavenumber_per_cm:.0f}{_allowed(band)}" for band in within]
+    parts += [f"charge transfer {band.wavenumber_per_cm:.0f} ({band.transition})" for band in transfer]
+    text = said + (f"; bands/cm-1: {', '.join(parts)}" if parts else "")
+    if spectrum.magnetism is not None:
+        text += f"; moment {spectrum.magnetism.effective_moment:.2f} at {spectrum.magnetism.temperature_K:.0f} K"
+        if spectrum.magnetism.g_tensor is not None:
+            text += f"; g {_numbers(spectrum.magnetism.g_tensor.values, 3)}"
+    return [*textwrap.wrap(text, WIDTH, subsequent_indent="  "), "  (in full: ehmo ladder FILE)"]
+
+
+def _allowed(band: Band) -> str:
+    return f" ({band.polarisation})" if band.dipole_allowed else " (forbidden)"
+
+
+def ladder_text(report: BondReport) -> str:
+    """Ladder, terms, bands and magnetism in full.
+
+    Parameters
+    ----------
+    report : BondReport
+        Result of a calculation.
+
+    Returns
+    -------
+    text : str
+        Sections from the ladder on; the heading of the report is left to the caller.
+    """
+    spectrum = report.spectroscopy
+    sections = [
+        *(ladder_lines(report, site) for site in report.sites),
+        _constants_lines(spectrum.constants),
+        _terms_lines(spectrum),
+        _band_lines(spectrum.bands),
+        _magnetism_lines(spectrum),
+        _fit_lines(spectrum.fit),
+        _withheld_lines(report),
+    ]
+    return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
+
+
+def _constants_lines(constants: ShellConstants | None) -> list[str]:
+    if constants is None:
+        return []
+    values = [
+        f"{name} {value:.0f}"
+        for name, value in (
+            ("B", constants.racah_B_per_cm),
+            ("C", constants.racah_C_per_cm),
+            ("F2", constants.F2_per_cm),
+            ("F4", constants.F4_per_cm),
+            ("F6", constants.F6_per_cm),
+            ("zeta", constants.zeta_per_cm),
+        )
+        if value is not None
+    ]
+    text = (
+        f"Constants of {constants.ion}/cm-1: {', '.join(values) or 'none tabulated'}; repulsion reduced by "
+        f"{constants.repulsion_factor:.2f}, orbital momentum by {constants.momentum_factor:.2f} on the average "
+        f"(metal shares); sources {', '.join(constants.sources) or 'none'}"
+    )
+    return textwrap.wrap(text, WIDTH, subsequent_indent="  ")
+
+
+def _terms_lines(spectrum: Spectroscopy) -> list[str]:
+    if spectrum.terms is None:
+        return [f"Ground term {spectrum.ground_term}"] if spectrum.ground_term else []
+    terms = spectrum.terms
+    allowed = " or ".join(terms.by_symmetry)
+    lines = [f"Ground term {spectrum.ground_term} in {terms.group}; the configuration alone allows {allowed}"]
+    rows = [["term", "energy/cm-1", "parent", "configuration", "weight/%", ""]]
+    shown = [term for term in terms.terms if term.energy_per_cm < _SPECTRUM_PER_CM][:_LISTED_BANDS]
+    rows += [
+        [
+            term.label,
+            f"{term.energy_per_cm:.0f}",
+            f"{term.parent} {100 * term.parent_share:.0f} %",
+            term.configuration_text,
+            f"{100 * term.configuration_share:.0f}",
+            "" if term.share >= PURE else f"irrep {100 * term.share:.0f} %",
+        ]
+        for term in shown
+    ]
+    rest = len(terms.terms) - len(shown)
+    more = [f"  and {rest} higher terms"] if rest else []
+    return [*lines, *aligned(rows, numeric=(1, 4), indent="  "), *more]
+
+
+def _band_lines(bands: Sequence[Band]) -> list[str]:
+    if not bands:
+        return []
+    rows = [["band/cm-1", "kind", "upper term", "transition", "factor", "spin", "dipole", "strength"]]
+    shown = [band for band in bands if band.wavenumber_per_cm < _SPECTRUM_PER_CM]
+    # Spin-allowed bands first in line when there is no room for all.
+    within = [band for band in shown if band.kind != "charge transfer"]
+    kept = sorted(within, key=lambda band: (not band.spin_allowed, band.wavenumber_per_cm))[:_LISTED_BANDS]
+    kept.sort(key=lambda band: band.wavenumber_per_cm)
+    kept += [band for band in shown if band.kind == "charge transfer"][: _LISTED_BANDS // 2]
+    rows += [
+        [
+            f"{band.wavenumber_per_cm:.0f}",
+            band.kind,
+            band.upper_term or "-",
+            band.transition,
+            str(band.degeneracy),
+            "allowed" if band.spin_allowed else "forbidden",
+            band.polarisation or ("allowed" if band.dipole_allowed else "forbidden"),
+            "-" if band.oscillator_strength is None else f"{band.oscillator_strength:.1e}",
+        ]
+        for band in kept
+    ]
+    rest = len(bands) - len(kept)
+    more = [f"  and {rest} more, in the JSON"] if rest else []
+    return ["Bands", *aligned(rows, numeric=(0, 4, 7), indent="  "), *more]
+
+
+def _magnetism_lines(spectrum: Spectroscopy) -> list[str]:
+    magnetism = spectrum.magnetism
+    if magnetism is None:
+        return []
+    lines = [
+        "Magnetism",
+        f"  moment {magnetism.effective_moment:.2f} Bohr magnetons at {magnetism.temperature_K:.0f} K "
+        f"(spin only {magnetism.spin_only_moment:.2f})",
+        *_splitting_lines(magnetism),
+    ]
+    for name, tensor in (("g", magnetism.g_tensor), ("g of the lowest doublet", magnetism.doublet_g_tensor)):
+        if tensor is not None and (name == "g" or tensor is not magnetism.g_tensor):
+            axes = "; ".join(_numbers(axis, 2) for axis in tensor.axes)
+            lines.append(f"  {name} {_numbers(tensor.values, 3)} (spin {tensor.effective_spin:g}; axes {axes})")
+    if spectrum.first_order_g is not None:
+        parallel, perpendicular = spectrum.first_order_g
+        lines.append(f"  g by first-order formulas: parallel {parallel:.3f}, perpendicular {perpendicular:.3f}")
+    lines.append("  Ligand spin-orbit coupling and charge-transfer states are left out of g and D.")
+    return lines
+
+
+def _splitting_lines(magnetism: Magnetism) -> list[str]:
+    splitting = magnetism.zero_field_splitting
+    if splitting is None:
+        return []
+    return [
+        f"  zero-field splitting D {splitting.D_per_cm:.2f}, E {splitting.E_per_cm:.2f} cm-1 (spin {splitting.spin:g})"
+    ]
+
+
+def _fit_lines(fit: BandFit | None) -> list[str]:
+    if fit is None:
+        return []
+    assigned = [["observed/cm-1", "upper term", "computed/cm-1", "fitted/cm-1"]]
+    assigned += [
+        [f"{a.observed_per_cm:.0f}", a.upper_term, f"{a.computed_per_cm:.0f}", f"{a.fitted_per_cm:.0f}"]
+        for a in fit.assignments
+    ]
+    moved = [["parameter", "computed/cm-1", "fitted/cm-1", "width/cm-1", ""]]
+    moved += [
+        [
+            p.name,
+            f"{p.computed_per_cm:.0f}",
+            f"{p.fitted_per_cm:.0f}",
+            f"{p.width_per_cm:.0f}",
+            "" if p.determined else "not determined by these bands",
+        ]
+        for p in fit.parameters
+    ]
+    return [
+        "Observed bands, assigned in the order of energy to the spin-allowed terms",
+        *aligned(assigned, numeric=(0, 2, 3), indent="  "),
+        "Ligand field fitted to them, damped towards the computed one (levels above the lowest)",
+        *aligned(moved, numeric=(1, 2, 3), indent="  "),
+        *(f"  left open: {combination}" for combination in fit.undetermined),
+    ]
+
+
+def _withheld_lines(report: BondReport) -> list[str]:
+    spectrum = report.spectroscopy
+    reasons = [*spectrum.withheld]
+    reasons += [f"ladder: {site.ladder_withheld}" for site in report.sites if site.ladder_withheld]
+    if spectrum.magnetism is not None:
+        reasons += spectrum.magnetism.withheld
+    if not reasons:
+        return []
+    lines = ["Withheld"]
+    for reason in dict.fromkeys(reasons):
+        lines += textwrap.wrap(reason, WIDTH, initial_indent="  - ", subsequent_indent="    ")
+    return lines
+
+
+def _numbers(values: np.ndarray, digits: int) -> str:
+    return " ".join(f"{value:z.{digits}f}" for value in values)
