@@ -7,7 +7,7 @@ the closed A_n, B_n formulas nothing cancels when exponents are close or distanc
 
 from __future__ import annotations
 
-from functools import cache
+from functools import cache, lru_cache
 from math import factorial, sqrt
 
 import numpy as np
@@ -42,16 +42,23 @@ def channel_overlaps(first: RadialFunction, second: RadialFunction, distances_bo
        coordinates and closed formulas (from memory).
     """
     distances = np.asarray(distances_bohr, dtype=np.float64)
+    key = distances.tobytes()
     overlaps = np.zeros((len(distances), min(first.l, second.l) + 1))
     for n_a, zeta_a, weight_a in first.primitives:
         for n_b, zeta_b, weight_b in second.primitives:
             # Rounding in n_a + n_b counts the nodes: degree n_a + n_b needs (n_a + n_b)/2 + 1/2 of them.
-            grid = _SpheroidalGrid(distances, zeta_a, zeta_b, (n_a + n_b) // 2 + 1)
+            grid = _grid(key, zeta_a, zeta_b, (n_a + n_b) // 2 + 1)
             radial = weight_a * weight_b * grid.weights * grid.r_a ** (n_a - 1) * grid.r_b ** (n_b - 1)
             for m in range(overlaps.shape[1]):
                 angular = _polar(first.l, m, grid.cos_a) * _polar(second.l, m, grid.cos_b) * grid.sines**m
                 overlaps[:, m] += np.einsum("rij,rij->r", radial, angular)
     return overlaps
+
+
+@lru_cache(maxsize=32)
+def _grid(distances: bytes, zeta_a: float, zeta_b: float, n_mu: int) -> _SpheroidalGrid:
+    """Grid shared by the shells of two elements that have the same exponents, such as 2s and 2p."""
+    return _SpheroidalGrid(np.frombuffer(distances), zeta_a, zeta_b, n_mu)
 
 
 class _SpheroidalGrid:
