@@ -43,6 +43,8 @@ def spectroscopy(
     bonding: Bonding,
     table: ParameterTable,
     options: Options,
+    *,
+    magnetism: bool = True,
 ) -> Spectroscopy:
     """Terms, bands and magnetism; what cannot be had is withheld with the reason.
 
@@ -58,6 +60,8 @@ def spectroscopy(
         Set that the calculation was made with.
     options : Options
         Racah B, oxidation state and observed bands, if given.
+    magnetism : bool
+        Whether spin-orbit levels, moment, D, E and g are wanted.
 
     Returns
     -------
@@ -70,14 +74,18 @@ def spectroscopy(
         return _nothing(f"terms, bands and magnetism: {site.ladder_withheld}")
     shell = _Shell(site, site.ladder, group_axes_in_frame(site.symmetry, frame), fragment.unpaired_electrons or 0)
     dipoles = dipole_integrals(bonding.plan, table, fragment.positions_A, bonding.overlap.matrix)
-    found = _shell_results(fragment, shell, _ladder_dipoles(site.ladder, bonding, dipoles), options)
+    found = _shell_results(
+        fragment, shell, _ladder_dipoles(site.ladder, bonding, dipoles), options, with_magnetism=magnetism
+    )
     labels = OrbitalLabels(site.symmetry.group, irreps.labels if irreps else ("",) * len(bonding.state.energies_eV))
     orbitals = [level.orbital for level in site.ladder.levels if level.orbital is not None]
     transfer = charge_transfer_bands(bonding.state, labels, orbitals, dipoles, site.symmetry.axes)
     return replace(found, bands=found.bands + transfer)
 
 
-def _shell_results(fragment: Fragment, shell: _Shell, dipoles_A: FloatArray, options: Options) -> Spectroscopy:
+def _shell_results(
+    fragment: Fragment, shell: _Shell, dipoles_A: FloatArray, options: Options, *, with_magnetism: bool
+) -> Spectroscopy:
     """Terms of the open shell and what follows from them, each part as far as it can be had."""
     group, closed = shell.site.symmetry.group, 2 * len(shell.ladder.levels)
     if shell.n_electrons in (0, closed):
@@ -99,7 +107,9 @@ def _shell_results(fragment: Fragment, shell: _Shell, dipoles_A: FloatArray, opt
         )
     withheld: list[str] = []
     magnetism, fit = None, None
-    if ground is terms.ground:
+    if not with_magnetism:
+        pass
+    elif ground is terms.ground:
         magnetism, missing = _magnetism(shell, constants, repulsion)
         withheld += missing
     else:

@@ -34,7 +34,7 @@ class DipolePlan:
     ----------
     groups : tuple of PairGroup
         As in the orbital plan, with the moments of the second atom in place of its functions.
-    moments : tuple of (3, n_moments, n_second) ndarray
+    moments : tuple of (n_moments, n_second * 3) ndarray
         Per group: how x, y, z times each function of the second atom is made of its moments.
     one_centre : dict of str to (3, n, n) ndarray
         Integrals within each element, about its nucleus [bohr].
@@ -72,20 +72,19 @@ def dipole_integrals(
     vectors = (positions_A[plan.second] - positions_A[plan.first]) * (1 / BOHR_A)
     distances = np.sqrt(np.einsum("pi,pi->p", vectors, vectors))
     origins = positions_A * (1 / BOHR_A)
+    flat = dipoles.reshape(3, -1)
     for index, chunk in pair_chunks(plan):
         moved, moments = shifted.groups[index], shifted.moments[index]
         segments, powers = table_positions(distances[chunk])
         harmonics = real_harmonics(vectors[chunk] / distances[chunk, None], moved.structure.l_max)
         blocks = channel_blocks(moved, chunk, segments, powers, harmonics)
-        blocks = blocks.reshape(len(blocks), -1, moments.shape[1])
-        targets = flat_targets(plan, plan.groups[index], chunk)
-        within = overlap.reshape(-1)[targets[0]]
-        for axis in range(3):
-            about_second = (blocks @ moments[axis]).reshape(len(blocks), -1)
-            values = about_second + origins[plan.second[chunk], axis, None] * within
-            flat = dipoles[axis].reshape(-1)
-            flat[targets[0]] = values
-            flat[targets[1]] = values
+        # x, y and z times every function of the second atom at once: columns run over (function, axis).
+        about_second = blocks.reshape(-1, len(moments)) @ moments
+        targets, _ = flat_targets(plan, plan.groups[index], chunk)
+        values = about_second.reshape(*targets.shape, 3)
+        values += overlap.reshape(-1)[targets][..., None] * origins[plan.second[chunk], None]
+        flat[:, targets] = values.transpose(2, 0, 1)
+    dipoles += dipoles.transpose(0, 2, 1)
     for atom, symbol in enumerate(plan.basis.symbols):
         own = plan.basis.functions_of(atom)
         dipoles[:, own, own] = shifted.one_centre[symbol] + origins[atom, :, None, None] * overlap[own, own]
@@ -128,7 +127,7 @@ def dipole_plan(symbols: tuple[str, ...], table: ParameterTable) -> DipolePlan:
 
 @cache
 def _moment_matrices(layout: tuple[int, ...]) -> FloatArray:
-    """(3, n_moments, n) coefficients of the moments in x, y and z times each function of a layout."""
+    """(n_moments, n * 3) coefficients of the moments in x, y and z times each function of a layout."""
     columns = []
     for l in layout:
         gaunt = sqrt(4 * pi / 3) * product_integrals(1, l)
@@ -142,8 +141,9 @@ def _moment_matrices(layout: tuple[int, ...]) -> FloatArray:
         matrices[:, row : row + part.shape[1], column : column + part.shape[2]] = part
         row += part.shape[1]
         column += part.shape[2]
-    matrices.setflags(write=False)
-    return matrices
+    columns_last = np.ascontiguousarray(matrices.transpose(1, 2, 0)).reshape(matrices.shape[1], -1)
+    columns_last.setflags(write=False)
+    return columns_last
 
 
 def _one_centre(functions: tuple[RadialFunction, ...]) -> FloatArray:
