@@ -11,6 +11,7 @@ from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError
 from ehmo.orbitals.parameters import load_parameters
+from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 from ehmo.records.report import BondReport, Method
@@ -64,6 +65,46 @@ def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, 
             fragment = fragment.with_electrons(settled.charge, settled.unpaired_electrons)
             bonding = calculate_bonding(fragment, coordination, table, settings, options)
         electrons = settled
+    return known_report(fragment, coordination, electrons, table, settings, options, bonding)
+
+
+def known_report(
+    fragment: Fragment,
+    coordination: Coordination,
+    electrons: ElectronAssignment,
+    table: ParameterTable,
+    settings: ModelSettings,
+    options: Options,
+    bonding: Bonding | None = None,
+) -> BondReport:
+    """Report of a fragment whose bonds, charge and spin are known.
+
+    Parameters
+    ----------
+    fragment : Fragment
+        With charge and unpaired electrons set.
+    coordination : Coordination
+        Its bonds; a scan keeps those of its start.
+    electrons : ElectronAssignment
+        Where charge and spin come from.
+    table : ParameterTable
+    settings : ModelSettings
+        Constants of the Hamiltonian.
+    options : Options
+    bonding : Bonding, optional
+        Numeric result on the same input, if there is one already.
+
+    Returns
+    -------
+    report : BondReport
+
+    Raises
+    ------
+    EhmoError
+        See `bond_report`.
+    """
+    if bonding is None:
+        bonding = calculate_bonding(fragment, coordination, table, settings, options)
     sites = metal_sites(fragment, coordination, electrons, bonding)
     irreps = sphere_irreps(sites, bonding)
     return BondReport(

@@ -1,0 +1,1 @@
+"""Studies: many calculations on one fragment."""
