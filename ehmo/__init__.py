@@ -43,6 +43,10 @@ __all__ = [
 ]
 
 
+def __dir__() -> list[str]:
+    return sorted({*globals(), *__all__})
+
+
 def __getattr__(name: str) -> Any:
     if name in _HOMES:
         return getattr(import_module(_HOMES[name]), name)

@@ -52,7 +52,7 @@ def choose_spin(
         return SpinChoice(best, "the only number that fits", float("inf"))
     margin = energies[ordered[1]] - energies[best]
     reason = (
-        f"by the ladder against the pairing energy of {source}, {pairing_per_cm:.0f} cm-1; "
+        f"by the ladder against the pairing energy of {source}, {pairing_per_cm:.0f} cm-1: "
         f"{ordered[1]} unpaired lie {margin:.0f} cm-1 above"
     )
     return SpinChoice(best, reason, margin)

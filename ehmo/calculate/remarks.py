@@ -7,11 +7,24 @@ import numpy as np
 from basis_params import ParameterTable
 from ehmo.calculate.numbers import Bonding
 from ehmo.conventions import FRONTIER_TOLERANCE_EV, atom_label
+from ehmo.records.arrays import FloatArray
 from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.electronic import NO_ELECTRON, ElectronicState
 from ehmo.records.fragment import Fragment
-from ehmo.records.site import MetalSite
+from ehmo.records.site import MetalSite, Spectroscopy
 from ehmo.records.wording import signed
+
+GUESS_GAP_EV = 0.5
+"""A closed-shell ion whose guessed charge leaves a smaller gap is doubtful [eV]."""
+
+MOSTLY_LIGAND = 0.3
+"""Orbitals with less metal share lie on ligands."""
+
+COUNT_GAP = 0.5
+"""Electrons by which ladder and counting may differ."""
+
+STRONG_COUPLING = 0.2
+"""Ratio of the spin-orbit constant to the first excited term from which first-order g values fail."""
 
 BOND_VALENCE_GAP = 0.5
 """Bond-valence sums that differ from the oxidation state by more are reported [valence units]."""
@@ -43,12 +56,16 @@ def _ligand_charges(fragment: Fragment, coordination: Coordination) -> tuple[str
     return (f"ligand charges by counting: {', '.join(parts)}",) if parts else ()
 
 
-def electronic_warnings(fragment: Fragment, coordination: Coordination, bonding: Bonding) -> tuple[str, ...]:
+def electronic_warnings(
+    fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, bonding: Bonding
+) -> tuple[str, ...]:
     """Sentences on a frontier or a spin density that casts doubt on the numbers."""
     return tuple(
         warning
         for warning in (
-            _frontier_warning(bonding.state),
+            electrons.spin_doubt and f"the spin state may be another one: {electrons.spin_doubt}",
+            _guess_warning(electrons, bonding.state),
+            _frontier_warning(bonding.state, bonding.populations.orbital_shares[:, 0]),
             _spin_warning(fragment, coordination, bonding),
         )
         if warning
@@ -67,13 +84,44 @@ def site_warnings(fragment: Fragment, coordination: Coordination, sites: tuple[M
                     f"the bond-valence sum of {label} is {site.bond_valence_sum:.2f}, counting gives "
                     f"{site.oxidation_state}: check charge, hydrogens and the oxidation state"
                 )
+        if site.ladder is not None and site.d_count is not None and len(sites) == 1:
+            held = sum(level.electrons for level in site.ladder.levels)
+            if abs(held - site.d_count) >= COUNT_GAP:
+                said.append(
+                    f"the ladder of {label} holds {held:.1f} electrons, counting gives {site.d_count}: check the "
+                    "charge and the oxidation state"
+                )
         if site.ladder_withheld:
             said.append(f"no ladder of {label}: {site.ladder_withheld}")
-    doubtful = [ligand for ligand in coordination.ligands if ligand.charge is None and ligand.donors]
-    said += [
-        f"the charge of the ligand {ligand.formula} cannot be told ({ligand.charge_reason}): oxidation states are open"
-        for ligand in doubtful
-    ]
+    if all(site.oxidation_state is None for site in sites):
+        doubtful = [ligand for ligand in coordination.ligands if ligand.charge is None and ligand.donors]
+        said += [
+            f"the charge of the ligand {ligand.formula} cannot be told ({ligand.charge_reason}): the oxidation state "
+            "is open; give it with --oxidation-state"
+            for ligand in {ligand.formula: ligand for ligand in doubtful}.values()
+        ]
+    return tuple(said)
+
+
+def spectrum_warnings(spectrum: Spectroscopy) -> tuple[str, ...]:
+    """Sentences on a ground term or g values that the computed ladder does not bear out."""
+    said = []
+    terms = spectrum.terms
+    if terms is not None and spectrum.ground_term and terms.ground.label != spectrum.ground_term:
+        ground = next(term for term in terms.terms if term.label == spectrum.ground_term)
+        said.append(
+            f"the lowest term of the computed ladder is {terms.ground.label}, {ground.energy_per_cm:.0f} cm-1 below "
+            f"{spectrum.ground_term}, the lowest with the spin of the calculation: bands and spin rest on a ladder "
+            "that may be too wide"
+        )
+    constants = spectrum.constants
+    if spectrum.magnetism is not None and constants is not None and constants.zeta_per_cm and spectrum.bands:
+        first = min((b.wavenumber_per_cm for b in spectrum.bands if b.kind != "charge transfer"), default=0.0)
+        if 0 < first < constants.zeta_per_cm / STRONG_COUPLING:
+            said.append(
+                f"spin-orbit coupling of {constants.ion}, {constants.zeta_per_cm:.0f} cm-1, is strong against the "
+                f"first excited term at {first:.0f} cm-1: g values are rough"
+            )
     return tuple(said)
 
 
@@ -81,7 +129,17 @@ def _electrons(count: float) -> str:
     return f"{count:g} electron{'' if round(count, 6) == 1 else 's'}"
 
 
-def _frontier_warning(state: ElectronicState) -> str:
+def _guess_warning(electrons: ElectronAssignment, state: ElectronicState) -> str:
+    """A guessed charge that leaves hardly a gap is likely to be a wrong one."""
+    if not electrons.charge_reason.startswith("guessed") or state.lumo is None:
+        return ""
+    gap = float(state.energies_eV[state.lumo] - state.energies_eV[state.lumo - 1])
+    if gap >= GUESS_GAP_EV or electrons.unpaired_electrons:
+        return ""
+    return f"the guessed charge {signed(electrons.charge)} leaves a gap of only {gap:.2f} eV: give the charge"
+
+
+def _frontier_warning(state: ElectronicState, metal_share: FloatArray) -> str:
     occupations = state.occupations.sum(axis=0)
     part = (state.occupations > NO_ELECTRON) & (state.occupations < 1 - NO_ELECTRON)
     shared = np.flatnonzero(part.any(axis=0))
@@ -89,6 +147,11 @@ def _frontier_warning(state: ElectronicState) -> str:
         levels = ", ".join(str(k + 1) for k in shared)
         if state.smearing_eV:
             held = _electrons(round(float(occupations[shared].sum()), 1))
+            if metal_share[shared].min() < MOSTLY_LIGAND:
+                return (
+                    f"orbitals {levels}, of the metal and of ligands, cross as the charges settle: they share {held} "
+                    f"by a filling smeared over {state.smearing_eV:g} eV; compare with --charges fixed"
+                )
             return (
                 f"orbitals {levels} cross as the charges settle: they share {held} by a filling smeared over "
                 f"{state.smearing_eV:g} eV; the ground state is nearly degenerate and may distort"

@@ -5,7 +5,7 @@ from __future__ import annotations
 from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
-from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings
+from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings, spectrum_warnings
 from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders, sphere_irreps
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
@@ -107,6 +107,7 @@ def known_report(
         bonding = calculate_bonding(fragment, coordination, table, settings, options)
     sites = metal_sites(fragment, coordination, electrons, bonding)
     irreps = sphere_irreps(sites, bonding)
+    spectrum = spectroscopy(fragment, coordination, sites, irreps, bonding, table, options)
     return BondReport(
         fragment=fragment,
         coordination=coordination,
@@ -129,12 +130,13 @@ def known_report(
             bonding.state,
             bonding.populations,
         ),
-        spectroscopy=spectroscopy(fragment, coordination, sites, irreps, bonding, table, options),
+        spectroscopy=spectrum,
         assumptions=assumptions(fragment, coordination, table, electrons),
         warnings=(
             *coordination.warnings,
-            *electronic_warnings(fragment, coordination, bonding),
+            *electronic_warnings(fragment, coordination, electrons, bonding),
             *site_warnings(fragment, coordination, sites),
+            *spectrum_warnings(spectrum),
         ),
     )
 

@@ -9,8 +9,23 @@ from ehmo.analysis.spin_choice import choose_spin
 from ehmo.calculate.numbers import Bonding
 from ehmo.calculate.sites import site_ladders, sphere_symmetries
 from ehmo.errors import ElectronCountError
-from ehmo.records.coordination import Coordination, ElectronAssignment
+from ehmo.records.coordination import Coordination, DonorKind, ElectronAssignment
 from ehmo.records.fragment import Fragment
+
+FIRST_ROW = frozenset({"Sc", "Ti", "V", "Cr", "Mn", "Fe", "Co", "Ni", "Cu"})
+
+HEAVY_PAIRING_PER_CM = 2500.0
+"""4d and 5d complexes are low-spin but for degenerate levels (common practice) [cm^-1]."""
+
+OXO_PAIRING = 0.75
+"""Part of the pairing energy left beside a terminal oxo, nitrido or imido ligand (nephelauxetic; common practice)."""
+
+TRIPLE_KINDS = frozenset(
+    {DonorKind.OXO, DonorKind.NITRIDO, DonorKind.IMIDO_LINEAR, DonorKind.SULFIDO, DonorKind.CARBYNE}
+)
+
+CLOSE_SPINS = 0.3
+"""A spin state less than this part of the pairing energy above the chosen one is a doubt."""
 
 
 def settled_spin(
@@ -53,8 +68,18 @@ def settled_spin(
             f"unpaired electrons are not given and no pairing energy of {symbol}{state}+ is tabulated",
             mend=f"give their number: {listed}",
         )
-    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, f"{symbol}{nearest}+")
-    return replace(electrons, unpaired_electrons=choice.unpaired_electrons, unpaired_reason=choice.reason)
+    source = f"{symbol}{nearest}+"
+    if symbol not in FIRST_ROW:
+        pairing, source = min(pairing, HEAVY_PAIRING_PER_CM), "a 4d or 5d ion, which pairs all but degenerate levels"
+    elif any(bond.kind in TRIPLE_KINDS for bond in coordination.bonds):
+        pairing, source = OXO_PAIRING * pairing, f"{source} times {OXO_PAIRING:g} for its multiple bond"
+    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, source)
+    return replace(
+        electrons,
+        unpaired_electrons=choice.unpaired_electrons,
+        unpaired_reason=choice.reason,
+        spin_doubt=choice.reason if choice.margin_per_cm < CLOSE_SPINS * pairing else "",
+    )
 
 
 def _pairing(symbol: str, charge: int) -> float | None:

@@ -47,12 +47,15 @@ def run(chosen: argparse.Namespace) -> str:
 
 
 def _text(report: BondReport) -> str:
+    from ehmo.report.cautions import CAUTIONS
     from ehmo.report.ladder_text import ladder_text
     from ehmo.report.text import heading_lines, sentence_lines
 
     parts = ["\n".join(heading_lines(report)), ladder_text(report).rstrip()]
+    parts.append("\n".join(sentence_lines("Assumed", report.assumptions)))
     if report.warnings:
         parts.append("\n".join(sentence_lines("To doubt", report.warnings)))
+    parts.append("\n".join(sentence_lines("Cautions", CAUTIONS)))
     return "\n\n".join(parts) + "\n"
 
 

@@ -190,6 +190,8 @@ class ElectronAssignment:
         Valence d (or f) electrons of a single metal by counting; None where it cannot be counted.
     spin_candidates : tuple of int
         Numbers of unpaired electrons that counting leaves open, the ladder to decide; empty if it is settled.
+    spin_doubt : str
+        Why the spin may be another one; empty if it is clear.
     """
 
     charge: int
@@ -199,3 +201,4 @@ class ElectronAssignment:
     metal_oxidation_total: int | None
     d_electrons: int | None
     spin_candidates: tuple[int, ...] = ()
+    spin_doubt: str = ""

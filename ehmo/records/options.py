@@ -58,6 +58,8 @@ class Options:
             raise InputError(f"unknown charge model {self.charge_model!r}", mend=f"use {' or '.join(known)}")
         if self.unpaired_electrons is not None and self.unpaired_electrons < 0:
             raise InputError("unpaired electrons cannot be negative", mend="give 0 or more")
+        if self.racah_B_per_cm is not None and not 0 < self.racah_B_per_cm < 1e5:
+            raise InputError(f"Racah B is {self.racah_B_per_cm:g}", mend="give a positive number of cm-1, such as 700")
         for name in ("max_iterations", "max_functions"):
             if getattr(self, name) < 1:
                 raise InputError(f"{name} must be at least 1", mend="give a positive number")

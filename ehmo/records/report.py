@@ -172,11 +172,9 @@ class BondReport:
         head, *body = self._rows()
         rows = ["".join(f"<th>{escape(cell)}</th>" for cell in head)]
         rows += ["".join(f"<td>{escape(cell)}</td>" for cell in row) for row in body]
-        return (
-            f"<table><caption>{escape(self._heading())}</caption>"
-            + "".join(f"<tr>{row}</tr>" for row in rows)
-            + "</table>"
-        )
+        sentences = "".join(f"<li>{escape(sentence)}</li>" for sentence in (*self.assumptions, *self.warnings))
+        table = "".join(f"<tr>{row}</tr>" for row in rows)
+        return f"<table><caption>{escape(self._heading())}</caption>{table}</table><ul>{sentences}</ul>"
 
     def _heading(self) -> str:
         fragment, method = self.fragment, self.method

@@ -9,7 +9,7 @@ import numpy as np
 
 from ehmo.records.bands import Band, BandFit
 from ehmo.records.ligand_field import LadderLevel, LigandFieldParameters
-from ehmo.records.multiplets import Magnetism
+from ehmo.records.multiplets import GTensor, Magnetism
 from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
 from ehmo.records.table import aligned
@@ -22,6 +22,9 @@ PURE = 0.995
 _LISTED_BANDS = 24
 _SHORT_BANDS = 4
 _SPECTRUM_PER_CM = 60_000.0
+_FORBIDDEN_STRENGTH = 1e-7  # rounding of a strength that symmetry makes zero
+_VISIBLE_STRENGTH = 0.01
+_AXIAL = 0.005
 
 
 def orbital_irrep(report: BondReport, orbital: int) -> str:
@@ -91,14 +94,16 @@ def short_spectrum_lines(report: BondReport) -> list[str]:
         return []
     said = f"Ground term {spectrum.ground_term}" if spectrum.ground_term else "Bands"
     within = [band for band in spectrum.bands if band.kind != "charge transfer" and band.spin_allowed][:_SHORT_BANDS]
-    transfer = [band for band in spectrum.bands if band.kind == "charge transfer" and band.dipole_allowed][:2]
+    allowed = [band for band in spectrum.bands if band.kind == "charge transfer" and band.dipole_allowed]
+    strong = [band for band in allowed if (band.oscillator_strength or 0.0) >= _VISIBLE_STRENGTH]
+    transfer = (strong or allowed)[:2]
     parts = [f"{band.upper_term} {band.wavenumber_per_cm:.0f}{_allowed(band)}" for band in within]
     parts += [f"charge transfer {band.wavenumber_per_cm:.0f} ({band.transition})" for band in transfer]
     text = said + (f"; bands/cm-1: {', '.join(parts)}" if parts else "")
     if spectrum.magnetism is not None:
         text += f"; moment {spectrum.magnetism.effective_moment:.2f} at {spectrum.magnetism.temperature_K:.0f} K"
         if spectrum.magnetism.g_tensor is not None:
-            text += f"; g {_numbers(spectrum.magnetism.g_tensor.values, 3)}"
+            text += f"; {_g_in_words(spectrum.magnetism.g_tensor)}"
     return [*textwrap.wrap(text, WIDTH, subsequent_indent="  "), "  (in full: ehmo ladder FILE)"]
 
 
@@ -160,7 +165,10 @@ def _terms_lines(spectrum: Spectroscopy) -> list[str]:
         return [f"Ground term {spectrum.ground_term}"] if spectrum.ground_term else []
     terms = spectrum.terms
     allowed = " or ".join(terms.by_symmetry)
-    lines = [f"Ground term {spectrum.ground_term} in {terms.group}; the configuration alone allows {allowed}"]
+    lines = [
+        f"Ground term {spectrum.ground_term} in {terms.group}; the leading configuration of the lowest term, "
+        f"{terms.ground.configuration_text}, alone allows {allowed}"
+    ]
     rows = [["term", "energy/cm-1", "parent", "configuration", "weight/%", ""]]
     shown = [term for term in terms.terms if term.energy_per_cm < _SPECTRUM_PER_CM][:_LISTED_BANDS]
     rows += [
@@ -198,13 +206,18 @@ def _band_lines(bands: Sequence[Band]) -> list[str]:
             str(band.degeneracy),
             "allowed" if band.spin_allowed else "forbidden",
             band.polarisation or ("allowed" if band.dipole_allowed else "forbidden"),
-            "-" if band.oscillator_strength is None else f"{band.oscillator_strength:.1e}",
+            _strength(band),
         ]
         for band in kept
     ]
     rest = len(bands) - len(kept)
     more = [f"  and {rest} more, in the JSON"] if rest else []
     return ["Bands", *aligned(rows, numeric=(0, 4, 7), indent="  "), *more]
+
+
+def _strength(band: Band) -> str:
+    strength = band.oscillator_strength
+    return "-" if strength is None or strength < _FORBIDDEN_STRENGTH else f"{strength:.1e}"
 
 
 def _magnetism_lines(spectrum: Spectroscopy) -> list[str]:
@@ -217,15 +230,28 @@ def _magnetism_lines(spectrum: Spectroscopy) -> list[str]:
         f"(spin only {magnetism.spin_only_moment:.2f})",
         *_splitting_lines(magnetism),
     ]
+    if magnetism.g_tensor is not None:
+        lines.append(f"  {_g_in_words(magnetism.g_tensor)}")
     for name, tensor in (("g", magnetism.g_tensor), ("g of the lowest doublet", magnetism.doublet_g_tensor)):
         if tensor is not None and (name == "g" or tensor is not magnetism.g_tensor):
             axes = "; ".join(_numbers(axis, 2) for axis in tensor.axes)
-            lines.append(f"  {name} {_numbers(tensor.values, 3)} (spin {tensor.effective_spin:g}; axes {axes})")
+            lines.append(f"  {name} {_numbers(tensor.values, 3)} (spin {tensor.effective_spin:g}; local axes {axes})")
     if spectrum.first_order_g is not None:
         parallel, perpendicular = spectrum.first_order_g
         lines.append(f"  g by first-order formulas: parallel {parallel:.3f}, perpendicular {perpendicular:.3f}")
     lines.append("  Ligand spin-orbit coupling and charge-transfer states are left out of g and D.")
     return lines
+
+
+def _g_in_words(tensor: GTensor) -> str:
+    """Values along the local axes: parallel and perpendicular to z where x and y agree."""
+    x, y, z = (tensor.along(axis) for axis in np.eye(3))
+    diagonal = np.allclose(sorted((x, y, z)), tensor.values, atol=2e-3)
+    if diagonal and abs(x - y) < _AXIAL:
+        return f"g parallel to z {z:.3f}, perpendicular {(x + y) / 2:.3f}"
+    if diagonal:
+        return f"g along local x {x:.3f}, y {y:.3f}, z {z:.3f}"
+    return f"g {_numbers(tensor.values, 3)}"
 
 
 def _splitting_lines(magnetism: Magnetism) -> list[str]:

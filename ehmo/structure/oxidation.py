@@ -114,6 +114,14 @@ def _donated(coordination: Coordination, bond: MetalDonorBond) -> int:
 def _by_bond_valence(fragment: Fragment, coordination: Coordination, metal: int) -> OxidationGuess:
     symbol, label = fragment.symbols[metal], fragment.labels[metal]
     bonds = coordination.bonds_of(metal)
+    trans = [bond for bond in bonds if bond.kind is DonorKind.OXO]
+    trans_dioxo = len(trans) == 2 and _trans(fragment, trans)
+    if (
+        any(bond.kind is DonorKind.CYANIDO for bond in bonds)
+        and any(b.may_be_multiple for b in bonds)
+        and not trans_dioxo
+    ):
+        return OxidationGuess(None, f"bond valences do not tell the state of {label} beside cyanido ligands")
     sums: dict[int, float] = {}
     estimated = False
     for state in _candidates(fragment, coordination, metal):
@@ -187,7 +195,12 @@ def _candidates(fragment: Fragment, coordination: Coordination, metal: int) -> l
     beyond_group_4 = (valence_d_or_f_electrons(symbol, 4) or 0) > 0
     if len(coordination.metals) == 1 and beyond_group_4 and symbol not in LANTHANIDES | ACTINIDES:
         high = MAX_ION_CHARGE - sum(ligand.charge or 0 for ligand in coordination.ligands)
-    return [state for state in OXIDATION_STATES.get(symbol, ()) if low <= state <= high]
+    states = [state for state in OXIDATION_STATES.get(symbol, ()) if low <= state <= high]
+    oxo = [bond for bond in coordination.bonds_of(metal) if bond.kind is DonorKind.OXO]
+    if len(oxo) == 2 and len(coordination.bonds_of(metal)) > 2 and _trans(fragment, oxo):
+        # Two oxo ligands share the pi functions when cis (d0), and leave dxy filled when trans (d2; common practice).
+        states = [state for state in states if valence_d_or_f_electrons(symbol, state) == 2] or states
+    return states
 
 
 def _rows(fragment: Fragment, bonds: tuple[MetalDonorBond, ...], state: int) -> list[BondValence] | None:

@@ -58,6 +58,7 @@ OPEN_SPINS = {
     "[CrO(OH2)5]2+": (0, 2),
     "FeO4 2-": (0, 2),
     "[ReOCl4]-": (0, 2),
+    "trans-[OsO2Cl4]2-": (0, 2),
     "[FeO(OH2)5]2+": (0, 2, 4),
     "[V(OH2)6]2+": (1, 3),
     "[Mn(OH2)6]2+": (1, 3, 5),
@@ -89,7 +90,6 @@ def test_a_given_oxidation_state_overrides_counting():
 
 REFUSED = {
     "[Co(NH3)6]3+": "does not decide; give the charge: +1 for Co(I), +2 for Co(II), +3 for Co(III)",
-    "trans-[OsO2Cl4]2-": "fall short at the multiple bonds of Os1; give the charge",
     "MnO4 3-": "may lack hydrogen (hydroxo?); add the hydrogens or give the charge",
     "[TiOCl4]2-": "O2 may lack hydrogen (hydroxo?)",
 }
