@@ -15,6 +15,9 @@ from ehmo.structure.elements import ACTINIDES, LANTHANIDES, OXIDATION_STATES, va
 MAX_DEVIATION: Final = 0.75
 """A bond-valence sum farther from every usual oxidation state decides nothing [valence units]."""
 
+MAX_OPEN_DEVIATION: Final = 0.35
+"""The same for a state that keeps d electrons: bond valences of such ions scatter less [valence units]."""
+
 MIN_MARGIN: Final = 0.10
 """The best oxidation state must beat the next by this much [valence units]."""
 
@@ -145,7 +148,7 @@ def _by_bond_valence(fragment: Fragment, coordination: Coordination, metal: int)
     runner_up = abs(sums[ranked[1]] - ranked[1]) if len(ranked) > 1 else np.inf
     deviation = abs(sums[best] - best)
     if (
-        deviation > MAX_DEVIATION
+        deviation > (MAX_DEVIATION if best == empty or trans_dioxo else MAX_OPEN_DEVIATION)
         or runner_up - deviation < MIN_MARGIN
         or (estimated and best != empty and len(sums) > 1)
     ):

@@ -55,8 +55,6 @@ def test_guesses_that_come_out_right(name):
 
 
 OPEN_SPINS = {
-    "[CrO(OH2)5]2+": (0, 2),
-    "FeO4 2-": (0, 2),
     "[ReOCl4]-": (0, 2),
     "trans-[OsO2Cl4]2-": (0, 2),
     "[FeO(OH2)5]2+": (0, 2, 4),
@@ -89,6 +87,8 @@ def test_a_given_oxidation_state_overrides_counting():
 
 
 REFUSED = {
+    "[CrO(OH2)5]2+": "4.38 for Cr(IV), does not decide; give the charge",
+    "FeO4 2-": "does not decide; give the charge",
     "[Co(NH3)6]3+": "does not decide; give the charge: +1 for Co(I), +2 for Co(II), +3 for Co(III)",
     "MnO4 3-": "may lack hydrogen (hydroxo?); add the hydrogens or give the charge",
     "[TiOCl4]2-": "O2 may lack hydrogen (hydroxo?)",
