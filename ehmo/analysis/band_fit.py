@@ -1,7 +1,8 @@
 """Ligand field fitted to observed bands, damped towards the computed one.
 
 Every level of the field may move, and Racah's B with it where electrons repel; what the bands do not determine stays
-where the calculation put it. Bands are assigned in the order of energy to the spin-allowed terms.
+where the calculation put it. Bands are assigned to the terms they name, the rest in the order of energy; terms are
+followed by their labels when others cross them.
 """
 
 from __future__ import annotations
@@ -66,15 +67,11 @@ class FieldModel:
     def terms(self, shifts_per_cm: FloatArray, projectors: FloatArray, scale: float) -> Terms:
         """Terms with every level shifted and the repulsion scaled."""
         field = self.field_eV + np.tensordot(shifts_per_cm, projectors, axes=1) / PER_CM_PER_EV
-        repulsion = self.repulsion
-        if repulsion is not None:
-            repulsion = ElectronRepulsion(
-                scale * repulsion.F2_per_cm, scale * repulsion.F4_per_cm, scale * repulsion.F6_per_cm
-            )
+        repulsion = None if self.repulsion is None else self.repulsion.scaled(scale)
         return multiplet_terms(field, self.n_electrons, repulsion, self.group, self.axes)
 
 
-def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
+def fit_bands(model: FieldModel, observed_per_cm: Sequence[float], labels: Sequence[str] = ()) -> BandFit:
     """Assign observed bands and fit the field to them.
 
     Parameters
@@ -83,6 +80,8 @@ def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
         Computed field.
     observed_per_cm : sequence of float
         Band maxima [cm^-1].
+    labels : sequence of str
+        Upper term of each band; bands with an empty one take the remaining terms in the order of energy.
 
     Returns
     -------
@@ -91,9 +90,12 @@ def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
     Raises
     ------
     InputError
-        If there are more bands than spin-allowed terms, or a wavenumber is not positive.
+        If there are more bands than spin-allowed terms, a wavenumber is not positive, or there is no such term.
     """
-    observed = np.sort(np.asarray(observed_per_cm, dtype=np.float64))
+    observed = np.asarray(observed_per_cm, dtype=np.float64)
+    order = np.argsort(observed, kind="stable")
+    wanted = [labels[k] if labels else "" for k in order]
+    observed = observed[order]
     if not len(observed) or not np.isfinite(observed).all() or observed[0] <= 0:
         raise InputError("observed bands must be positive wavenumbers", mend="give them in cm-1, such as 13000,16000")
     # Only differences of levels show, so the lowest one stays.
@@ -109,15 +111,15 @@ def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
 
     start = terms_at(np.zeros(n_parameters))
     upper = _spin_allowed(start, model.multiplicity)
-    if len(observed) > len(upper):
-        raise InputError(
-            f"{len(observed)} observed bands, but only {len(upper)} spin-allowed ones within the shell",
-            mend="leave out charge-transfer and spin-forbidden bands",
-        )
+    places = _assigned([term.label for term, _ in upper], wanted)
 
     def bands_at(parameters: FloatArray) -> FloatArray:
-        found = _spin_allowed(terms_at(parameters), model.multiplicity)[: len(observed)]
-        return np.array([energy for _, energy in found])
+        found = _spin_allowed(terms_at(parameters), model.multiplicity)
+        names = _numbered([term.label for term, _ in found])
+        energies = dict(zip(names, (energy for _, energy in found), strict=True))
+        return np.array([energies.get(name, np.nan) for name in followed])
+
+    followed = [_numbered([term.label for term, _ in upper])[place] for place in places]
 
     parameters, covariance, fitted = _damped_fit(bands_at, observed, n_parameters)
     names = [level.label for level in start.levels][1:]
@@ -126,12 +128,45 @@ def fit_bands(model: FieldModel, observed_per_cm: Sequence[float]) -> BandFit:
     names += ["B"] if with_repulsion else []
     return BandFit(
         assignments=tuple(
-            BandAssignment(float(seen), before, float(after), term.label)
-            for seen, (term, before), after in zip(observed, upper, fitted, strict=False)
+            BandAssignment(float(seen), upper[place][1], float(after), upper[place][0].label)
+            for seen, place, after in zip(observed, places, fitted, strict=True)
         ),
         parameters=_fitted(names, model, (lowest, *projectors), parameters, covariance),
         undetermined=_undetermined(names, covariance),
+        field_eV=model.field_eV
+        + np.tensordot(LEVEL_WIDTH_PER_CM * parameters[:n_levels], projectors, axes=1) / PER_CM_PER_EV,
+        repulsion_scale=1 + REPULSION_WIDTH * float(parameters[n_levels]) if with_repulsion else 1.0,
     )
+
+
+def _assigned(terms: Sequence[str], wanted: Sequence[str]) -> list[int]:
+    """Place of the term of each band: labelled ones first, the others in the order of energy."""
+    free = list(range(len(terms)))
+    places: list[int | None] = [None] * len(wanted)
+    for band, label in enumerate(wanted):
+        if label:
+            place = next((k for k in free if terms[k] == label), None)
+            if place is None:
+                raise InputError(
+                    f"there is no spin-allowed term {label} for a band",
+                    mend=f"choose from {', '.join(terms) or 'none'}",
+                )
+            places[band] = place
+            free.remove(place)
+    open_ = [band for band, place in enumerate(places) if place is None]
+    if len(open_) > len(free):
+        raise InputError(
+            f"{len(wanted)} observed bands, but only {len(terms)} spin-allowed ones within the shell",
+            mend="leave out charge-transfer and spin-forbidden bands",
+        )
+    for band, place in zip(open_, free, strict=False):
+        places[band] = place
+    return [place for place in places if place is not None]
+
+
+def _numbered(labels: Sequence[str]) -> list[str]:
+    """Labels told apart by their number among equals, so that terms are followed when others cross them."""
+    return [f"{label} {list(labels[:place]).count(label)}" for place, label in enumerate(labels)]
 
 
 def _level_projectors(field_eV: FloatArray) -> FloatArray:

@@ -106,11 +106,11 @@ def _shell_results(
             terms=terms,
         )
     withheld: list[str] = []
-    magnetism, fit = None, None
+    magnetism, fitted, fit = None, None, None
     if not with_magnetism:
         pass
     elif ground is terms.ground:
-        magnetism, missing = _magnetism(shell, constants, repulsion)
+        magnetism, missing = _magnetism(shell, shell.ladder.field_eV, constants, repulsion)
         withheld += missing
     else:
         withheld.append(
@@ -120,6 +120,9 @@ def _shell_results(
     if options.observed_bands_per_cm:
         fit, missing = _fit(shell, constants, repulsion, options)
         withheld += missing
+        if fit is not None and with_magnetism:
+            scaled = None if repulsion is None else repulsion.scaled(fit.repulsion_scale)
+            fitted, _ = _magnetism(shell, fit.field_eV, constants, scaled)
     return Spectroscopy(
         constants=constants,
         terms=terms,
@@ -127,6 +130,7 @@ def _shell_results(
         bands=shell_bands(terms, ground, group, shell.ladder, dipoles_A),
         magnetism=magnetism,
         first_order_g=_first_order_g(shell, constants),
+        fitted_magnetism=fitted,
         fit=fit,
         withheld=tuple(withheld),
     )
@@ -154,7 +158,7 @@ class _Shell:
 
 
 def _nothing(reason: str) -> Spectroscopy:
-    return Spectroscopy(None, None, "", (), None, None, None, (reason,))
+    return Spectroscopy(None, None, "", (), None, None, None, None, (reason,))
 
 
 def _ladder_dipoles(ladder: Ladder, bonding: Bonding, dipoles: FloatArray) -> FloatArray:
@@ -212,14 +216,14 @@ def _constants(
 
 
 def _magnetism(
-    shell: _Shell, constants: ShellConstants, repulsion: ElectronRepulsion | None
+    shell: _Shell, field_eV: FloatArray, constants: ShellConstants, repulsion: ElectronRepulsion | None
 ) -> tuple[Magnetism | None, list[str]]:
     if constants.zeta_per_cm is None:
         return None, [f"magnetism: no spin-orbit constant of {constants.ion} is tabulated"]
     momentum = reduced_momentum(shell.ladder.angular_momentum, shell.ladder.vectors, shell.shares)
     try:
         return (
-            magnetic_properties(shell.ladder.field_eV, shell.n_electrons, repulsion, constants.zeta_per_cm, momentum),
+            magnetic_properties(field_eV, shell.n_electrons, repulsion, constants.zeta_per_cm, momentum),
             [],
         )
     except EhmoError as error:
@@ -261,6 +265,6 @@ def _fit(
         shell.unpaired + 1,
     )
     try:
-        return fit_bands(model, options.observed_bands_per_cm), []
+        return fit_bands(model, options.observed_bands_per_cm, options.observed_terms), []
     except EhmoError as error:
         return None, [f"fit to the observed bands: {error}"]

@@ -26,7 +26,7 @@ def add_command(commands: Any) -> None:
     spectrum.add_argument(
         "--bands",
         metavar="LIST",
-        help="observed bands within the shell, assigned and fitted [cm-1]: 13000,16000",
+        help="observed bands within the shell, assigned and fitted [cm-1]: 13000,16000 or 2E:13000,2B1:16000",
     )
     spectrum.add_argument("--racah-b", type=float, metavar="B", help="Racah B in cm-1 (default: free ion, reduced)")
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
@@ -37,9 +37,11 @@ def run(chosen: argparse.Namespace) -> str:
     """Ladder text of each structure in the file; the JSON is that of the whole report."""
     from ehmo.structure import read_frames
 
+    bands = _bands(chosen.bands)
     options = replace(
         bond.calculation_options(chosen),
-        observed_bands_per_cm=_bands(chosen.bands),
+        observed_bands_per_cm=tuple(value for _, value in bands),
+        observed_terms=tuple(term for term, _ in bands),
         racah_B_per_cm=chosen.racah_b,
     )
     fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
@@ -59,12 +61,17 @@ def _text(report: BondReport) -> str:
     return "\n\n".join(parts) + "\n"
 
 
-def _bands(words: str | None) -> tuple[float, ...]:
-    if words is None:
-        return ()
-    try:
-        return tuple(float(word) for word in words.replace(";", ",").split(",") if word.strip())
-    except ValueError:
-        raise InputError(
-            f"--bands {words!r} are no numbers", mend="give wavenumbers in cm-1, such as 13000,16000"
-        ) from None
+def _bands(words: str | None) -> list[tuple[str, float]]:
+    """Upper term (empty if not named) and wavenumber of each observed band."""
+    found = []
+    for word in (words or "").replace(";", ",").split(","):
+        if not word.strip():
+            continue
+        term, _, number = word.rpartition(":")
+        try:
+            found.append((term.strip(), float(number)))
+        except ValueError:
+            raise InputError(
+                f"--bands {words!r} are no bands", mend="give wavenumbers in cm-1, such as 13000,16000 or 2E:13000"
+            ) from None
+    return found

@@ -5,6 +5,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Literal
 
+from ehmo.records.arrays import FloatArray
+
 BandKind = Literal["d-d", "f-f", "charge transfer"]
 
 
@@ -79,7 +81,7 @@ class BandAssignment:
     upper_term: str
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class BandFit:
     """Ligand field that reproduces observed bands, as close to the computed one as they let it.
 
@@ -89,8 +91,14 @@ class BandFit:
     parameters : tuple of FittedParameter
     undetermined : tuple of str
         Combinations of parameters that the bands leave where they were.
+    field_eV : (n, n) ndarray
+        Fitted field in the local axes [eV].
+    repulsion_scale : float
+        Factor of the repulsion.
     """
 
     assignments: tuple[BandAssignment, ...]
     parameters: tuple[FittedParameter, ...]
     undetermined: tuple[str, ...]
+    field_eV: FloatArray
+    repulsion_scale: float

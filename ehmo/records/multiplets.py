@@ -53,6 +53,10 @@ class ElectronRepulsion:
         """
         return cls(49 * B_per_cm + 7 * C_per_cm, 63 * C_per_cm / 5)
 
+    def scaled(self, factor: float) -> ElectronRepulsion:
+        """All integrals times a factor."""
+        return ElectronRepulsion(factor * self.F2_per_cm, factor * self.F4_per_cm, factor * self.F6_per_cm)
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Term:

@@ -30,6 +30,9 @@ class Options:
         Overrides the reduced free-ion value [cm^-1].
     observed_bands_per_cm : tuple of float
         Observed bands within the d (f) shell, to be assigned and fitted [cm^-1].
+    observed_terms : tuple of str
+        Upper term of each observed band, empty where the order of energy assigns it; no entry at all means that
+        for every band.
     max_iterations : int
         Diagonalisations allowed for self-consistent charges.
     max_functions : int
@@ -49,6 +52,7 @@ class Options:
     oxidation_state: int | None = None
     racah_B_per_cm: float | None = None
     observed_bands_per_cm: tuple[float, ...] = ()
+    observed_terms: tuple[str, ...] = ()
     max_iterations: int = 100
     max_functions: int = 4000
 

@@ -94,6 +94,8 @@ class Spectroscopy:
     magnetism : Magnetism or None
     first_order_g : tuple of (float, float) or None
         g parallel and perpendicular of d1 by the first-order formulas of a tetragonal oxo ion.
+    fitted_magnetism : Magnetism or None
+        The same from the field fitted to observed bands.
     fit : BandFit or None
         Assignment of observed bands, if some were given.
     withheld : tuple of str
@@ -106,5 +108,6 @@ class Spectroscopy:
     bands: tuple[Band, ...]
     magnetism: Magnetism | None
     first_order_g: tuple[float, float] | None
+    fitted_magnetism: Magnetism | None
     fit: BandFit | None
     withheld: tuple[str, ...]

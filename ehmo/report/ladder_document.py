@@ -124,7 +124,7 @@ def spectroscopy_part(spectrum: Spectroscopy) -> dict[str, Any]:
         ],
         "g_tensor": None if magnetism is None else _g_tensor(magnetism.g_tensor),
         "magnetism": None if magnetism is None else _magnetism(magnetism, spectrum.first_order_g),
-        "band_fit": None if spectrum.fit is None else _fit(spectrum.fit),
+        "band_fit": None if spectrum.fit is None else _fit(spectrum.fit, spectrum.fitted_magnetism),
         "spectroscopy_withheld": list(spectrum.withheld),
     }
 
@@ -183,8 +183,10 @@ def _magnetism(magnetism: Magnetism, first_order_g: tuple[float, float] | None) 
     }
 
 
-def _fit(fit: BandFit) -> dict[str, Any]:
+def _fit(fit: BandFit, magnetism: Magnetism | None) -> dict[str, Any]:
     return {
+        "field_eV": fit.field_eV,
+        "fitted_g_tensor": None if magnetism is None else _g_tensor(magnetism.g_tensor),
         "assignments": [
             {
                 "observed_per_cm": item.observed_per_cm,

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from ehmo.records.bands import Band, BandFit
+from ehmo.records.bands import Band
 from ehmo.records.ligand_field import LadderLevel, LigandFieldParameters
 from ehmo.records.multiplets import GTensor, Magnetism
 from ehmo.records.report import BondReport
@@ -131,7 +131,7 @@ def ladder_text(report: BondReport) -> str:
         _terms_lines(spectrum),
         _band_lines(spectrum.bands),
         _magnetism_lines(spectrum),
-        _fit_lines(spectrum.fit),
+        _fit_lines(spectrum),
         _withheld_lines(report),
     ]
     return "\n\n".join("\n".join(section) for section in sections if section) + "\n"
@@ -263,9 +263,11 @@ def _splitting_lines(magnetism: Magnetism) -> list[str]:
     ]
 
 
-def _fit_lines(fit: BandFit | None) -> list[str]:
+def _fit_lines(spectrum: Spectroscopy) -> list[str]:
+    fit = spectrum.fit
     if fit is None:
         return []
+    g = None if spectrum.fitted_magnetism is None else spectrum.fitted_magnetism.g_tensor
     assigned = [["observed/cm-1", "upper term", "computed/cm-1", "fitted/cm-1"]]
     assigned += [
         [f"{a.observed_per_cm:.0f}", a.upper_term, f"{a.computed_per_cm:.0f}", f"{a.fitted_per_cm:.0f}"]
@@ -283,11 +285,12 @@ def _fit_lines(fit: BandFit | None) -> list[str]:
         for p in fit.parameters
     ]
     return [
-        "Observed bands, assigned in the order of energy to the spin-allowed terms",
+        "Observed bands, assigned to the terms named, else in the order of energy to the spin-allowed ones",
         *aligned(assigned, numeric=(0, 2, 3), indent="  "),
         "Ligand field fitted to them, damped towards the computed one (levels above the lowest)",
         *aligned(moved, numeric=(1, 2, 3), indent="  "),
         *(f"  left open: {combination}" for combination in fit.undetermined),
+        *([f"  with the fitted field {_g_in_words(g)}"] if g is not None else []),
     ]
 
 

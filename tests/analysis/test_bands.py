@@ -103,3 +103,21 @@ def test_bands_that_do_not_fit_are_refused(bands):
     with pytest.raises(InputError) as caught:
         fit_bands(model, bands)
     assert caught.value.mend
+
+
+def test_named_terms_are_assigned_as_named_even_across_a_crossing():
+    # Computed 2A1 below 2B1, observed the other way round: the label decides, and the levels cross in the fit.
+    model = FieldModel(tetragonal(10900, 42500, 20800), 1, None, 0.0, point_group("C4v"), np.eye(3), 2)
+    fit = fit_bands(model, [14000.0, 11700.0], ["2B1", "2E"])
+    assert [(item.upper_term, item.observed_per_cm) for item in fit.assignments] == [("2E", 11700), ("2B1", 14000)]
+    assert [item.fitted_per_cm for item in fit.assignments] == pytest.approx([11700, 14000], abs=30)
+    levels = np.diag(fit.field_eV - fit.field_eV[0, 0] * np.eye(5)) * PER_CM_PER_EV
+    assert levels[4] == pytest.approx(14000, abs=30)
+    assert levels[2] == pytest.approx(20800, abs=30)
+
+
+def test_a_term_that_is_not_there_is_refused_with_those_that_are():
+    model = FieldModel(tetragonal(10900, 42500, 20800), 1, None, 0.0, point_group("C4v"), np.eye(3), 2)
+    with pytest.raises(InputError, match="2T2g") as caught:
+        fit_bands(model, [14000.0], ["2T2g"])
+    assert "2B1" in caught.value.mend

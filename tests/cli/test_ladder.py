@@ -85,3 +85,11 @@ def test_bands_that_cannot_be_used_are_said_to_be_so(ehmo, vanadyl, bands):
 def test_oxidation_state_option(ehmo, vanadyl):
     found = json.loads(ehmo("bond", vanadyl, "--oxidation-state", "5", "--json", "-").out)
     assert (found["oxidation_state"], found["d_count"]) == (5, 0)
+
+
+def test_bands_may_name_their_terms(ehmo, vanadyl):
+    found = json.loads(ehmo("ladder", vanadyl, "--bands", "2B1:16000, 2E:13000", "--json", "-").out)["band_fit"]
+    assert [item["upper_term"] for item in found["assignments"]] == ["2E", "2B1"]
+    # With the fitted field g_par falls and g_perp rises towards 1.933 and 1.978 (Ballhausen & Gray 1962, memory).
+    assert max(found["fitted_g_tensor"]["values"]) == pytest.approx(1.978, abs=0.01)
+    assert min(found["fitted_g_tensor"]["values"]) == pytest.approx(1.933, abs=0.03)
