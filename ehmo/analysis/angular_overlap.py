@@ -111,9 +111,9 @@ def crystal_field_parameters(field_eV: FloatArray, group: str) -> dict[str, floa
     .. [1] ballhausen-1962: C. J. Ballhausen, Introduction to Ligand Field Theory, McGraw-Hill 1962, chapter 4.
     """
     xy, yz, z2, xz, x2y2 = np.diag(field_eV) * PER_CM_PER_EV
-    if group in ("Oh", "O", "Td"):
-        # In Td the t2 set lies above: 10Dq comes out negative, as in Oh with the same sign convention.
-        splitting = (z2 + x2y2) / 2 - (xy + yz + xz) / 3
+    if group in ("Oh", "Td"):
+        # The upper set less the lower one: eg over t2g in Oh, t2 over e in Td.
+        splitting = ((z2 + x2y2) / 2 - (xy + yz + xz) / 3) * (1 if group == "Oh" else -1)
         return {"10Dq": float(splitting), "Dq": float(splitting / 10)}
     if group not in ("C4v", "D4h", "D4", "C4", "C4h", "D2d", "D4d"):
         return {}

@@ -26,7 +26,11 @@ LISTED_STRENGTH = 1e-3
 ALLOWED_STRENGTH = 1e-4
 """Charge-transfer bands of less are called forbidden."""
 
+SAME_TERM_PER_CM = 1.0
+"""Terms closer than this are told apart by rounding alone [cm^-1]."""
+
 _LOWEST_LISTED = 3
+_NOTHING = 1e-12  # strengths below are rounding
 _POLARISED = 0.15  # share of the intensity along an axis that is worth its letter
 
 
@@ -58,6 +62,8 @@ def shell_bands(
     strengths = (dipoles_A**2).sum(axis=0)
     bands = []
     for term in terms.terms[terms.terms.index(ground) + 1 :]:
+        if term.energy_per_cm - ground.energy_per_cm < SAME_TERM_PER_CM:
+            continue
         spin_allowed = term.multiplicity == ground.multiplicity
         polarisation = dipole_polarisations(group, ground.irrep, term.irrep)
         strength = None
@@ -100,7 +106,9 @@ def _jump_strength(ground: Term, upper: Term, terms: Terms, ladder: Ladder, stre
     sets = _level_orbitals(terms, ladder)
     source = next(level for level, change in jumps if change < 0)
     target = next(level for level, change in jumps if change > 0)
-    electrons = dict(ground.configuration)[source] / len(sets[source])
+    before = dict(ground.configuration)
+    # Electrons of the source times the share of free spin orbitals of the target.
+    electrons = before[source] / len(sets[source]) * (1 - before[target] / (2 * len(sets[target])))
     squared = float(strengths[np.ix_(sets[source], sets[target])].sum()) * electrons / BOHR_A**2
     energy = (upper.energy_per_cm - ground.energy_per_cm) / PER_CM_PER_EV / HARTREE_EV
     return 2 / 3 * energy * squared * ground.configuration_share * upper.configuration_share
@@ -173,6 +181,7 @@ def charge_transfer_bands(
     by_axis = np.add.reduceat(np.add.reduceat(squared, sources, axis=1), targets, axis=2)
     gaps = state.energies_eV[columns[targets]] - state.energies_eV[rows[sources]][:, None]
     strengths = 2 / 3 * gaps / HARTREE_EV * by_axis.sum(axis=0) / BOHR_A**2
+    strengths[strengths < _NOTHING] = 0.0
     ladder = np.array(sorted(ladder_orbitals), dtype=np.intp)
     within = np.isin(rows[sources], ladder)[:, None] & np.isin(columns[targets], ladder)
     possible = (gaps > DEGENERACY_TOLERANCE_EV) & (gaps < CHARGE_TRANSFER_WINDOW_EV) & ~within

@@ -38,7 +38,11 @@ class BondedFunctions:
 
 
 def bonded_functions(
-    bonds: Sequence[MetalDonorBond], basis: Basis, overlap: OverlapSpectrum, state: ElectronicState
+    bonds: Sequence[MetalDonorBond],
+    basis: Basis,
+    overlap: OverlapSpectrum,
+    state: ElectronicState,
+    metals: Sequence[int] = (),
 ) -> BondedFunctions:
     """Rows of the metals and donors of some bonds.
 
@@ -52,6 +56,8 @@ def bonded_functions(
         S with its eigenvectors.
     state : ElectronicState
         Orbitals.
+    metals : sequence of int
+        Metals that may have no bonds.
 
     Returns
     -------
@@ -63,7 +69,7 @@ def bonded_functions(
     """
     role = np.zeros(len(basis.symbols), dtype=np.int8)
     role[[bond.donor for bond in bonds]] = 1
-    role[[bond.metal for bond in bonds]] = 2
+    role[[*metals, *(bond.metal for bond in bonds)]] = 2
     rows = np.flatnonzero(role[basis.atom_of])
     chosen_overlap = overlap.matrix[rows]
     half = (overlap.vectors[rows] * np.sqrt(overlap.eigenvalues)) @ overlap.vectors.T

@@ -121,6 +121,7 @@ def formal_orders(
             lost = 0.5 * _antibonding_electrons(ladder, free @ coupled)
             sigma_lost = _antibonding_sigma(ladder, frame.sigma, free, multiple)
     capacity = np.minimum(capacity, [len(functions) for functions in offered])
+    total = min(total, round(float(capacity.sum())))
     shared = _shared_evenly(total, capacity)
     left = max(0.0, 1 - lost / total) if total else 0.0
     rule = _rule(directions, offered, total, n_multiple=len(multiple), with_f=with_f)

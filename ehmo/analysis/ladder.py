@@ -29,7 +29,8 @@ BONDING_OVERLAP = 0.05
 """Metal-donor overlap population of two electrons above which an orbital counts as bonding [e]."""
 
 _SINGULAR = 0.05
-_CLEARLY = 0.01
+_CLEARLY = 0.005
+_SAME_LEVEL_EV = 1e-3
 
 
 BoolArray = NDArray[np.bool_]
@@ -58,6 +59,7 @@ def ladders(
     overlap_population: FloatArray,
     *,
     parts: Sequence[FloatArray] = (),
+    naming: Sequence[FloatArray] = (),
     counted_electrons: int | None = None,
 ) -> tuple[Ladder, ...]:
     """Ladder of each metal of a fragment.
@@ -83,6 +85,9 @@ def ladders(
     parts : sequence of (2l+1, n) ndarray
         For one metal: orthonormal columns in the local axes that span the irreps within the shell; the whole shell
         at once if empty.
+    naming : sequence of (2l+1, 2l+1) ndarray
+        Per metal: columns are the functions that levels are named after, in the local axes; the local functions
+        themselves if empty.
     counted_electrons : int, optional
         d (f) electrons by textbook counting.
 
@@ -104,7 +109,7 @@ def ladders(
     amplitudes = np.concatenate([shell.amplitudes for shell in shells])
     whole = (np.eye(len(amplitudes)),)
     spans = tuple(parts) if len(shells) == 1 and parts else whole
-    least = LEAST_SHARE[shells[0].l]
+    least = min(LEAST_SHARE[shell.l] for shell in shells)
     not_bonding = overlap_population <= BONDING_OVERLAP
     everything = np.ones(len(overlap_population), dtype=bool)
     ways = (
@@ -126,28 +131,46 @@ def ladders(
             f"{100 * least:.0f} % of the metal's shell",
             mend="read the frontier orbitals one by one",
         )
-    matrix = _effective_matrix(amplitudes[:, chosen], state.energies_eV[chosen])
+    projected = amplitudes[:, chosen]
+    frame_of_orbitals = _orthonormal(projected)
+    matrix = (frame_of_orbitals * state.energies_eV[chosen]) @ frame_of_orbitals.T
     bonding = overlap_population > BONDING_OVERLAP
     bonding[chosen] = False
-    partners = _partner_shares(amplitudes, spans, bonding)
+    orbitals = _Chosen(
+        places=chosen,
+        filling=filling[chosen],
+        donors=bonded.lowdin_orbitals[~bonded.on_metals][:, chosen],
+        overlap_population=overlap_population[chosen],
+        alone=len(shells) == 1,
+    )
     result, start = [], 0
-    for shell in shells:
+    for place, shell in enumerate(shells):
         own = slice(start, start + 2 * shell.l + 1)
         start = own.stop
-        result.append(
-            _ladder(
-                shell,
-                matrix[own, own],
-                chosen,
-                len(shells) == 1,
-                filling,
-                bonded,
-                partners[own],
-                overlap_population,
-                selection,
-            )
+        names = naming[place] if naming else np.eye(2 * shell.l + 1)
+        energies, vectors = _named_levels(matrix[own, own], names)
+        ladder = Ladder(
+            shell.metal,
+            shell.label,
+            _levels(shell, energies, vectors, names, frame_of_orbitals[own], orbitals, bonding),
+            matrix[own, own],
+            vectors,
+            shell.reference_eV,
+            selection,
         )
+        result.append(ladder)
     return tuple(result)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Chosen:
+    """The orbitals of the ladder: their places, filling, donor rows and metal-donor overlap populations."""
+
+    places: IntArray
+    filling: FloatArray
+    donors: FloatArray
+    overlap_population: FloatArray
+    alone: bool
 
 
 def _shell_of(frame: LocalFrame, basis: Basis, bonded: BondedFunctions, state: ElectronicState) -> _Shell:
@@ -211,62 +234,81 @@ def _holds(chosen: IntArray | None, filling: FloatArray, electrons: int | None) 
     return chosen is not None and electrons is not None and abs(float(filling[chosen].sum()) - electrons) < 0.5
 
 
-def _effective_matrix(amplitudes: FloatArray, energies: FloatArray) -> FloatArray:
-    """W E W^T with W the symmetrically orthonormalised projections."""
-    left, singular, right = np.linalg.svd(amplitudes)
+def _orthonormal(projected: FloatArray) -> FloatArray:
+    """Projections of the chosen orbitals on the shells, symmetrically orthonormalised."""
+    left, singular, right = np.linalg.svd(projected)
     if singular[-1] < _SINGULAR:
         raise LadderError(
             "two of the chosen orbitals are alike on the metal", mend="read the frontier orbitals one by one"
         )
-    orthonormal = left @ right
-    matrix: FloatArray = (orthonormal * energies) @ orthonormal.T
-    return (matrix + matrix.T) / 2
+    orthonormal: FloatArray = left @ right
+    return orthonormal
 
 
-def _partner_shares(amplitudes: FloatArray, spans: Sequence[FloatArray], bonding: BoolArray) -> FloatArray:
-    """For each function, the largest share of its part in a bonding orbital."""
-    shares = np.zeros(len(amplitudes))
-    if bonding.any():
-        for span in spans:
-            best = float(((span.T @ amplitudes[:, bonding]) ** 2).sum(axis=0).max())
-            shares += (span**2).sum(axis=1) * best
-    return shares
-
-
-def _ladder(
-    shell: _Shell,
-    field: FloatArray,
-    chosen: IntArray,
-    alone: bool,
-    filling: FloatArray,
-    bonded: BondedFunctions,
-    partners: FloatArray,
-    overlap_population: FloatArray,
-    selection: str,
-) -> Ladder:
+def _named_levels(field: FloatArray, names: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Eigenvalues and vectors; within a degenerate set the vectors are turned towards the named functions."""
+    field = (field + field.T) / 2
     energies, vectors = np.linalg.eigh(field)
-    shares = (shell.amplitudes[:, chosen] ** 2).sum(axis=0)
-    donors = (bonded.lowdin_orbitals[~bonded.on_metals][:, chosen] ** 2).sum(axis=0)
+    for members in _degenerate(energies):
+        if len(members) == 1:
+            continue
+        held = vectors[:, members]
+        weights = ((names.T @ held) ** 2).sum(axis=1)
+        # The set's own functions: as many as it has members, in their usual order.
+        functions = np.sort(np.argsort(-np.round(weights, 6), kind="stable")[: len(members)])
+        left, _, right = np.linalg.svd(held.T @ names[:, functions])
+        vectors[:, members] = held @ (left @ right)
+    return energies, vectors
+
+
+def _degenerate(energies: FloatArray) -> list[IntArray]:
+    """Places of the levels, those of one energy together."""
+    starts = np.flatnonzero(np.diff(energies, prepend=-np.inf) > _SAME_LEVEL_EV)
+    return np.split(np.arange(len(energies)), starts[1:])
+
+
+def _levels(
+    shell: _Shell,
+    energies: FloatArray,
+    vectors: FloatArray,
+    names: FloatArray,
+    orbital_frame: FloatArray,
+    orbitals: _Chosen,
+    bonding: BoolArray,
+) -> tuple[LadderLevel, ...]:
+    """Levels of one metal: each is the combination of the chosen orbitals that its vector stands for."""
+    parts = orbital_frame.T @ vectors
+    on_shell = shell.amplitudes[:, orbitals.places] @ parts
+    on_donors = orbitals.donors @ parts
+    partners = np.zeros(len(energies))
+    for members in _degenerate(energies):
+        if bonding.any():
+            held = vectors[:, members].T @ shell.amplitudes[:, bonding]
+            partners[members] = float((held**2).sum(axis=0).max())
     levels = []
+    free = list(range(len(orbitals.places)))
     for k in range(len(energies)):
-        # With several metals a level of one is spread over the orbitals: weigh them by its part in each.
-        weights = (vectors[:, k] @ shell.amplitudes[:, chosen]) ** 2
-        weights = weights / weights.sum() if not alone else np.eye(len(chosen))[k]
-        leading = int((vectors[:, k] ** 2).argmax())
-        partner = float(partners @ vectors[:, k] ** 2)
-        share = float(weights @ shares)
+        named = (names.T @ vectors[:, k]) ** 2
+        leading = int(named.argmax())
+        share = float((on_shell[:, k] ** 2).sum())
+        orbital = None
+        if orbitals.alone:
+            # Within a degenerate set any member will do, but each only once.
+            place = max(free, key=lambda place: parts[place, k] ** 2)
+            free.remove(place)
+            orbital = int(orbitals.places[place])
         levels.append(
             LadderLevel(
                 function=ORBITAL_NAMES[shell.l][leading],
-                function_share=float(vectors[leading, k] ** 2),
+                function_share=float(named[leading]),
                 energy_eV=float(energies[k]),
-                orbital=int(chosen[k]) if alone else None,
-                electrons=float(weights @ filling[chosen]),
+                orbital=orbital,
+                electrons=float(parts[:, k] ** 2 @ orbitals.filling),
                 metal_share=share,
-                donor_share=float(weights @ donors),
-                overlap_population=float(weights @ overlap_population[chosen]),
-                inverted=partner > share + _CLEARLY,
-                partner_share=partner,
+                donor_share=float((on_donors[:, k] ** 2).sum()),
+                overlap_population=float(parts[:, k] ** 2 @ orbitals.overlap_population),
+                inverted=float(partners[k]) > share + _CLEARLY,
+                partner_share=float(partners[k]),
             )
         )
-    return Ladder(shell.metal, shell.label, tuple(levels), field, vectors, shell.reference_eV, selection)
+    return tuple(levels)

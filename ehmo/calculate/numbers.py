@@ -25,6 +25,7 @@ from ehmo.electronic.hamiltonian import wolfsberg_helmholz
 from ehmo.errors import InputError, LimitError
 from ehmo.orbitals.overlap import ChannelScale, overlap_matrix, scaled_overlap_matrices
 from ehmo.orbitals.pairs import OrbitalPlan, orbital_plan
+from ehmo.orbitals.parameters import element_parameters
 from ehmo.records.arrays import FloatArray
 from ehmo.records.bonding import BondOrders, Populations
 from ehmo.records.coordination import Coordination
@@ -99,12 +100,13 @@ def calculate_bonding(
     """
     if fragment.charge is None or fragment.unpaired_electrons is None:
         raise InputError("charge and unpaired electrons are not set", mend="set them with Fragment.with_electrons")
-    plan = orbital_plan(fragment.symbols, table)
-    if len(plan.basis) > options.max_functions:
+    n_functions = _count_functions(fragment, table)
+    if n_functions > options.max_functions:
         raise LimitError(
-            f"{len(plan.basis)} basis functions, more than the limit of {options.max_functions}",
+            f"{n_functions} basis functions, more than the limit of {options.max_functions}",
             mend="cut the fragment, or raise the limit with --max-functions",
         )
+    plan = orbital_plan(fragment.symbols, table)
     with _threads_for(len(plan.basis)):
         overlap, hamiltonian = _matrices(plan, fragment, settings)
         spectrum = overlap_spectrum(overlap, plan.basis)
@@ -118,11 +120,20 @@ def calculate_bonding(
             state = self_consistent_charges(
                 hamiltonian, overlap, plan.basis, count, interaction, max_iterations=options.max_iterations
             )
-        bonded = bonded_functions(coordination.bonds, plan.basis, spectrum, state)
+        bonded = bonded_functions(coordination.bonds, plan.basis, spectrum, state, coordination.metals)
         populations, orders = analyse_bonding(
             coordination.bonds, fragment.positions_A, plan.basis, spectrum, state, bonded
         )
     return Bonding(plan, spectrum, state, bonded, populations, orders)
+
+
+def _count_functions(fragment: Fragment, table: ParameterTable) -> int:
+    """Basis functions of a fragment, counted before anything as large as their pairs is made."""
+    sizes = {
+        symbol: sum(2 * shell.l + 1 for shell in element_parameters(table, symbol).shells)
+        for symbol in set(fragment.symbols)
+    }
+    return sum(sizes[symbol] for symbol in fragment.symbols)
 
 
 def _matrices(plan: OrbitalPlan, fragment: Fragment, settings: ModelSettings) -> tuple[FloatArray, FloatArray]:

@@ -107,8 +107,13 @@ def spectrum_warnings(spectrum: Spectroscopy) -> tuple[str, ...]:
     """Sentences on a ground term or g values that the computed ladder does not bear out."""
     said = []
     terms = spectrum.terms
-    if terms is not None and spectrum.ground_term and terms.ground.label != spectrum.ground_term:
-        ground = next(term for term in terms.terms if term.label == spectrum.ground_term)
+    alike = spectrum.ground_term.split(" or ")
+    if len(alike) > 1:
+        said.append(
+            f"the terms {spectrum.ground_term} are degenerate within the calculation: either may be the ground term"
+        )
+    if terms is not None and spectrum.ground_term and terms.ground.label not in alike:
+        ground = next(term for term in terms.terms if term.label in alike)
         said.append(
             f"the lowest term of the computed ladder is {terms.ground.label}, {ground.energy_per_cm:.0f} cm-1 below "
             f"{spectrum.ground_term}, the lowest with the spin of the calculation: bands and spin rest on a ladder "
@@ -160,14 +165,16 @@ def _frontier_warning(state: ElectronicState, metal_share: FloatArray) -> str:
             f"orbitals {levels} are degenerate and share {_electrons(occupations[shared].sum())} evenly: "
             "the ground state may distort"
         )
-    lumo = state.lumo
-    if lumo is None:
-        return ""
-    gap = state.energies_eV[lumo] - state.energies_eV[lumo - 1]
-    if gap < FRONTIER_TOLERANCE_EV:
-        return (
-            f"orbitals {lumo} and {lumo + 1} at the frontier are only {gap:.3f} eV apart: another filling is as likely"
-        )
+    for filling in state.occupations:
+        empty = int((filling > NO_ELECTRON).sum())
+        if not 0 < empty < len(filling):
+            continue
+        gap = state.energies_eV[empty] - state.energies_eV[empty - 1]
+        if gap < FRONTIER_TOLERANCE_EV:
+            return (
+                f"orbitals {empty} and {empty + 1} at the frontier are only {gap:.3f} eV apart: "
+                "another filling is as likely"
+            )
     return ""
 
 
@@ -183,7 +190,9 @@ def _spin_warning(fragment: Fragment, coordination: Coordination, bonding: Bondi
     coefficients = bonding.state.coefficients[:, worst]
     gross = coefficients * (bonding.overlap.matrix @ coefficients)
     atom = int(np.add.reduceat(gross, bonding.plan.basis.atom_start[:-1]).argmax())
+    label = atom_label(fragment.symbols[atom], atom)
+    mend = "it is shared with the ligands" if atom in coordination.metals else f"check the spin state: {label} has most"
     return (
-        f"only {100 * on_metal:.0f} % of the unpaired density is on the metal: orbital {worst + 1} holds an unpaired "
-        f"electron and has its largest part on {atom_label(fragment.symbols[atom], atom)}; check the spin state"
+        f"only {100 * on_metal:.0f} % of the unpaired density is on the metal, most of the rest in orbital {worst + 1}: "
+        f"{mend}"
     )

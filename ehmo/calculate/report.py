@@ -9,7 +9,7 @@ from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnin
 from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders, sphere_irreps
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
-from ehmo.errors import EhmoError
+from ehmo.errors import EhmoError, InputError
 from ehmo.orbitals.parameters import load_parameters
 from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.fragment import Fragment
@@ -54,6 +54,10 @@ def bond_report(
 
 def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, options: Options) -> BondReport:
     coordination = perceive(fragment)
+    if options.oxidation_state is not None and len(coordination.metals) > 1:
+        raise InputError(
+            f"one oxidation state for {len(coordination.metals)} metals", mend="leave out --oxidation-state"
+        )
     electrons = assign_electrons(
         fragment, coordination, options.charge, options.unpaired_electrons, options.oxidation_state
     )

@@ -27,6 +27,10 @@ MOST_ATOMS = 120
 """Largest fragment whose whole symmetry is searched."""
 
 
+CUBIC = ("Oh", "Td")
+"""Groups whose levels are named after the functions in the group's axes: no single bond sets the axes there."""
+
+
 def sphere_symmetries(fragment: Fragment, coordination: Coordination) -> tuple[Symmetry, ...]:
     """Idealised symmetry of each metal with its donors.
 
@@ -97,19 +101,21 @@ def metal_sites(
     for place, (frame, symmetry) in enumerate(zip(coordination.frames, symmetries, strict=True)):
         bonds = coordination.bonds_of(frame.metal)
         state = electrons.metal_oxidation_total if len(coordination.metals) == 1 else None
-        ladder = found[place] if found else None
+        ladder = found[place]
         sites.append(
             MetalSite(
                 metal=frame.metal,
                 symmetry=symmetry,
                 shapes=shape_measures(
                     fragment.positions_A[frame.metal], fragment.positions_A[[bond.donor for bond in bonds]]
-                ),
+                )
+                if bonds
+                else (),
                 oxidation_state=state,
                 d_count=electrons.d_electrons,
                 bond_valence_sum=bond_valence_sum(fragment, coordination, frame.metal, state),
                 ladder=ladder,
-                ladder_withheld=withheld,
+                ladder_withheld="" if ladder is not None else withheld,
                 parameters=None if ladder is None else _parameters(fragment, coordination, frame, symmetry, ladder),
             )
         )
@@ -121,28 +127,45 @@ def site_ladders(
     electrons: ElectronAssignment,
     bonding: Bonding,
     symmetries: tuple[Symmetry, ...],
-) -> tuple[tuple[Ladder, ...], str]:
-    """Ladder of each metal, or none and the reason why."""
+) -> tuple[tuple[Ladder | None, ...], str]:
+    """Ladder of each metal, None where there is none, and the reason of the first that lacks one."""
+    bound = [frame for frame in coordination.frames if coordination.bonds_of(frame.metal)]
+    lonely = len(bound) < len(coordination.frames)
     parts: tuple[FloatArray, ...] = ()
+    turns = [
+        harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], _shell_momentum(bonding, frame))[0]
+        for frame, symmetry in zip(coordination.frames, symmetries, strict=True)
+        if coordination.bonds_of(frame.metal)
+    ]
     if len(coordination.metals) == 1:
-        (frame,), (symmetry,) = coordination.frames, symmetries
-        l = 3 if 3 in bonding.plan.basis.layouts[frame.metal] else 2
-        turn = harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], l)[0]
-        parts = tuple(turn @ part for part in shell_parts(symmetry.group, l))
+        parts = tuple(turns[0] @ part for part in shell_parts(symmetries[0].group, _shell_momentum(bonding, bound[0])))
+    naming = [
+        turn if symmetry.group.name in CUBIC else np.eye(len(turn))
+        for turn, symmetry in zip(
+            turns, (s for s, f in zip(symmetries, coordination.frames, strict=True) if f in bound), strict=True
+        )
+    ]
     overlap = np.sum([orders.orbital_overlap for orders in bonding.orders], axis=0)
     try:
         found = ladders(
-            coordination.frames,
+            bound,
             bonding.plan.basis,
             bonding.bonded,
             bonding.state,
             overlap,
             parts=parts,
+            naming=naming,
             counted_electrons=electrons.d_electrons,
         )
     except LadderError as error:
-        return (), error.fault
-    return found, ""
+        return (None,) * len(coordination.frames), error.fault
+    by_metal = {ladder.metal: ladder for ladder in found}
+    return tuple(by_metal.get(frame.metal) for frame in coordination.frames), "no donors" if lonely else ""
+
+
+def _shell_momentum(bonding: Bonding, frame: LocalFrame) -> int:
+    """Angular momentum of the shell whose ladder is asked for: f where the metal has f functions."""
+    return 3 if 3 in bonding.plan.basis.layouts[frame.metal] else 2
 
 
 def sphere_irreps(sites: tuple[MetalSite, ...], bonding: Bonding) -> OrbitalIrreps | None:
@@ -165,6 +188,8 @@ def site_formal_orders(
     found: list[FormalOrder | None] = []
     for site, frame in zip(sites, coordination.frames, strict=True):
         bonds = coordination.bonds_of(site.metal)
+        if not bonds:
+            continue
         normals = pi_normals(bonds, coordination, fragment.symbols, fragment.positions_A)
         found += formal_orders(
             bonds,

@@ -9,7 +9,7 @@ import numpy as np
 import basis_params
 from basis_params import ParameterTable
 from ehmo.analysis.band_fit import FieldModel, fit_bands
-from ehmo.analysis.bands import OrbitalLabels, charge_transfer_bands, shell_bands
+from ehmo.analysis.bands import SAME_TERM_PER_CM, OrbitalLabels, charge_transfer_bands, shell_bands
 from ehmo.analysis.multiplets import (
     d1_square_pyramid_g,
     magnetic_properties,
@@ -26,10 +26,11 @@ from ehmo.records.bands import BandFit
 from ehmo.records.coordination import Coordination
 from ehmo.records.fragment import Fragment
 from ehmo.records.ligand_field import Ladder
-from ehmo.records.multiplets import ElectronRepulsion, Magnetism
+from ehmo.records.multiplets import ElectronRepulsion, Magnetism, Term, Terms
 from ehmo.records.options import Options
 from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
 from ehmo.records.symmetry import OrbitalIrreps
+from ehmo.structure.elements import F_BLOCK
 from ehmo.units import PER_CM_PER_EV
 
 _TETRAGONAL = ("C4v", "D4h", "D4", "C4")
@@ -88,6 +89,8 @@ def _shell_results(
 ) -> Spectroscopy:
     """Terms of the open shell and what follows from them, each part as far as it can be had."""
     group, closed = shell.site.symmetry.group, 2 * len(shell.ladder.levels)
+    if (fragment.symbols[shell.site.metal] in F_BLOCK) is not (shell.ladder.angular_momentum == 3):
+        return _nothing("terms, bands within the shell and magnetism: the counted f shell has no functions in this set")
     if shell.n_electrons in (0, closed):
         return replace(
             _nothing("terms, bands within the shell and magnetism: the shell is empty or full"),
@@ -126,7 +129,7 @@ def _shell_results(
     return Spectroscopy(
         constants=constants,
         terms=terms,
-        ground_term=ground.label,
+        ground_term=_ground_labels(terms, ground),
         bands=shell_bands(terms, ground, group, shell.ladder, dipoles_A),
         magnetism=magnetism,
         first_order_g=_first_order_g(shell, constants),
@@ -134,6 +137,17 @@ def _shell_results(
         fit=fit,
         withheld=tuple(withheld),
     )
+
+
+def _ground_labels(terms: Terms, ground: Term) -> str:
+    """Label of the ground term, with those that no calculation could tell from it."""
+    alike = {
+        term.label
+        for term in terms.terms
+        if term.multiplicity == ground.multiplicity
+        and abs(term.energy_per_cm - ground.energy_per_cm) < SAME_TERM_PER_CM
+    }
+    return " or ".join(sorted(alike))
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -188,9 +202,10 @@ def _constants(
         except KeyError:
             row = None
         if options.racah_B_per_cm is not None:
-            B = options.racah_B_per_cm
+            B, factor = options.racah_B_per_cm, 1.0
             C = B * (row.C_per_cm / row.B_per_cm if row else 4.0)
-            sources.append("B as given")
+            ratio = f"C/B of {row.source_key}" if row else "C = 4 B (common practice)"
+            sources.append(f"B as given, {ratio}")
         elif row is not None:
             B, C = factor * row.B_per_cm, factor * row.C_per_cm
             sources.append(row.source_key)

@@ -55,7 +55,8 @@ def settled_spin(
     (metal,), state, count = coordination.metals, electrons.metal_oxidation_total, electrons.d_electrons
     found, withheld = site_ladders(coordination, electrons, bonding, sphere_symmetries(fragment, coordination))
     listed = " or ".join(str(candidate) for candidate in electrons.spin_candidates)
-    if not found or state is None or count is None:
+    ladder = found[0]
+    if ladder is None or state is None or count is None:
         raise ElectronCountError(
             f"unpaired electrons are not given and no ladder decides ({withheld})", mend=f"give their number: {listed}"
         )
@@ -73,7 +74,7 @@ def settled_spin(
         pairing, source = min(pairing, HEAVY_PAIRING_PER_CM), "a 4d or 5d ion, which pairs all but degenerate levels"
     elif any(bond.kind in TRIPLE_KINDS for bond in coordination.bonds):
         pairing, source = OXO_PAIRING * pairing, f"{source} times {OXO_PAIRING:g} for its multiple bond"
-    choice = choose_spin(found[0], count, electrons.spin_candidates, pairing, source)
+    choice = choose_spin(ladder, count, electrons.spin_candidates, pairing, source)
     return replace(
         electrons,
         unpaired_electrons=choice.unpaired_electrons,

@@ -6,7 +6,7 @@ import argparse
 from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any
 
-from ehmo.cli.output import write_whole
+from ehmo.cli.output import same_file, write_whole
 from ehmo.errors import InputError
 
 if TYPE_CHECKING:
@@ -110,6 +110,8 @@ def report_on(
 
     if chosen.json == "":
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
+    if chosen.json not in (None, "-") and same_file(chosen.json, getattr(chosen, "file", None)):
+        raise InputError("--json would overwrite the structure file", place=chosen.json, mend="give another file name")
     options, table = options or calculation_options(chosen), load_parameters(chosen.params)
     reports = [bond_report(fragment, table, options) for fragment in fragments]
     if chosen.json is not None:

@@ -56,3 +56,23 @@ def _give_usual_permissions(path: str) -> None:
     mask = os.umask(0)
     os.umask(mask)
     Path(path).chmod(0o666 & ~mask)
+
+
+def same_file(first: str, second: str | None) -> bool:
+    """Whether two paths name one existing file.
+
+    Parameters
+    ----------
+    first : str
+    second : str or None
+
+    Returns
+    -------
+    same : bool
+    """
+    if second is None:
+        return False
+    try:
+        return Path(first).samefile(second)
+    except (OSError, ValueError):
+        return False

@@ -23,6 +23,9 @@ from ehmo.units import COULOMB_EV_A
 CHARGE_TOLERANCE = 1e-8
 """Largest change of a charge at convergence [e]."""
 
+SHARP_ITERATIONS = 50
+"""Diagonalisations with whole electrons: two and a half times what any species of the tests needs."""
+
 SMEARING_EV = 0.02
 """Width of the Fermi-Dirac filling that takes over where levels cross as the charges settle [eV]."""
 
@@ -81,7 +84,7 @@ def self_consistent_charges(
     interaction_eV : (n_atoms, n_atoms) ndarray
         lambda gamma, see `charge_interaction` [eV].
     max_iterations : int
-        Diagonalisations allowed. If the first half of them does not settle the charges, levels cross at the
+        Diagonalisations allowed. If `SHARP_ITERATIONS` of them do not settle the charges, levels cross at the
         frontier: the rest is spent with the filling smeared by `SMEARING_EV`, which the state tells.
 
     Returns
@@ -94,7 +97,9 @@ def self_consistent_charges(
         If the charges still change by more than `CHARGE_TOLERANCE`.
     """
     run = _ChargeIteration(hamiltonian, overlap, basis, electrons, interaction_eV)
-    state = run.settle(0.0, max_iterations // 2) or run.settle(SMEARING_EV, max_iterations)
+    state = run.settle(0.0, min(SHARP_ITERATIONS, max_iterations))
+    if state is None and max_iterations > SHARP_ITERATIONS:
+        state = run.settle(SMEARING_EV, max_iterations)
     if state is None:
         raise ConvergenceError(
             f"the charges still change by {run.residual:.1e} e after {max_iterations} iterations",

@@ -43,6 +43,7 @@ class Fragment:
 
     def __post_init__(self) -> None:
         place = self.source or "fragment"
+        object.__setattr__(self, "symbols", tuple(self.symbols))
         if not self.symbols:
             raise InputError("there are no atoms", place=place, mend="give at least one metal and its donors")
         for index, symbol in enumerate(self.symbols):
@@ -52,7 +53,14 @@ class Fragment:
                     place=place,
                     mend="use a chemical symbol such as V or O",
                 )
-        positions = frozen_floats(self.positions_A, (len(self.symbols), 3), "positions_A")
+        try:
+            positions = frozen_floats(self.positions_A, (len(self.symbols), 3), "positions_A")
+        except (TypeError, ValueError) as fault:
+            raise InputError(
+                f"the coordinates do not fit {len(self.symbols)} atoms ({fault})",
+                place=place,
+                mend="give three numbers for each atom",
+            ) from None
         bad = np.flatnonzero(~np.isfinite(positions).all(axis=1))
         if bad.size:
             labels = ", ".join(self.labels[i] for i in bad[:5])

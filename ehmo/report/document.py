@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+import re
 from collections.abc import Sequence
 from typing import Any
 
@@ -68,7 +69,15 @@ def json_text(reports: Sequence[BondReport]) -> str:
     """JSON text of one report, or of several as ``{"schema", "reports"}``."""
     documents = [bond_document(report) for report in reports]
     whole = documents[0] if len(documents) == 1 else {"schema": SCHEMA, "reports": documents}
-    return json.dumps(whole, indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    return harmless(json.dumps(whole, indent=1, ensure_ascii=False, allow_nan=False)) + "\n"
+
+
+def harmless(text: str) -> str:
+    """JSON text with every character that steers a terminal written as an escape."""
+    return _STEERING.sub(lambda found: f"\\u{ord(found[0]):04x}", text)
+
+
+_STEERING = re.compile("[\x7f-\x9f\u200e\u200f\u2028-\u202e\u2066-\u2069]")
 
 
 def _fragment(report: BondReport) -> dict[str, Any]:

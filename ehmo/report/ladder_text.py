@@ -152,10 +152,11 @@ def _constants_lines(constants: ShellConstants | None) -> list[str]:
         )
         if value is not None
     ]
+    repulsion = f"repulsion reduced by {constants.repulsion_factor:.2f}, " if constants.repulsion_factor < 1 else ""
     text = (
-        f"Constants of {constants.ion}/cm-1: {', '.join(values) or 'none tabulated'}; repulsion reduced by "
-        f"{constants.repulsion_factor:.2f}, orbital momentum by {constants.momentum_factor:.2f} on the average "
-        f"(metal shares); sources {', '.join(constants.sources) or 'none'}"
+        f"Constants of {constants.ion}/cm-1: {', '.join(values) or 'none tabulated'}; {repulsion}orbital momentum "
+        f"reduced by {constants.momentum_factor:.2f} on the average (metal shares); "
+        f"sources {', '.join(constants.sources) or 'none'}"
     )
     return textwrap.wrap(text, WIDTH, subsequent_indent="  ")
 

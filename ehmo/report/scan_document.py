@@ -13,6 +13,7 @@ import numpy as np
 from ehmo import __version__
 from ehmo.errors import InputError
 from ehmo.records.scan import Scan, ScannedBond, ScannedLevel, ScanPoint
+from ehmo.report.document import harmless
 
 SCAN_SCHEMA = "ehmo scan 1"
 """Name and version of the document; the version rises when a field changes its meaning."""
@@ -20,7 +21,7 @@ SCAN_SCHEMA = "ehmo scan 1"
 
 def scan_text_json(scan: Scan) -> str:
     """JSON text of a scan."""
-    return json.dumps(scan_document(scan), indent=1, ensure_ascii=False, allow_nan=False) + "\n"
+    return harmless(json.dumps(scan_document(scan), indent=1, ensure_ascii=False, allow_nan=False)) + "\n"
 
 
 def scan_document(scan: Scan) -> dict[str, Any]:

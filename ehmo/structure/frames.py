@@ -123,7 +123,8 @@ def _principal_axis(
             return None, order
         along = units @ good[0]
         off_plane = [k for k in tied if abs(along[k]) > 0.1] or tied
-        side = min(off_plane, key=lambda k: (round(bonds[k].length_A / TIE_A), bonds[k].donor))
+        shortest = min(bonds[k].length_A for k in off_plane)
+        side = min(off_plane, key=lambda k: (round((bonds[k].length_A - shortest) / TIE_A), bonds[k].donor))
         return (good[0] if along[side] >= 0 else -good[0]), order
     return None, 1
 
@@ -156,7 +157,19 @@ def _x_axis(
     cosines = directions @ directions.T
     # sigma overlap of dx2-y2 with a donor at polar angle theta: (sqrt 3 / 2) sin^2 theta cos 2 phi
     strength = ((2.0 * cosines**2 - 1.0) ** 2 * sines[equatorial] ** 4).sum(axis=1)
-    best = int(np.flatnonzero(strength > strength.max() - 1e-3)[0])
+    # Equal in strength: multiply bonded donors first, then shorter bonds, then the order of the file.
+    tied = np.flatnonzero(strength > strength.max() - 1e-3)
+    shortest = min(bonds[equatorial[k]].length_A for k in tied)
+    best = int(
+        min(
+            tied,
+            key=lambda k: (
+                not bonds[equatorial[k]].may_be_multiple,
+                round((bonds[equatorial[k]].length_A - shortest) / TIE_A),
+                bonds[equatorial[k]].donor,
+            ),
+        )
+    )
     return directions[best], f"equatorial donor {labels[equatorial[best]]}"
 
 

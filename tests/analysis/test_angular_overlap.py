@@ -24,7 +24,7 @@ def test_ten_dq_of_a_tetrahedron_is_four_ninths_schaffer_jorgensen_1965():
     # (4/3) e_sigma - (16/9) e_pi, with e below t2.
     octahedral = crystal_field_parameters(field_of(OCTAHEDRON, np.full(6, 0.9), np.full(6, 0.2)), "Oh")["10Dq"]
     tetrahedral = crystal_field_parameters(field_of(TETRAHEDRON, np.full(4, 0.9), np.full(4, 0.2)), "Td")["10Dq"]
-    assert tetrahedral == pytest.approx(-4 / 9 * octahedral, rel=1e-12)
+    assert tetrahedral == pytest.approx(4 / 9 * octahedral, rel=1e-12)
 
 
 def test_made_up_parameters_of_an_oxo_ion_come_back():

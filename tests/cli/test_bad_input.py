@@ -319,3 +319,15 @@ def test_doubtful_terminal_oxygen_asks_for_the_charge(refused, ehmo, put):
     ran = ehmo("bond", "a.xyz", "--charge", "-1", "--unpaired", "0")
     assert ran.status == 0
     assert "hydrogens may be missing" in " ".join(ran.out.split())
+
+
+def test_json_never_overwrites_the_structure_file(refused, put, tmp_path):
+    put("2\ncharge=1 unpaired=2\nV 0 0 0\nO 0 0 1.59\n")
+    assert "overwrite" in refused("bond", "a.xyz", "--json", "a.xyz")
+
+
+def test_json_on_a_terminal_shows_c1_controls(ehmo, put):
+    put("2\nt \x9b31m charge=1 unpaired=2\nV 0 0 0\nO 0 0 1.59\n")
+    out = ehmo("bond", "a.xyz", "--json", "-").out
+    assert "\x9b" not in out
+    assert "\\u009b" in out
