@@ -193,6 +193,6 @@ def _spin_warning(fragment: Fragment, coordination: Coordination, bonding: Bondi
     label = atom_label(fragment.symbols[atom], atom)
     mend = "it is shared with the ligands" if atom in coordination.metals else f"check the spin state: {label} has most"
     return (
-        f"only {100 * on_metal:.0f} % of the unpaired density is on the metal, most of the rest in orbital {worst + 1}: "
-        f"{mend}"
+        f"only {100 * on_metal:.0f} % of the unpaired density is on the metal, most of the rest in orbital "
+        f"{worst + 1}: {mend}"
     )
