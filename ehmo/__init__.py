@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
     from ehmo.structure import from_ase, read, read_frames
+    from ehmo.studies.spread import spread_report
 
 __version__ = "0.1.0"
 
@@ -28,6 +29,7 @@ _HOMES = {
     "from_ase": "ehmo.structure",
     "read": "ehmo.structure",
     "read_frames": "ehmo.structure",
+    "spread_report": "ehmo.studies.spread",
 }
 
 __all__ = [
@@ -40,6 +42,7 @@ __all__ = [
     "from_ase",
     "read",
     "read_frames",
+    "spread_report",
 ]
 
 

@@ -254,6 +254,7 @@ def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: 
         allowed,
         ", ".join(letters),
         transfer.strength,
+        (int(source[0]), int(target[0])),
     )
 
 

@@ -66,7 +66,7 @@ def bond_orders(
     overlap_occupied = bonded.overlap_orbitals[:, :n_occupied]
     lowdin = bonded.lowdin_orbitals[:, :n_occupied]
     result: dict[int, BondOrders] = {}
-    for members in _same_layout(basis, metals, donors):
+    for members in same_layout(basis, metals, donors):
         on_metal = _rows(basis, bonded, metals[members])
         on_donor = _rows(basis, bonded, donors[members])
         forward = _between(occupied, overlap_occupied, filling, on_metal, on_donor)
@@ -91,7 +91,7 @@ def bond_orders(
     return tuple(result[index] for index in range(len(bonds)))
 
 
-def _same_layout(basis: Basis, metals: IntArray, donors: IntArray) -> list[list[int]]:
+def same_layout(basis: Basis, metals: IntArray, donors: IntArray) -> list[list[int]]:
     """Indices of the bonds whose atoms carry the same shells, so that each lot is one array operation."""
     lots: dict[tuple[tuple[int, ...], tuple[int, ...]], list[int]] = {}
     for index, (metal, donor) in enumerate(zip(metals, donors, strict=True)):

@@ -157,6 +157,7 @@ def ladders(
             vectors,
             shell.reference_eV,
             selection,
+            tuple(int(k) for k in chosen),
         )
         result.append(ladder)
     return tuple(result)

@@ -107,7 +107,7 @@ def calculate_bonding(
             mend="cut the fragment, or raise the limit with --max-functions",
         )
     plan = orbital_plan(fragment.symbols, table)
-    with _threads_for(len(plan.basis)):
+    with threads_for(len(plan.basis)):
         overlap, hamiltonian = _matrices(plan, fragment, settings)
         spectrum = overlap_spectrum(overlap, plan.basis)
         total = round(float(plan.basis.core_charges.sum())) - fragment.charge
@@ -167,7 +167,8 @@ def _thread_controller() -> ThreadpoolController:
 
 
 @contextmanager
-def _threads_for(n_functions: int) -> Iterator[None]:
+def threads_for(n_functions: int) -> Iterator[None]:
+    """Limit BLAS to one thread where a second one costs more than it brings."""
     if n_functions >= _THREADS_PAY_FROM:
         yield
     else:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
+from ehmo.calculate.health import health_of, health_warnings
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
 from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings, spectrum_warnings
 from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders, sphere_irreps
@@ -112,6 +113,7 @@ def known_report(
     sites = metal_sites(fragment, coordination, electrons, bonding)
     irreps = sphere_irreps(sites, bonding)
     spectrum = spectroscopy(fragment, coordination, sites, irreps, bonding, table, options)
+    health = health_of(coordination, bonding)
     return BondReport(
         fragment=fragment,
         coordination=coordination,
@@ -135,10 +137,13 @@ def known_report(
             bonding.populations,
         ),
         spectroscopy=spectrum,
+        health=health,
         assumptions=assumptions(fragment, coordination, table, electrons),
         warnings=(
+            *fragment.doubts,
             *coordination.warnings,
             *electronic_warnings(fragment, coordination, electrons, bonding),
+            *health_warnings(fragment, coordination, health),
             *site_warnings(fragment, coordination, sites),
             *spectrum_warnings(spectrum),
         ),

@@ -77,6 +77,26 @@ def group_axes_in_frame(symmetry: Symmetry, frame: LocalFrame) -> FloatArray:
     return axes
 
 
+def shell_spans(symmetry: Symmetry, frame: LocalFrame, l: int) -> tuple[FloatArray, ...]:
+    """Functions of a metal's shell, irrep by irrep of its sphere.
+
+    Parameters
+    ----------
+    symmetry : Symmetry
+        Of the sphere.
+    frame : LocalFrame
+    l : int
+        Angular momentum quantum number of the shell.
+
+    Returns
+    -------
+    spans : tuple of (2*l + 1, n) ndarray
+        Orthonormal columns in the local axes.
+    """
+    turn = harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], l)[0]
+    return tuple(turn @ part for part in shell_parts(symmetry.group, l))
+
+
 def metal_sites(
     fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, bonding: Bonding
 ) -> tuple[MetalSite, ...]:

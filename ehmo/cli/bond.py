@@ -4,15 +4,21 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Callable, Sequence
+from functools import partial
 from typing import TYPE_CHECKING, Any
 
+from ehmo.cli.extended import add_crystal_options, clusters, extended_report, refuse_crystal_options
 from ehmo.cli.output import same_file, write_whole
-from ehmo.errors import InputError
+from ehmo.cli.structures import add_structure_options, chosen_fragments, extended_crystals, listing
+from ehmo.errors import EhmoError, InputError
 
 if TYPE_CHECKING:
     from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
+
+USUAL_DRAWS = 64
+"""Said here too, so that reading the command line loads no numerics; a test compares it with the study's own."""
 
 _SWITCH = {"on": True, "off": False}
 
@@ -25,9 +31,24 @@ def add_command(commands: Any) -> None:
         description="Bond report of every metal-donor bond in a structure file.",
     )
     parser.add_argument("file", metavar="FILE", help="XYZ, extended XYZ or CIF file")
+    add_structure_options(parser)
+    add_crystal_options(parser)
     add_calculation_options(parser)
+    add_spread_option(parser)
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
     parser.set_defaults(handler=run)
+
+
+def add_spread_option(parser: argparse.ArgumentParser) -> None:
+    """Option of every command that reports."""
+    parser.add_argument(
+        "--spread",
+        nargs="?",
+        type=int,
+        const=USUAL_DRAWS,
+        metavar="N",
+        help=f"standard deviation of every number over N draws of the parameters (N left out: {USUAL_DRAWS})",
+    )
 
 
 def add_calculation_options(parser: argparse.ArgumentParser) -> None:
@@ -92,10 +113,16 @@ def calculation_options(chosen: argparse.Namespace) -> Options:
 
 
 def run(chosen: argparse.Namespace) -> str:
-    """Report of each structure in the file."""
-    from ehmo.structure import read_frames
-
-    return report_on(read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes), chosen)
+    """Report of each structure in the file, or the list of them."""
+    if chosen.list:
+        return listing(chosen)
+    extended = extended_crystals(chosen)
+    if extended and chosen.cluster is not None:
+        return report_on(clusters(extended, chosen), chosen)
+    if extended:
+        return extended_report(extended, chosen, calculation_options(chosen))
+    refuse_crystal_options(chosen)
+    return report_on(chosen_fragments(chosen), chosen)
 
 
 def report_on(
@@ -113,15 +140,34 @@ def report_on(
     if chosen.json not in (None, "-") and same_file(chosen.json, getattr(chosen, "file", None)):
         raise InputError("--json would overwrite the structure file", place=chosen.json, mend="give another file name")
     options, table = options or calculation_options(chosen), load_parameters(chosen.params)
-    reports = [bond_report(fragment, table, options) for fragment in fragments]
+    make: Callable[..., BondReport] = bond_report
+    if chosen.spread is not None:
+        from ehmo.studies.spread import spread_report
+
+        make = partial(spread_report, draws=chosen.spread)
+    reports: list[BondReport] = []
+    refused: dict[str, EhmoError] = {}
+    for fragment in fragments:
+        try:
+            reports.append(make(fragment, table, options))
+        except EhmoError as error:
+            # One molecule of a crystal, such as a cation without its hydrogens, must not hide the others.
+            if fragment.crystal is None or len(fragments) == 1:
+                raise
+            refused[fragment.source] = error
+    if not reports:
+        raise next(iter(refused.values()))
     if chosen.json is not None:
         from ehmo.report.document import json_text
 
-        document = json_text(reports)
+        document = json_text(reports, {source: str(error) for source, error in refused.items()})
         if chosen.json == "-":
             return document
         write_whole(chosen.json, document)
     from ehmo.report.text import bond_text
 
     rule = "\n" + "=" * 100 + "\n\n"
-    return rule.join((text_of or bond_text)(report) for report in reports)
+    parts = [(text_of or bond_text)(report) for report in reports]
+    if refused:
+        parts.append("Not calculated:\n" + "".join(f"  {error}\n" for error in refused.values()))
+    return rule.join(parts)

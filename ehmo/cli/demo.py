@@ -25,6 +25,7 @@ def add_command(commands: Any) -> None:
         description="Runs the main job on a built-in invented complex.",
     )
     bond.add_calculation_options(parser)
+    bond.add_spread_option(parser)
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead")
     parser.set_defaults(handler=run)
 

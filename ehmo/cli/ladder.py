@@ -7,6 +7,7 @@ from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 from ehmo.cli import bond
+from ehmo.cli.structures import add_structure_options, chosen_fragments, listing
 from ehmo.errors import InputError
 
 if TYPE_CHECKING:
@@ -21,7 +22,9 @@ def add_command(commands: Any) -> None:
         description="Ladder, ligand-field parameters, terms, bands and magnetism of each structure in a file.",
     )
     parser.add_argument("file", metavar="FILE", help="XYZ, extended XYZ or CIF file")
+    add_structure_options(parser)
     bond.add_calculation_options(parser)
+    bond.add_spread_option(parser)
     spectrum = parser.add_argument_group("spectrum")
     spectrum.add_argument(
         "--bands",
@@ -35,8 +38,8 @@ def add_command(commands: Any) -> None:
 
 def run(chosen: argparse.Namespace) -> str:
     """Ladder text of each structure in the file; the JSON is that of the whole report."""
-    from ehmo.structure import read_frames
-
+    if chosen.list:
+        return listing(chosen)
     bands = _bands(chosen.bands)
     options = replace(
         bond.calculation_options(chosen),
@@ -44,16 +47,18 @@ def run(chosen: argparse.Namespace) -> str:
         observed_terms=tuple(term for term, _ in bands),
         racah_B_per_cm=chosen.racah_b,
     )
-    fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
-    return bond.report_on(fragments, chosen, options, _text)
+    return bond.report_on(chosen_fragments(chosen), chosen, options, _text)
 
 
 def _text(report: BondReport) -> str:
     from ehmo.report.cautions import CAUTIONS
     from ehmo.report.ladder_text import ladder_text
+    from ehmo.report.spread_text import draw_lines
     from ehmo.report.text import heading_lines, sentence_lines
 
     parts = ["\n".join(heading_lines(report)), ladder_text(report).rstrip()]
+    if report.spread is not None:
+        parts.append("\n".join(draw_lines(report)))
     parts.append("\n".join(sentence_lines("Assumed", report.assumptions)))
     if report.warnings:
         parts.append("\n".join(sentence_lines("To doubt", report.warnings)))

@@ -119,13 +119,13 @@ def _assemble(
         segments, powers = table_positions(distances[chunk])
         harmonics = real_harmonics(vectors[chunk] / distances[chunk, None], group.structure.l_max)
         angular = harmonics[:, group.structure.angular_column]
-        channels = _channels(group, chunk, segments, powers)
+        channels = channel_integrals(group, chunk, segments, powers)
         targets = flat_targets(plan, group, chunk)
-        _put(overlap, targets, _blocks(group.structure, channels, angular))
+        _put(overlap, targets, rotated_blocks(group.structure, channels, angular))
         if scale is not None and scaled is not None:
             excess = distances[chunk] * BOHR_A - scale.pair_radii(plan.first[chunk], plan.second[chunk])
             factors = scale.factors(group.structure.channel_m, excess)
-            _put(scaled, targets, _blocks(group.structure, channels * factors, angular))
+            _put(scaled, targets, rotated_blocks(group.structure, channels * factors, angular))
     return overlap, scaled
 
 
@@ -140,20 +140,20 @@ def channel_blocks(
     group: PairGroup, chunk: slice, segments: IntArray, powers: FloatArray, harmonics: FloatArray
 ) -> FloatArray:
     """Blocks (n_pairs, n_first * n_second) of some pairs from table positions and harmonics of their directions."""
-    channels = _channels(group, chunk, segments, powers)
-    return _blocks(group.structure, channels, harmonics[:, group.structure.angular_column])
+    channels = channel_integrals(group, chunk, segments, powers)
+    return rotated_blocks(group.structure, channels, harmonics[:, group.structure.angular_column])
 
 
-def _channels(group: PairGroup, chunk: slice, segments: IntArray, powers: FloatArray) -> FloatArray:
-    """Two-centre integrals (n_pairs, n_channels) out of the tables."""
+def channel_integrals(group: PairGroup, chunk: slice, segments: IntArray, powers: FloatArray) -> FloatArray:
+    """Two-centre integrals (n_pairs, n_channels) of some pairs out of the tables."""
     kind = group.kind[chunk.start - group.pairs.start : chunk.stop - group.pairs.start]
     pieces = group.coefficients[kind, np.minimum(segments, group.coefficients.shape[1] - 1)]
     channels: FloatArray = (powers[:, None, :] @ pieces)[:, 0]
     return channels
 
 
-def _blocks(structure: BlockStructure, channels: FloatArray, angular: FloatArray) -> FloatArray:
-    """Blocks of shape (n_pairs, n_first * n_second)."""
+def rotated_blocks(structure: BlockStructure, channels: FloatArray, angular: FloatArray) -> FloatArray:
+    """Blocks (n_pairs, n_first * n_second) from channel integrals and harmonics of the directions."""
     terms = (channels @ structure.mixing)[:, structure.radial_column] * angular
     blocks: FloatArray = terms @ structure.coupling
     return blocks

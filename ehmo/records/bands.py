@@ -30,6 +30,8 @@ class Band:
         Axes along which it is allowed, such as ``x, y``.
     oscillator_strength : float or None
         None where nothing but vibrations or spin-orbit coupling lends it intensity.
+    orbitals : tuple of (int, int) or None
+        For charge transfer: first orbital of the set that gives and of the one that takes the electron.
     """
 
     kind: BandKind
@@ -41,6 +43,7 @@ class Band:
     dipole_allowed: bool
     polarisation: str
     oscillator_strength: float | None
+    orbitals: tuple[int, int] | None = None
 
 
 @dataclass(frozen=True, slots=True)

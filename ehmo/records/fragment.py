@@ -9,6 +9,7 @@ import numpy as np
 from ehmo.conventions import ELEMENT_SYMBOLS, atom_label
 from ehmo.errors import InputError
 from ehmo.records.arrays import FloatArray, frozen_floats
+from ehmo.records.crystal_origin import CrystalOrigin
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -31,6 +32,12 @@ class Fragment:
         Where the fragment comes from, as people name it: file and frame or block.
     notes : tuple of str
         What the reader did to the atoms, one sentence each.
+    doubts : tuple of str
+        What the reader leaves open that may change the result, one sentence each.
+    charge_reason : str
+        Where a charge comes from that the source does not state itself, such as the balance of a crystal.
+    crystal : CrystalOrigin or None
+        Labels, copies and symmetry in the crystal the fragment was cut from.
     """
 
     symbols: tuple[str, ...]
@@ -40,6 +47,9 @@ class Fragment:
     title: str = ""
     source: str = ""
     notes: tuple[str, ...] = ()
+    doubts: tuple[str, ...] = ()
+    charge_reason: str = ""
+    crystal: CrystalOrigin | None = None
 
     def __post_init__(self) -> None:
         place = self.source or "fragment"

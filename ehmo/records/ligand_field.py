@@ -65,6 +65,8 @@ class Ladder:
         Diagonal element of the shell in the calculation's own Hamiltonian [eV].
     selection : str
         How the orbitals were chosen, in words.
+    orbitals : tuple of int
+        Molecular orbitals behind the effective matrix, with several metals those of all.
     """
 
     metal: int
@@ -74,6 +76,7 @@ class Ladder:
     vectors: FloatArray
     reference_eV: float
     selection: str
+    orbitals: tuple[int, ...] = ()
 
     def __post_init__(self) -> None:
         n = len(self.levels)

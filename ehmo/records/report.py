@@ -17,8 +17,10 @@ from ehmo.records.coordination import Coordination, ElectronAssignment, MetalDon
 from ehmo.records.electronic import ElectronicState
 from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
+from ehmo.records.health import Health
 from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.site import MetalSite, Spectroscopy
+from ehmo.records.spread import LevelSpread, Spread
 from ehmo.records.symmetry import OrbitalIrreps, Symmetry
 from ehmo.records.table import aligned
 from ehmo.records.wording import BOND_NUMBERS, bond_rows, electrons_in_words
@@ -108,10 +110,14 @@ class BondReport:
         Reading of each multiply bonded donor.
     spectroscopy : Spectroscopy
         Terms, bands and magnetism.
+    health : Health
+        Whether the numbers can mean what they should.
     assumptions : tuple of str
         What was taken for granted, one sentence each.
     warnings : tuple of str
         What to doubt, one sentence each.
+    spread : Spread or None
+        Standard deviations over draws of the parameters, if they were asked for.
     """
 
     fragment: Fragment
@@ -129,8 +135,10 @@ class BondReport:
     formal_orders: tuple[FormalOrder | None, ...]
     reactivity: tuple[DonorReactivity, ...]
     spectroscopy: Spectroscopy
+    health: Health
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
+    spread: Spread | None = None
 
     def bonds(self) -> Iterator[tuple[MetalDonorBond, BondOrders]]:
         """Each metal-donor bond with its orders."""
@@ -159,6 +167,10 @@ class BondReport:
         """Site of one metal."""
         return next(site for site in self.sites if site.metal == metal)
 
+    def level_spreads(self, site: MetalSite) -> tuple[LevelSpread, ...]:
+        """Standard deviations of the levels of a metal's ladder; empty where there are none."""
+        return () if self.spread is None else self.spread.levels[self.sites.index(site)]
+
     def orders_of(self, metal: int) -> tuple[BondOrders, ...]:
         """Orders of the bonds of one metal, in the order of `coordination.bonds_of`."""
         return tuple(orders for bond, orders in self.bonds() if bond.metal == metal)
@@ -182,4 +194,5 @@ class BondReport:
         return f"{fragment.formula}, {electrons_in_words(fragment)}, {model}"
 
     def _rows(self) -> list[list[str]]:
-        return bond_rows(self.coordination.bonds, self.orders, self.formal_orders, self.fragment.labels)
+        spreads = None if self.spread is None else self.spread.bonds
+        return bond_rows(self.coordination.bonds, self.orders, self.formal_orders, self.fragment.labels, spreads)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from typing import Final
 
@@ -10,6 +11,7 @@ from ehmo.records.bonding import BondChannel, BondOrders
 from ehmo.records.coordination import MetalDonorBond
 from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
+from ehmo.records.spread import BondSpread
 
 FULL_CHANNEL: Final = 0.60
 PARTIAL_CHANNEL: Final = 0.20
@@ -64,11 +66,30 @@ def channel_weights(channels: Sequence[BondChannel]) -> str:
     return "  ".join(groups)
 
 
+def with_deviation(value: str, deviation: float | None, digits: int) -> str:
+    """Number with its standard deviation, where there is one.
+
+    Examples
+    --------
+    >>> with_deviation("2.30", 0.1, 2), with_deviation("2.30", None, 2)
+    ('2.30 ± 0.10', '2.30')
+    """
+    return value if deviation is None or math.isnan(deviation) else f"{value} ± {deviation:.{digits}f}"
+
+
+def _orders_in_words(order: BondOrders, spread: BondSpread | None) -> list[str]:
+    """Overlap population, Mayer and Wiberg order, with their standard deviations if there are any."""
+    values = (order.overlap_population, order.mayer, order.wiberg)
+    deviations = (None,) * 3 if spread is None else (spread.overlap_population, spread.mayer, spread.wiberg)
+    return [with_deviation(f"{value:.2f}", sd, 2) for value, sd in zip(values, deviations, strict=True)]
+
+
 def bond_rows(
     bonds: Sequence[MetalDonorBond],
     orders: Sequence[BondOrders],
     formal_orders: Sequence[FormalOrder | None],
     labels: Sequence[str],
+    spreads: Sequence[BondSpread] | None = None,
 ) -> list[list[str]]:
     """Heading and one row of cells for each bond.
 
@@ -81,21 +102,22 @@ def bond_rows(
         One per bond.
     labels : sequence of str
         Label of each atom.
+    spreads : sequence of BondSpread, optional
+        Standard deviations, one per bond.
 
     Returns
     -------
     rows : list of list of str
     """
     rows = [["bond", "kind", "length/Å", "overlap pop.", "Mayer", "Wiberg", "formal", "channels and their weights"]]
-    for bond, order, formal in zip(bonds, orders, formal_orders, strict=True):
+    every = [None] * len(bonds) if spreads is None else spreads
+    for bond, order, formal, spread in zip(bonds, orders, formal_orders, every, strict=True):
         rows.append(
             [
                 f"{labels[bond.metal]}-{labels[bond.donor]}",
                 bond.kind,
                 f"{bond.length_A:.3f}",
-                f"{order.overlap_population:.2f}",
-                f"{order.mayer:.2f}",
-                f"{order.wiberg:.2f}",
+                *_orders_in_words(order, spread),
                 "?" if formal is None else str(formal.order),
                 channel_weights(order.channels),
             ]

@@ -5,7 +5,7 @@ from __future__ import annotations
 import json
 import math
 import re
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from ehmo import __version__
@@ -15,6 +15,7 @@ from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.report import BondReport
 from ehmo.report.cautions import CAUTIONS
 from ehmo.report.ladder_document import ladder_part, spectroscopy_part, symmetry_part
+from ehmo.report.spread_document import atom_spread, bond_spread, health_part, orbital_spread, spread_part
 
 SCHEMA = "ehmo bond report 1"
 """Name and version of the document; the version rises when a field changes its meaning."""
@@ -33,7 +34,7 @@ def bond_document(report: BondReport) -> dict[str, Any]:
     document : dict
         Ready for `json.dumps`.
     """
-    plain: dict[str, Any] = _plain(
+    plain: dict[str, Any] = plain_data(
         {
             "schema": SCHEMA,
             "program_version": __version__,
@@ -47,7 +48,7 @@ def bond_document(report: BondReport) -> dict[str, Any]:
             "ligands": _ligands(report),
             "bonds": [_bond(report, place, bond, orders) for place, (bond, orders) in enumerate(report.bonds())],
             "ladder": [ladder_part(report, site) for site in report.sites],
-            **spectroscopy_part(report.spectroscopy),
+            **spectroscopy_part(report),
             "local_frames": [
                 {
                     "metal": frame.metal,
@@ -57,6 +58,8 @@ def bond_document(report: BondReport) -> dict[str, Any]:
                 }
                 for frame in report.coordination.frames
             ],
+            "health": health_part(report),
+            "spread": spread_part(report.spread),
             "assumptions": list(report.assumptions),
             "warnings": list(report.warnings),
             "cautions": list(CAUTIONS),
@@ -65,10 +68,25 @@ def bond_document(report: BondReport) -> dict[str, Any]:
     return plain
 
 
-def json_text(reports: Sequence[BondReport]) -> str:
-    """JSON text of one report, or of several as ``{"schema", "reports"}``."""
+def json_text(reports: Sequence[BondReport], refused: Mapping[str, str] | None = None) -> str:
+    """JSON text of one report, or of several as ``{"schema", "reports"}``, with what could not be calculated.
+
+    Parameters
+    ----------
+    reports : sequence of BondReport
+    refused : mapping of str to str, optional
+        Reason by source, for molecules of a crystal without a report.
+
+    Returns
+    -------
+    text : str
+    """
     documents = [bond_document(report) for report in reports]
-    whole = documents[0] if len(documents) == 1 else {"schema": SCHEMA, "reports": documents}
+    whole: dict[str, Any] = {"schema": SCHEMA, "reports": documents}
+    if refused:
+        whole["not_reported"] = [{"source": source, "reason": reason} for source, reason in refused.items()]
+    elif len(documents) == 1:
+        whole = documents[0]
     return harmless(json.dumps(whole, indent=1, ensure_ascii=False, allow_nan=False)) + "\n"
 
 
@@ -92,9 +110,16 @@ def _fragment(report: BondReport) -> dict[str, Any]:
         "unpaired_reason": report.electrons.unpaired_reason,
         "metal_oxidation_total": report.electrons.metal_oxidation_total,
         "d_electrons": report.electrons.d_electrons,
+        "multiplicity": None if fragment.crystal is None else fragment.crystal.multiplicity,
         "atoms": [
-            {"label": label, "symbol": symbol, "position_A": position}
-            for label, symbol, position in zip(fragment.labels, fragment.symbols, fragment.positions_A, strict=True)
+            {"label": label, "symbol": symbol, "position_A": position, "site_label": site}
+            for label, symbol, position, site in zip(
+                fragment.labels,
+                fragment.symbols,
+                fragment.positions_A,
+                [None] * len(fragment) if fragment.crystal is None else fragment.crystal.labels,
+                strict=True,
+            )
         ],
     }
 
@@ -137,6 +162,7 @@ def _orbitals(report: BondReport) -> list[dict[str, Any]]:
             "donor_share": composition[k, 1],
             "other_share": composition[k, 2],
             "metal_donor_overlap_population_per_two_electrons": overlap[k],
+            "spread": orbital_spread(report, k),
         }
         for k in range(len(composition))
     ]
@@ -152,6 +178,7 @@ def _atoms(report: BondReport) -> list[dict[str, Any]]:
             "gross_population": report.basis.core_charges[k] - populations.charges[k],
             "net_population": net[k],
             "spin_population": populations.spin[k],
+            "spread": atom_spread(report, k),
         }
         for k, label in enumerate(report.fragment.labels)
     ]
@@ -173,12 +200,14 @@ def _ligands(report: BondReport) -> list[dict[str, Any]]:
 
 def _bond(report: BondReport, place: int, bond: MetalDonorBond, orders: BondOrders) -> dict[str, Any]:
     formal = report.formal_orders[place]
+    crystal = report.fragment.crystal
     return {
         "metal": bond.metal,
         "donor": bond.donor,
         "label": report.bond_label(bond),
         "kind": str(bond.kind),
         "length_A": bond.length_A,
+        "multiplicity": None if crystal is None else crystal.bond_multiplicity(bond.metal, bond.donor),
         "bond_valence": bond.bond_valence,
         "overlap_population": orders.overlap_population,
         "mayer": orders.mayer,
@@ -198,6 +227,7 @@ def _bond(report: BondReport, place: int, bond: MetalDonorBond, orders: BondOrde
             }
             for channel in orders.channels
         ],
+        "spread": bond_spread(report, place),
     }
 
 
@@ -211,14 +241,14 @@ def _reactivity(reading: DonorReactivity) -> dict[str, Any]:
     }
 
 
-def _plain(value: Any) -> Any:
+def plain_data(value: Any) -> Any:
     """Arrays to lists, NaN to None, numbers to Python's own."""
     if isinstance(value, dict):
-        return {key: _plain(item) for key, item in value.items()}
+        return {key: plain_data(item) for key, item in value.items()}
     if isinstance(value, (list, tuple)):
-        return [_plain(item) for item in value]
+        return [plain_data(item) for item in value]
     if hasattr(value, "tolist"):
-        return _plain(value.tolist())
+        return plain_data(value.tolist())
     if isinstance(value, float) and not math.isfinite(value):
         return None
     return value

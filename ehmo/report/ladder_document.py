@@ -7,8 +7,9 @@ from typing import Any
 from ehmo.records.bands import BandFit
 from ehmo.records.multiplets import GTensor, Magnetism, Terms
 from ehmo.records.report import BondReport
-from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
+from ehmo.records.site import MetalSite, ShellConstants
 from ehmo.records.symmetry import Symmetry
+from ehmo.report.spread_document import band_spread, level_spread
 from ehmo.units import PER_CM_PER_EV
 
 
@@ -80,8 +81,9 @@ def ladder_part(report: BondReport, site: MetalSite) -> dict[str, Any]:
                 "overlap_population": level.overlap_population,
                 "inverted": level.inverted,
                 "partner_share": level.partner_share,
+                "spread": level_spread(report, site, place),
             }
-            for level in ladder.levels
+            for place, level in enumerate(ladder.levels)
         ],
     }
     if parameters is not None:
@@ -101,8 +103,9 @@ def ladder_part(report: BondReport, site: MetalSite) -> dict[str, Any]:
     return part
 
 
-def spectroscopy_part(spectrum: Spectroscopy) -> dict[str, Any]:
+def spectroscopy_part(report: BondReport) -> dict[str, Any]:
     """Ground term, terms, bands, g tensor and magnetism."""
+    spectrum = report.spectroscopy
     magnetism = spectrum.magnetism
     return {
         "ground_term": spectrum.ground_term or None,
@@ -119,8 +122,9 @@ def spectroscopy_part(spectrum: Spectroscopy) -> dict[str, Any]:
                 "dipole_allowed": band.dipole_allowed,
                 "polarisation": band.polarisation or None,
                 "oscillator_strength": band.oscillator_strength,
+                "spread": band_spread(report, place),
             }
-            for band in spectrum.bands
+            for place, band in enumerate(spectrum.bands)
         ],
         "g_tensor": None if magnetism is None else _g_tensor(magnetism.g_tensor),
         "magnetism": None if magnetism is None else _magnetism(magnetism, spectrum.first_order_g),

@@ -13,6 +13,7 @@ from ehmo.records.multiplets import GTensor, Magnetism
 from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
 from ehmo.records.table import aligned
+from ehmo.records.wording import with_deviation
 from ehmo.units import PER_CM_PER_EV
 
 WIDTH = 100
@@ -44,14 +45,20 @@ def ladder_lines(report: BondReport, site: MetalSite) -> list[str]:
         ["level", "mostly", "energy/eV", "above lowest/cm-1", "electrons", "metal/%", "donors/%", "overlap pop.", ""]
     ]
     lowest = ladder.levels[0].energy_eV
-    for level in reversed(ladder.levels):
+    spreads = report.level_spreads(site)
+    for place, level in reversed(list(enumerate(ladder.levels))):
+        own = spreads[place] if spreads else None
         label = "-" if level.orbital is None else orbital_irrep(report, level.orbital)
         rows.append(
             [
                 label,
                 f"{level.function} {100 * level.function_share:.0f} %",
-                f"{level.energy_eV:.2f}",
-                f"{(level.energy_eV - lowest) * PER_CM_PER_EV:.0f}",
+                with_deviation(f"{level.energy_eV:.2f}", None if own is None else own.energy_eV, 2),
+                with_deviation(
+                    f"{(level.energy_eV - lowest) * PER_CM_PER_EV:.0f}",
+                    own.above_lowest_per_cm if own is not None and place else None,
+                    0,
+                ),
                 f"{round(level.electrons, 2):g}",
                 f"{100 * level.metal_share:.0f}",
                 f"{100 * level.donor_share:.0f}",
@@ -129,7 +136,7 @@ def ladder_text(report: BondReport) -> str:
         *(ladder_lines(report, site) for site in report.sites),
         _constants_lines(spectrum.constants),
         _terms_lines(spectrum),
-        _band_lines(spectrum.bands),
+        _band_lines(spectrum.bands, None if report.spread is None else report.spread.bands_per_cm),
         _magnetism_lines(spectrum),
         _fit_lines(spectrum),
         _withheld_lines(report),
@@ -188,19 +195,20 @@ def _terms_lines(spectrum: Spectroscopy) -> list[str]:
     return [*lines, *aligned(rows, numeric=(1, 4), indent="  "), *more]
 
 
-def _band_lines(bands: Sequence[Band]) -> list[str]:
+def _band_lines(bands: Sequence[Band], deviations: Sequence[float | None] | None) -> list[str]:
     if not bands:
         return []
     rows = [["band/cm-1", "kind", "upper term", "transition", "factor", "spin", "dipole", "strength"]]
-    shown = [band for band in bands if band.wavenumber_per_cm < _SPECTRUM_PER_CM]
+    every = zip(bands, deviations or [None] * len(bands), strict=True)
+    shown = [(band, deviation) for band, deviation in every if band.wavenumber_per_cm < _SPECTRUM_PER_CM]
     # Spin-allowed bands first in line when there is no room for all.
-    within = [band for band in shown if band.kind != "charge transfer"]
-    kept = sorted(within, key=lambda band: (not band.spin_allowed, band.wavenumber_per_cm))[:_LISTED_BANDS]
-    kept.sort(key=lambda band: band.wavenumber_per_cm)
-    kept += [band for band in shown if band.kind == "charge transfer"][: _LISTED_BANDS // 2]
+    within = [pair for pair in shown if pair[0].kind != "charge transfer"]
+    kept = sorted(within, key=lambda pair: (not pair[0].spin_allowed, pair[0].wavenumber_per_cm))[:_LISTED_BANDS]
+    kept.sort(key=lambda pair: pair[0].wavenumber_per_cm)
+    kept += [pair for pair in shown if pair[0].kind == "charge transfer"][: _LISTED_BANDS // 2]
     rows += [
         [
-            f"{band.wavenumber_per_cm:.0f}",
+            with_deviation(f"{band.wavenumber_per_cm:.0f}", deviation, 0),
             band.kind,
             band.upper_term or "-",
             band.transition,
@@ -209,7 +217,7 @@ def _band_lines(bands: Sequence[Band]) -> list[str]:
             band.polarisation or ("allowed" if band.dipole_allowed else "forbidden"),
             _strength(band),
         ]
-        for band in kept
+        for band, deviation in kept
     ]
     rest = len(bands) - len(kept)
     more = [f"  and {rest} more, in the JSON"] if rest else []

@@ -16,9 +16,17 @@ from ehmo.records.reactivity import REACTIVITY_LIMITS, DonorReactivity
 from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite
 from ehmo.records.table import aligned
-from ehmo.records.wording import BOND_NUMBERS, PARTIAL_CHANNEL, bond_rows, channels_in_words, electrons_in_words
+from ehmo.records.wording import (
+    BOND_NUMBERS,
+    PARTIAL_CHANNEL,
+    bond_rows,
+    channels_in_words,
+    electrons_in_words,
+    with_deviation,
+)
 from ehmo.report.cautions import CAUTIONS
 from ehmo.report.ladder_text import ladder_lines, orbital_irrep, short_spectrum_lines
+from ehmo.report.spread_text import spread_lines
 from ehmo.structure.elements import F_BLOCK, with_state
 
 WIDTH = 100
@@ -47,6 +55,7 @@ def bond_text(report: BondReport) -> str:
         _frontier(report),
         *(ladder_lines(report, site) for site in report.sites),
         short_spectrum_lines(report),
+        spread_lines(report),
         sentence_lines("Assumed", report.assumptions),
         sentence_lines("To doubt", report.warnings or ("nothing in particular, beyond the cautions below",)),
         sentence_lines("Cautions", CAUTIONS),
@@ -116,7 +125,11 @@ def _bonds_of(report: BondReport, metal: int) -> list[str]:
         for bond, order in zip(report.coordination.bonds, report.formal_orders, strict=True)
         if bond.metal == metal
     ]
-    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), formal, labels)
+    spreads = None
+    if report.spread is not None:
+        pairs = zip(report.coordination.bonds, report.spread.bonds, strict=True)
+        spreads = [spread for bond, spread in pairs if bond.metal == metal]
+    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), formal, labels, spreads)
     return [f"Bonds of {labels[metal]}", *aligned(rows, numeric=BOND_NUMBERS, indent="  ")]
 
 
@@ -190,7 +203,9 @@ def _charges(report: BondReport) -> list[str]:
     listed = sorted({*report.coordination.metals, *(bond.donor for bond in report.coordination.bonds)})
     rows = [["atom", "charge/e", *(["unpaired/e"] if unpaired else [])]]
     for atom in listed:
-        row = [report.fragment.labels[atom], f"{report.populations.charges[atom]:+.2f}"]
+        deviation = None if report.spread is None else float(report.spread.charges[atom])
+        charge = with_deviation(f"{report.populations.charges[atom]:+.2f}", deviation, 2)
+        row = [report.fragment.labels[atom], charge]
         rows.append([*row, f"{report.populations.spin[atom]:.2f}"] if unpaired else row)
     rest = np.delete(np.arange(len(report.fragment)), listed)
     if len(rest):

@@ -3,57 +3,38 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator
-from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
-from ehmo.conventions import ELEMENT_SYMBOLS
-from ehmo.errors import InputError, LimitError
-from ehmo.records.arrays import FloatArray, IntArray
-from ehmo.records.fragment import Fragment
+from ehmo.errors import EhmoError, InputError
+from ehmo.records.arrays import FloatArray
+from ehmo.records.fragment import hill_formula
+from ehmo.structure.cif_cell import ordered_cell
+from ehmo.structure.cif_sites import formula_counts, read_sites
 from ehmo.structure.cif_symmetry import item_text, symmetry_operations
 from ehmo.structure.files import shown
-from ehmo.structure.periodic import PeriodicCell, molecules_with_metals
+from ehmo.structure.periodic import PeriodicCell, StatedFacts
 
 if TYPE_CHECKING:
     import gemmi
 
-SAME_SITE_A: Final = 0.1
-"""Images of a site closer than this are one atom on a special position [angstrom]."""
-
-_SITE_TAGS = (
-    "fract_x",
-    "fract_y",
-    "fract_z",
-    "?label",
-    "?type_symbol",
-    "?occupancy",
-    "?disorder_group",
-    "?calc_flag",
-)
 _CELL_TAGS = ("length_a", "length_b", "length_c", "angle_alpha", "angle_beta", "angle_gamma")
+_TITLE_TAGS: Final = ("_chemical_name_common", "_chemical_name_systematic", "_chemical_name_mineral")
+_MASK_TAGS: Final = ("_platon_squeeze_void_nr", "_smtbx_masks_void_nr", "_platon_squeeze_details")
 
 
-@dataclass(frozen=True, slots=True)
-class Site:
-    """One listed atom site: label, element, fractional coordinates."""
+def cif_cells(text: str, place: str, max_atoms: int) -> tuple[PeriodicCell, ...]:
+    """Ordered cell of every data block with atoms.
 
-    label: str
-    symbol: str
-    fractional: tuple[float, float, float]
-
-
-def cif_fragments(text: str, place: str, max_atoms: int) -> tuple[Fragment, ...]:
-    """Molecules with metals, whole among the listed sites, of every data block with atoms.
+    A faulty block is left out and named in the notes of the others, if there are any.
 
     Raises
     ------
     InputError
-        If the text is no CIF, or a block has faulty or disordered sites, or none of its molecules is whole.
+        If the text is no CIF, or no block can be used.
     LimitError
-        If the cell holds more than `max_atoms` atoms.
+        If a cell holds more than `max_atoms` atoms.
     """
     import gemmi
 
@@ -66,92 +47,58 @@ def cif_fragments(text: str, place: str, max_atoms: int) -> tuple[Fragment, ...]
         raise InputError(
             "no atom sites with fractional coordinates", place=place, mend="give a CIF of a crystal structure"
         )
-    several = len(blocks) > 1
-    return tuple(
-        fragment
-        for block in blocks
-        for fragment in _block_fragments(
-            block, f"{place}, block {shown(block.name, 30)}" if several else place, max_atoms
-        )
+    cells: list[PeriodicCell] = []
+    faults: list[EhmoError] = []
+    for block in blocks:
+        where = f"{place}, block {shown(block.name, 30)}" if len(blocks) > 1 else place
+        try:
+            cells.append(_cell(block, where, max_atoms, [f"Block left out: {fault}." for fault in faults]))
+        except EhmoError as fault:
+            faults.append(fault)
+    if not cells:
+        raise faults[0]
+    return tuple(cells)
+
+
+def _cell(block: gemmi.cif.Block, place: str, max_atoms: int, notes: list[str]) -> PeriodicCell:
+    lattice = _lattice(block, place)
+    sites = read_sites(block, place, notes, max_atoms)
+    rotations, translations = symmetry_operations(block, place, notes)
+    title = next((value for tag in _TITLE_TAGS if (value := item_text(block, tag))), block.name)
+    riding = sum(site.symbol == "H" and site.calculated for site in sites)
+    if riding:
+        notes.append(f"{riding} hydrogen sites have calculated (riding) positions.")
+    return ordered_cell(sites, rotations, translations, lattice, _facts(block), place, title.strip(), notes, max_atoms)
+
+
+def _facts(block: gemmi.cif.Block) -> StatedFacts:
+    import gemmi
+
+    units = gemmi.cif.as_number(block.find_value("_cell_formula_units_Z") or "?")
+    return StatedFacts(
+        formula=formula_counts(item_text(block, "_chemical_formula_sum")),
+        formula_units=int(units) if np.isfinite(units) and 1 <= units < 1e4 and units == int(units) else None,
+        moieties=_moieties(item_text(block, "_chemical_formula_moiety")),
+        masked=any(block.find_values(tag) or block.find_value(tag) for tag in _MASK_TAGS),
     )
 
 
-def _block_fragments(block: gemmi.cif.Block, place: str, max_atoms: int) -> tuple[Fragment, ...]:
-    notes: list[str] = []
-    sites = _sites(block, place, notes)
-    title = next(
-        (value for tag in ("_chemical_name_common", "_chemical_name_systematic") if (value := item_text(block, tag))),
-        block.name,
-    )
-    rotations, translations = symmetry_operations(block, place)
-    images = _images(sites, rotations, translations, _lattice(block, place), place, max_atoms)
-    return molecules_with_metals(images.cell(place, title, tuple(notes)))
+def _moieties(text: str) -> dict[str, int]:
+    """Charged parts of a moiety formula.
 
-
-def _sites(block: gemmi.cif.Block, place: str, notes: list[str]) -> list[Site]:
-    """Sites that are atoms; every fault of the list is collected into one message."""
-    allowed = _formula_elements(item_text(block, "_chemical_formula_sum"))
-    sites: list[Site] = []
-    faults: dict[str, list[str]] = {}
-    skipped: list[str] = []
-    for label, kind, xyz, occupancy, group, flag in _rows(block):
-        if flag == "dum" or occupancy == 0.0:
-            skipped.append(label)
-            continue
-        symbol = _element(kind, label, allowed)
-        if symbol is None:
-            faults.setdefault("unknown element", []).append(label)
-        if not np.isfinite(xyz).all() or max(map(abs, xyz)) > 1e3:
-            faults.setdefault("no usable coordinates", []).append(label)
-        if not occupancy > 0.999 or group not in ("", ".", "?", "0"):
-            faults.setdefault("partially occupied or disordered", []).append(label)
-        if symbol is not None:
-            sites.append(Site(label, symbol, xyz))
-    if faults:
-        parts = (
-            f"{fault}: {', '.join(shown(label, 12) for label in labels[:6])}" + " ..." * (len(labels) > 6)
-            for fault, labels in faults.items()
-        )
-        raise InputError("; ".join(parts), place=place, mend="keep one ordered alternative and name its elements")
-    if not sites:
-        raise InputError("no atoms among the sites", place=place, mend="give a CIF with atom sites")
-    if skipped:
-        notes.append(f"Dummy or empty sites left out: {', '.join(shown(label, 12) for label in skipped[:6])}.")
-    return sites
-
-
-def _rows(
-    block: gemmi.cif.Block,
-) -> Iterator[tuple[str, str, tuple[float, float, float], float, str, str]]:
-    from gemmi import cif
-
-    for number, row in enumerate(block.find("_atom_site_", list(_SITE_TAGS)), start=1):
-        text = [cif.as_string(row[k]) if row.has(k) and not cif.is_null(row[k]) else "" for k in range(8)]
-        x, y, z = (cif.as_number(row[k]) for k in range(3))
-        occupancy = cif.as_number(row[5]) if text[5] else 1.0
-        yield text[3] or f"site {number}", text[4], (x, y, z), occupancy, text[6], text[7]
-
-
-def _formula_elements(formula: str) -> frozenset[str]:
-    found = re.findall(r"([A-Z][a-z]?)[\d.]*(?=\s|$|[A-Z(])", formula)
-    return frozenset("H" if symbol == "D" else symbol for symbol in found if symbol in {*ELEMENT_SYMBOLS, "D"})
-
-
-def _element(kind: str, label: str, allowed: frozenset[str]) -> str | None:
-    """Element by the type symbol, else by the label: `CA1` is carbon where the formula has no calcium.
-
-    Minerals' files call the oxygen of water ``Wat``.
+    Examples
+    --------
+    >>> _moieties("C10 H20 N4 O V 2+, 2(Cl O4 -), H2 O")
+    {'C10H20N4OV': 2, 'ClO4': -1}
     """
-    for word in (kind, label):
-        letters = (re.match(r"[A-Za-z]+", word) or [""])[0]
-        if letters.lower() == "wat" and "W" not in allowed:
-            return "O"
-        for size in (2, 1):
-            symbol = letters[:size].capitalize()
-            symbol = "H" if symbol == "D" else symbol
-            if symbol in ELEMENT_SYMBOLS and (not allowed or symbol in allowed):
-                return symbol
-    return None
+    found: dict[str, int] = {}
+    for part in text.split(","):
+        match = re.fullmatch(r"\s*\d*\.?\d*\s*\(?([A-Za-z0-9. ]*?)\s+(\d*)([+-])\s*\)?\s*", part)
+        counts = formula_counts(match[1]) if match else {}
+        if match and counts and all(n == int(n) and n < 1000 for n in counts.values()):
+            symbols = tuple(symbol for symbol, n in counts.items() for _ in range(int(n)))
+            found[hill_formula(symbols)] = int(match[2] or 1) * (1 if match[3] == "+" else -1)
+    return found
 
 
 def _lattice(block: gemmi.cif.Block, place: str) -> FloatArray:
@@ -162,74 +109,3 @@ def _lattice(block: gemmi.cif.Block, place: str) -> FloatArray:
     if not usable or max(numbers) > 1e4:
         raise InputError("no usable unit cell", place=place, mend="give the six _cell_length_ and _cell_angle_ items")
     return np.array(gemmi.UnitCell(*numbers).orth.mat.tolist()).T
-
-
-@dataclass(slots=True)
-class _Images:
-    """Atoms of the full cell while sites are being expanded."""
-
-    lattice: FloatArray
-    symbols: list[str] = field(default_factory=list)
-    labels: list[str] = field(default_factory=list)
-    listed: list[bool] = field(default_factory=list)
-    fractional: list[FloatArray] = field(default_factory=list)
-
-    def add(self, site: Site, images: FloatArray) -> None:
-        """Add the images of a site, the listed one first, each place once."""
-        fresh = images[_first_of_each(images, self.lattice)]
-        twin = self._twin(site.symbol, fresh[0])
-        if twin is not None:
-            # The site repeats an atom already made, as in files that list the whole cell and the symmetry.
-            self.listed[twin], self.labels[twin], self.fractional[twin] = True, site.label, fresh[0]
-            return
-        self.symbols += [site.symbol] * len(fresh)
-        self.labels += [site.label] * len(fresh)
-        self.listed += [True] + [False] * (len(fresh) - 1)
-        self.fractional += list(fresh)
-
-    def _twin(self, symbol: str, fractional: FloatArray) -> int | None:
-        same = [k for k, other in enumerate(self.symbols) if other == symbol]
-        if not same:
-            return None
-        gaps = _distances(fractional[None], np.array([self.fractional[k] for k in same]), self.lattice)[0]
-        nearest = int(gaps.argmin())
-        return same[nearest] if gaps[nearest] < SAME_SITE_A else None
-
-    def cell(self, place: str, title: str, notes: tuple[str, ...]) -> PeriodicCell:
-        """Hand the cell on as ASE atoms."""
-        from ase import Atoms
-
-        atoms = Atoms(self.symbols, positions=np.array(self.fractional) @ self.lattice, cell=self.lattice, pbc=True)
-        return PeriodicCell(atoms, np.array(self.listed), tuple(self.labels), place, title, notes)
-
-
-def _images(
-    sites: list[Site],
-    rotations: FloatArray,
-    translations: FloatArray,
-    lattice: FloatArray,
-    place: str,
-    max_atoms: int,
-) -> _Images:
-    """Full cell: the listed atoms where the file puts them, their images anywhere in the lattice."""
-    found = _Images(lattice)
-    for site in sites:
-        images = rotations @ np.array(site.fractional) + translations
-        images[0] = site.fractional
-        found.add(site, images)
-        if len(found.symbols) > max_atoms:
-            raise LimitError(
-                f"the cell holds more than {max_atoms} atoms", place=place, mend="raise max_atoms (--max-atoms)"
-            )
-    return found
-
-
-def _distances(a: FloatArray, b: FloatArray, lattice: FloatArray) -> FloatArray:
-    gap = a[:, None, :] - b[None, :, :]
-    return np.asarray(np.linalg.norm((gap - np.round(gap)) @ lattice, axis=2))
-
-
-def _first_of_each(images: FloatArray, lattice: FloatArray) -> IntArray:
-    """Pick the images that repeat no earlier one, lattice translations aside."""
-    same = np.triu(_distances(images, images, lattice) < SAME_SITE_A, k=1)
-    return np.flatnonzero(~same.any(axis=0))

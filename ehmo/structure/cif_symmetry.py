@@ -40,8 +40,10 @@ def item_text(block: gemmi.cif.Block, tag: str) -> str:
     return "" if value is None or cif.is_null(value) else cif.as_string(value)
 
 
-def symmetry_operations(block: gemmi.cif.Block, place: str) -> tuple[FloatArray, FloatArray]:
+def symmetry_operations(block: gemmi.cif.Block, place: str, notes: list[str]) -> tuple[FloatArray, FloatArray]:
     """Rotations and translations; listed operations win over names, whose settings are often unsaid.
+
+    `notes` takes a sentence where operations come from a name, or do not fit it.
 
     Raises
     ------
@@ -65,13 +67,36 @@ def symmetry_operations(block: gemmi.cif.Block, place: str) -> tuple[FloatArray,
                     place=place,
                     mend="list each operation once",
                 )
+            _compare_with_name(block, len(operations), notes)
             return _as_arrays(operations)
+    named = _named_group(block)
+    if named is not None:
+        tag, name, group = named
+        if name.replace(" ", "") not in ("P1", "1"):
+            what = "number" if name.isdigit() else "symbol"
+            setting = "" if "Hall" in tag else ", in its standard setting" if what == "number" else ""
+            notes.append(f"Symmetry operations from the space-group {what} {shown(name, 20)}{setting}.")
+        return _as_arrays(list(group))
+    raise InputError("no symmetry operations and no known space group", place=place, mend="list the operations, or P 1")
+
+
+def _named_group(block: gemmi.cif.Block) -> tuple[str, str, gemmi.GroupOps] | None:
+    """Tag, name and operations of the first symbol or number that is known."""
     for tag in _NAME_TAGS:
         name = re.sub(r"[()]", "", item_text(block, tag)).strip()
         group = _space_group(name, "Hall" in tag)
         if group is not None:
-            return _as_arrays(list(group))
-    raise InputError("no symmetry operations and no known space group", place=place, mend="list the operations, or P 1")
+            return tag, name, group
+    return None
+
+
+def _compare_with_name(block: gemmi.cif.Block, listed: int, notes: list[str]) -> None:
+    named = _named_group(block)
+    if named is not None and len(list(named[2])) != listed:
+        notes.append(
+            f"The file lists {listed} symmetry operations, {shown(named[1], 20)} has {len(list(named[2]))}: "
+            "the listed ones were used."
+        )
 
 
 def _space_group(name: str, hall: bool) -> gemmi.GroupOps | None:

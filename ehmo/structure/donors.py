@@ -20,6 +20,10 @@ HYDROXO_VALENCE: Final = 1.15
 AQUA_VALENCE: Final = 0.65
 """Bare terminal oxygen below this may be an aqua ligand without its hydrogens [valence units]."""
 
+BRIDGING_VALENCE: Final = 0.25
+"""A weaker second bond makes no bridge of an oxo ligand: that of V=O to the next V has 0.1-0.2 (common practice)
+[valence units]."""
+
 SUPEROXO_A: Final = 1.38
 """O-O is shorter in superoxo (1.28-1.35), longer in peroxo ligands (1.40-1.52) (common practice) [angstrom]."""
 
@@ -64,8 +68,16 @@ class DonorSite:
 
     @property
     def bridging(self) -> bool:
-        """Whether two or more metals share the donor."""
-        return len(self.graph.metal_neighbours[self.atom]) > 1
+        """Whether metals share the donor; weak contacts of one multiply bonded to another metal do not count."""
+        held = self.graph.metal_neighbours[self.atom]
+        if len(held) < 2:
+            return False
+        graph, donor = self.graph, self.atom
+        found = [bond_valence(graph.symbols[m], graph.symbols[donor], graph.distance_A(m, donor)) for m in held]
+        if None in found:
+            return True
+        *_, second, first = sorted(valence for valence in found if valence is not None)
+        return first < HYDROXO_VALENCE or second >= BRIDGING_VALENCE
 
     def length_A(self, other: int) -> float:
         """Distance from the donor to another atom [angstrom]."""

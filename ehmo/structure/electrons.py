@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Final
 
 from ehmo.errors import ElectronCountError
@@ -81,6 +81,17 @@ def assign_electrons(
     )
 
 
+def charge_guess(fragment: Fragment, coordination: Coordination) -> int:
+    """Charge by ligand charges and bond valences alone, whatever the fragment states.
+
+    Raises
+    ------
+    ElectronCountError
+        If they do not decide.
+    """
+    return _charge(replace(fragment, charge=None), coordination, None, None, fragment.source or "fragment").value
+
+
 def _electrons(fragment: Fragment, charge: int) -> int:
     return sum(atomic_number(symbol) for symbol in fragment.symbols) - charge
 
@@ -91,7 +102,7 @@ def _charge(
     if given is not None:
         return _Choice(given, "given")
     if fragment.charge is not None:
-        return _Choice(fragment.charge, "given in the file")
+        return _Choice(fragment.charge, fragment.charge_reason or "given in the file")
     doubtful = [
         bond for bond in coordination.bonds if bond.kind in (DonorKind.HYDROXO_DOUBTFUL, DonorKind.AQUA_DOUBTFUL)
     ]
@@ -99,7 +110,7 @@ def _charge(
         raise ElectronCountError(
             f"no charge is given and {fragment.labels[doubtful[0].donor]} may lack hydrogen ({doubtful[0].kind.value})",
             place=place,
-            mend="add the hydrogens or give the charge",
+            mend="add the hydrogens (--hydrogens place) or give the charge",
         )
     unknown = [ligand for ligand in coordination.ligands if ligand.charge is None]
     if unknown:
@@ -107,7 +118,7 @@ def _charge(
             f"no charge is given and that of the ligand {unknown[0].formula} cannot be told"
             f" ({unknown[0].charge_reason})",
             place=place,
-            mend="give the charge",
+            mend="give the charge" + ", or add them (--hydrogens place)" * ("hydrogens" in unknown[0].charge_reason),
         )
     return _guessed_charge(fragment, coordination, _stated_unpaired(fragment, unpaired), place)
 
@@ -247,6 +258,9 @@ def _guessed_unpaired(
 
 def _all_empty(fragment: Fragment, coordination: Coordination, charge: int) -> bool:
     """Whether the charge leaves no metal d or f electrons: main-group metals, or every metal in its highest state."""
+    valence = [valence_d_or_f_electrons(fragment.symbols[metal], 0) for metal in coordination.metals]
+    if None not in valence and _oxidation_total(coordination, charge) == sum(count or 0 for count in valence):
+        return True
     highest = 0
     for metal in coordination.metals:
         if fragment.symbols[metal] not in TRANSITION_METALS:

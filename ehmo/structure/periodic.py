@@ -1,19 +1,27 @@
-"""Whole molecules out of a periodic cell."""
+"""A crystal cell, its bond graph across the cell faces, and the pieces that hang together."""
 
 from __future__ import annotations
 
 from collections import deque
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
 from numpy.typing import NDArray
 
 from ehmo.errors import InputError
-from ehmo.records.fragment import Fragment
+from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.structure.files import shown
-from ehmo.structure.graph import BOND_FACTOR, MAX_COORDINATE_A, OVERLAP_A, ElementReach
+from ehmo.structure.graph import (
+    BOND_FACTOR,
+    MAX_COORDINATE_A,
+    OVERLAP_A,
+    OVERLAP_FRACTION,
+    SHADOW_MARGIN,
+    ElementReach,
+)
 
 if TYPE_CHECKING:
     from ase import Atoms
@@ -24,12 +32,60 @@ MAX_ATOMS_PER_A3: Final = 0.4
 MIN_CELL_HEIGHT_A: Final = 1.5
 """Cells flatter than this are taken for mistakes [angstrom]."""
 
-Neighbours = list[list[tuple[int, tuple[int, int, int]]]]
+MAX_CROWD: Final = 40
+"""Atoms in one cube of 2 A; three alternatives of a methyl group are 12."""
+
+_CUBE_A: Final = 2.0
+
+SAME_PLACE_A: Final = 0.1
+"""Images of a site closer than this are one atom on a special position [angstrom]."""
+
+_ION_REACH: Final = 0.7
+"""Bare ions have no bonds; their neighbours matter only up to this fraction of their radius, for overlaps."""
+
+Shift = tuple[int, int, int]
 
 
 @dataclass(frozen=True, slots=True)
+class LeftOut:
+    """A site that the ordered model lacks; `count` is in the unit cell, weighted with the occupancy.
+
+    `lone_ion` says whether it is a monatomic ion that counts beside the ones in the model.
+    """
+
+    label: str
+    symbol: str
+    count: float
+    lone_ion: bool
+
+
+@dataclass(frozen=True, slots=True)
+class StatedFacts:
+    """What a file says of the whole crystal.
+
+    Attributes
+    ----------
+    formula : mapping of str to float
+        Atoms of one formula unit; empty where the file gives none.
+    formula_units : int or None
+        In the unit cell.
+    moieties : mapping of str to int
+        Charge by Hill formula, as the author states it.
+    left_out : tuple of LeftOut
+    masked : bool
+        Whether solvent was taken out of the electron density instead of being refined.
+    """
+
+    formula: Mapping[str, float] = field(default_factory=dict)
+    formula_units: int | None = None
+    moieties: Mapping[str, int] = field(default_factory=dict)
+    left_out: tuple[LeftOut, ...] = ()
+    masked: bool = False
+
+
+@dataclass(frozen=True)
 class PeriodicCell:
-    """Full contents of a cell.
+    """Full contents of a cell, one ordered alternative.
 
     Attributes
     ----------
@@ -45,6 +101,24 @@ class PeriodicCell:
         Title as found.
     notes : tuple of str
         What the reader did.
+    sites : (n_atoms,) ndarray of int
+        Number of the site of each atom; by default each atom is its own.
+    weights : (n_atoms,) ndarray
+        Share of cells in which the atom or one of its kind is present.
+    rotations : (n_operations, 3, 3) ndarray
+        Space-group operations on fractional coordinates, the identity first.
+    translations : (n_operations, 3) ndarray
+    copies : (n_atoms,) ndarray of int
+        Operation that makes each atom from its site.
+    occupancies : (n_atoms,) ndarray
+        As the file gives them.
+    oxidation : mapping of int to float
+        Oxidation number by site, where the file labels it.
+    mixed : mapping of int to str
+        Sites that two elements share, in words, by site.
+    attached : mapping of int to int
+        Number of hydrogens at a site, where the file states it.
+    facts : StatedFacts
     """
 
     atoms: Atoms
@@ -53,6 +127,47 @@ class PeriodicCell:
     place: str
     title: str
     notes: tuple[str, ...] = ()
+    sites: IntArray = field(default_factory=lambda: np.empty(0, np.intp))
+    weights: FloatArray = field(default_factory=lambda: np.empty(0))
+    rotations: FloatArray = field(default_factory=lambda: np.eye(3)[None])
+    translations: FloatArray = field(default_factory=lambda: np.zeros((1, 3)))
+    copies: IntArray = field(default_factory=lambda: np.empty(0, np.intp))
+    occupancies: FloatArray = field(default_factory=lambda: np.empty(0))
+    oxidation: Mapping[int, float] = field(default_factory=dict)
+    mixed: Mapping[int, str] = field(default_factory=dict)
+    attached: Mapping[int, int] = field(default_factory=dict)
+    facts: StatedFacts = field(default_factory=StatedFacts)
+
+    def __post_init__(self) -> None:
+        n = len(self.labels)
+        if not len(self.sites):
+            object.__setattr__(self, "sites", np.arange(n))
+        if not len(self.weights):
+            object.__setattr__(self, "weights", np.ones(n))
+        if not len(self.copies):
+            object.__setattr__(self, "copies", np.zeros(n, np.intp))
+        if not len(self.occupancies):
+            object.__setattr__(self, "occupancies", np.ones(n))
+
+    @cached_property
+    def symbols(self) -> tuple[str, ...]:
+        """Element of each atom."""
+        return tuple(self.atoms.get_chemical_symbols())
+
+    @cached_property
+    def lattice(self) -> FloatArray:
+        """Rows are the lattice vectors [angstrom]."""
+        return np.array(self.atoms.cell, dtype=float)
+
+    @cached_property
+    def positions(self) -> FloatArray:
+        """Cartesian coordinates [angstrom]."""
+        return np.array(self.atoms.positions, dtype=float)
+
+    @cached_property
+    def fractional(self) -> FloatArray:
+        """Fractional coordinates."""
+        return np.asarray(np.linalg.solve(self.lattice.T, self.positions.T).T)
 
 
 def check_cell(cell: PeriodicCell) -> None:
@@ -63,10 +178,10 @@ def check_cell(cell: PeriodicCell) -> None:
     InputError
         If a coordinate, a cell height or the volume per atom is impossible.
     """
-    lattice = np.asarray(cell.atoms.cell)
+    lattice = cell.lattice
     if not (np.abs(lattice) < MAX_COORDINATE_A).all():
         raise InputError("impossible cell", place=cell.place, mend="correct the cell lengths and angles")
-    far = ~(np.abs(cell.atoms.positions) < MAX_COORDINATE_A).all(axis=1)
+    far = ~(np.abs(cell.positions) < MAX_COORDINATE_A).all(axis=1)
     if far.any():
         label = shown(cell.labels[int(far.argmax())], 20)
         raise InputError(
@@ -78,118 +193,167 @@ def check_cell(cell: PeriodicCell) -> None:
     faces = [float(np.linalg.norm(np.cross(lattice[k - 2], lattice[k - 1]))) for k in range(3)]
     if not np.isfinite(volume) or volume / max(*faces, 1e-9) < MIN_CELL_HEIGHT_A:
         raise InputError("impossible cell", place=cell.place, mend="correct the cell lengths and angles")
-    if len(cell.atoms) / volume > MAX_ATOMS_PER_A3:
+    crowd = _largest_crowd(cell)
+    if len(cell.labels) / volume > MAX_ATOMS_PER_A3 or crowd > MAX_CROWD:
         raise InputError(
-            f"{len(cell.atoms)} atoms do not fit into a cell of {volume:.1f} A^3",
+            f"{len(cell.labels)} atoms do not fit into a cell of {volume:.1f} A^3"
+            if crowd <= MAX_CROWD
+            else f"{crowd} atoms fall into one cube of {_CUBE_A:g} A",
             place=cell.place,
             mend="correct the cell, or the symmetry operations",
         )
 
 
-def molecules_with_metals(cell: PeriodicCell) -> tuple[Fragment, ...]:
-    """One fragment for each metal-containing molecule whose atoms the file lists.
+def _largest_crowd(cell: PeriodicCell) -> int:
+    """Atoms in the fullest box of about `_CUBE_A`; pairs are only listed once it is known to be small."""
+    if len(cell.labels) <= MAX_CROWD:
+        return 0
+    boxes = np.maximum(np.linalg.norm(cell.lattice, axis=1) / _CUBE_A, 1.0).astype(int)
+    places = np.floor((cell.fractional % 1.0) * boxes).astype(int)
+    return int(np.unique(places, axis=0, return_counts=True)[1].max())
 
-    Atoms are moved by lattice translations only, so that a molecule cut by a cell face is put together.
+
+@dataclass(frozen=True)
+class PeriodicGraph:
+    """Bonds of a crystal.
+
+    Attributes
+    ----------
+    cell : PeriodicCell
+    reach : ElementReach
+    neighbours : list of dict
+        Of each atom: bonded atom and its lattice shift, with the distance [angstrom].
+    """
+
+    cell: PeriodicCell
+    reach: ElementReach
+    neighbours: list[dict[tuple[int, Shift], float]]
+
+    def vector(self, atom: int, neighbour: tuple[int, Shift]) -> FloatArray:
+        """From an atom to a neighbour [angstrom]."""
+        other, shift = neighbour
+        cell = self.cell
+        return np.asarray(cell.positions[other] + np.array(shift) @ cell.lattice - cell.positions[atom])
+
+    def metals_at(self, atom: int) -> list[tuple[int, Shift]]:
+        """Metals bonded to an atom."""
+        return [key for key in self.neighbours[atom] if self.reach.is_metal[key[0]]]
+
+
+def periodic_graph(cell: PeriodicCell) -> PeriodicGraph:
+    """Bond graph of a crystal, by the rules of `bond_graph`.
 
     Raises
     ------
     InputError
-        If there is no metal, atoms overlap, or no molecule is whole; it says whether the structure is polymeric
-        or the molecule needs atoms that symmetry makes.
+        If atoms overlap.
     """
-    check_cell(cell)
-    symbols = tuple(cell.atoms.get_chemical_symbols())
-    reach = ElementReach.of(symbols)
-    starts = np.flatnonzero(reach.is_metal & cell.listed).tolist()
-    if not starts:
-        raise InputError("no metal", place=cell.place, mend="give a compound of a metal")
-    neighbours = _periodic_neighbours(cell, reach)
-    found: dict[frozenset[int], dict[int, tuple[int, int, int]]] = {}
-    faults: list[str] = []
-    seen: set[int] = set()
-    for start in starts:
-        if start in seen:
-            continue
-        shifts, endless = _walk(start, neighbours)
-        seen.update(shifts)
-        fault = _fault(cell, start, shifts, endless)
-        if fault:
-            faults.append(fault)
-        else:
-            found[frozenset(shifts)] = shifts
-    if not found:
-        raise InputError("; ".join(faults[:3]), place=cell.place, mend="cut out one whole molecule and give it as XYZ")
-    left_out = int(cell.listed.sum()) - sum(map(len, found))
-    return tuple(_fragment(cell, symbols, shifts, left_out, faults) for shifts in found.values())
+    reach = ElementReach.of(cell.symbols)
+    i, j, distances, shifts = close_pairs(cell.atoms, reach)
+    _check_overlap(cell, reach, i, j, distances)
+    bonded = reach.bonded(i, j, distances)
+    i, j, distances, shifts = i[bonded], j[bonded], distances[bonded], shifts[bonded]
+    neighbours: list[dict[tuple[int, Shift], float]] = [{} for _ in cell.labels]
+    for a, b, d, shift in zip(i.tolist(), j.tolist(), distances.tolist(), map(tuple, shifts.tolist()), strict=True):
+        neighbours[a][b, shift] = d
+    far = (reach.ratios(i, j, distances) > 1.0) & (reach.is_metal[i] != reach.is_metal[j])
+    if far.any():
+        found = zip(i[far].tolist(), j[far].tolist(), map(tuple, shifts[far].tolist()), strict=True)
+        contacts = [(a, b, s) for a, b, s in found if _only_contact(a, b, s, neighbours, reach)]
+        for a, b, shift in contacts:
+            del neighbours[a][b, shift]
+    return PeriodicGraph(cell, reach, neighbours)
 
 
-def _periodic_neighbours(cell: PeriodicCell, reach: ElementReach) -> Neighbours:
+def close_pairs(atoms: Atoms, reach: ElementReach) -> tuple[IntArray, IntArray, FloatArray, IntArray]:
+    """Pairs within bonding reach, both ways, with distances and lattice shifts."""
     from ase.neighborlist import neighbor_list
 
-    i, j, distances, shifts = neighbor_list("ijdS", cell.atoms, (BOND_FACTOR * reach.radii_A).tolist())
-    close = np.flatnonzero(distances < OVERLAP_A)
-    if close.size:
-        a, b = (shown(cell.labels[k[close[0]]], 20) for k in (i, j))
-        raise InputError(
-            f"{a} and {b} overlap at {distances[close[0]]:.3f} A",
-            place=cell.place,
-            mend="disordered or duplicate sites: keep one alternative",
-        )
-    bonded = reach.bonded(i, j, distances)
-    neighbours: Neighbours = [[] for _ in cell.labels]
-    for a, b, shift in zip(i[bonded].tolist(), j[bonded].tolist(), shifts[bonded].tolist(), strict=True):
-        neighbours[a].append((b, tuple(shift)))
-    return neighbours
+    radii = np.where(reach.is_bare_ion, _ION_REACH, BOND_FACTOR) * reach.radii_A
+    return neighbor_list("ijdS", atoms, radii.tolist())
 
 
-def _walk(start: int, neighbours: Neighbours) -> tuple[dict[int, tuple[int, int, int]], bool]:
-    """Lattice shift of each atom of a molecule, and whether some atom is reached at two shifts: a polymer."""
-    shifts = {start: (0, 0, 0)}
+def _check_overlap(cell: PeriodicCell, reach: ElementReach, i: IntArray, j: IntArray, distances: FloatArray) -> None:
+    light = reach.is_hydrogen[i] | reach.is_hydrogen[j]
+    allowed = np.where(
+        light, OVERLAP_A, np.maximum(OVERLAP_A, OVERLAP_FRACTION * (reach.radii_A[i] + reach.radii_A[j]))
+    )
+    if not (distances < allowed).any():
+        return
+    k = int(np.argmin(distances - allowed))
+    a, b = (shown(cell.labels[atom], 20) for atom in (i[k], j[k]))
+    same = cell.sites[i[k]] == cell.sites[j[k]]
+    raise InputError(
+        f"symmetry images of {a} overlap at {distances[k]:.3f} A"
+        if same
+        else f"{a} and {b} overlap at {distances[k]:.3f} A",
+        place=cell.place,
+        mend="check the coordinates and the symmetry operations"
+        if same
+        else "disordered or duplicate sites: keep one alternative, or give them disorder groups and occupancies",
+    )
+
+
+def _only_contact(
+    a: int, b: int, shift: Shift, neighbours: list[dict[tuple[int, Shift], float]], reach: ElementReach
+) -> bool:
+    """Whether a metal-donor contact is owed to a closer donor next to it; see `bond_graph`."""
+    metal, far, move = (a, b, shift) if reach.is_metal[a] else (b, a, (-shift[0], -shift[1], -shift[2]))
+    ratio = neighbours[metal][far, move] / (reach.radii_A[metal] + reach.radii_A[far])
+    for c, step in neighbours[far]:
+        if reach.is_metal[c]:
+            continue
+        there = neighbours[metal].get((c, _added(move, step)))
+        if there is not None and there / (reach.radii_A[metal] + reach.radii_A[c]) < ratio - SHADOW_MARGIN:
+            return True
+    return False
+
+
+def _added(a: Shift, b: Shift) -> Shift:
+    return a[0] + b[0], a[1] + b[1], a[2] + b[2]
+
+
+@dataclass(frozen=True)
+class Piece:
+    """Atoms that hang together: lattice shift of each, and the number of directions in which the bonds run on."""
+
+    shifts: dict[int, Shift]
+    dimension: int
+
+    @cached_property
+    def atoms(self) -> list[int]:
+        """Atoms in ascending order."""
+        return sorted(self.shifts)
+
+
+def pieces(graph: PeriodicGraph) -> list[Piece]:
+    """Connected pieces of a crystal, listed atoms as starting points first."""
+    seen: set[int] = set()
+    found = []
+    order = np.argsort(~graph.cell.listed, kind="stable").tolist()
+    for start in order:
+        if start not in seen:
+            piece = _walk(start, graph.neighbours)
+            seen.update(piece.shifts)
+            found.append(piece)
+    return found
+
+
+def _walk(start: int, neighbours: list[dict[tuple[int, Shift], float]]) -> Piece:
+    """Breadth-first walk; an atom reached at two shifts closes a loop through the lattice."""
+    shifts: dict[int, Shift] = {start: (0, 0, 0)}
+    loops: set[Shift] = set()
     queue = deque([start])
-    endless = False
     while queue:
         atom = queue.popleft()
         here = shifts[atom]
         for other, step in neighbours[atom]:
-            there = (here[0] + step[0], here[1] + step[1], here[2] + step[2])
-            if other not in shifts:
+            there = _added(here, step)
+            known = shifts.get(other)
+            if known is None:
                 shifts[other] = there
                 queue.append(other)
-            elif shifts[other] != there:
-                endless = True
-    return shifts, endless
-
-
-def _fault(cell: PeriodicCell, start: int, shifts: dict[int, tuple[int, int, int]], endless: bool) -> str:
-    label = shown(cell.labels[start], 20)
-    if endless:
-        return f"polymeric: the bonds from {label} run on without end"
-    made = sum(not cell.listed[atom] for atom in shifts)
-    if made:
-        return f"the molecule of {label} is not listed whole: symmetry makes {made} of its {len(shifts)} atoms"
-    return ""
-
-
-def _fragment(
-    cell: PeriodicCell,
-    symbols: Sequence[str],
-    shifts: dict[int, tuple[int, int, int]],
-    left_out: int,
-    faults: list[str],
-) -> Fragment:
-    order = sorted(shifts)
-    moves = np.array([shifts[atom] for atom in order])
-    notes = list(cell.notes)
-    if moves.any():
-        notes.append("Atoms were moved by lattice translations to put the molecule together.")
-    if left_out:
-        notes.append(f"{left_out} listed atoms outside the molecules with a metal were left out.")
-    notes += [f"Left out: {fault}." for fault in faults]
-    first = next(cell.labels[atom] for atom in order if shifts[atom] == (0, 0, 0))
-    return Fragment(
-        symbols=tuple(symbols[atom] for atom in order),
-        positions_A=cell.atoms.positions[order] + moves @ np.asarray(cell.atoms.cell),
-        title=cell.title,
-        source=f"{cell.place}, molecule of {shown(first, 20)}",
-        notes=tuple(notes),
-    )
+            elif known != there:
+                loops.add((there[0] - known[0], there[1] - known[1], there[2] - known[2]))
+    dimension = int(np.linalg.matrix_rank(np.array(sorted(loops)))) if loops else 0
+    return Piece(shifts, dimension)

@@ -14,30 +14,40 @@ from ehmo.errors import InputError, LimitError
 from ehmo.records.fragment import Fragment
 from ehmo.structure.electron_keys import StatedElectrons, comment_pairs, stated_electrons
 from ehmo.structure.files import MAX_ATOMS, MAX_BYTES, read_text, shown
-from ehmo.structure.periodic import PeriodicCell, molecules_with_metals
 from ehmo.structure.xyz import XyzFrame, extended_atoms, plain_fragment, split_frames
 
 if TYPE_CHECKING:
     from ase import Atoms
 
+    from ehmo.structure.contents import Cations, Hydrogens
+
 ASE_FORMATS: Final = frozenset({"aims", "gen", "mol", "proteindatabank", "sdf", "turbomole", "vasp", "xsf"})
 """Text formats left to ASE; others are refused, since some of its readers run or unpickle what they read."""
 
+CIF_SUFFIXES: Final = (".cif", ".mcif")
 
-def read(path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes: int = MAX_BYTES) -> Fragment:
+
+def read(
+    path: str | os.PathLike[str],
+    *,
+    hydrogens: Hydrogens = "file",
+    cations: Cations = "none",
+    max_atoms: int = MAX_ATOMS,
+    max_bytes: int = MAX_BYTES,
+) -> Fragment:
     """Fragment of a file that holds one structure.
 
     Parameters
     ----------
     path : str or path-like
         XYZ, extended XYZ or CIF, told by suffix or content; else a text format that ASE knows.
-    max_atoms, max_bytes : int
-        Limits, as for `read_frames`.
+    hydrogens, cations, max_atoms, max_bytes
+        As for `read_frames`.
 
     Returns
     -------
     fragment : Fragment
-        Charge and unpaired electrons are None where the file does not state them.
+        Charge and unpaired electrons are None where the file does not tell them.
 
     Raises
     ------
@@ -46,7 +56,7 @@ def read(path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes:
     LimitError
         If the file is over a limit.
     """
-    fragments = read_frames(path, max_atoms=max_atoms, max_bytes=max_bytes)
+    fragments = read_frames(path, hydrogens=hydrogens, cations=cations, max_atoms=max_atoms, max_bytes=max_bytes)
     if len(fragments) > 1:
         raise InputError(
             f"{len(fragments)} structures where one was asked for",
@@ -92,7 +102,12 @@ def from_ase(atoms: Atoms, charge: int | None = None, unpaired_electrons: int | 
 
 
 def read_frames(
-    path: str | os.PathLike[str], *, max_atoms: int = MAX_ATOMS, max_bytes: int = MAX_BYTES
+    path: str | os.PathLike[str],
+    *,
+    hydrogens: Hydrogens = "file",
+    cations: Cations = "none",
+    max_atoms: int = MAX_ATOMS,
+    max_bytes: int = MAX_BYTES,
 ) -> tuple[Fragment, ...]:
     """Fragments of a file.
 
@@ -100,6 +115,10 @@ def read_frames(
     ----------
     path : str or path-like
         XYZ, extended XYZ or CIF, told by suffix or content; else a text format that ASE knows.
+    hydrogens : {"file", "place", "lengthen"}
+        As in the file, with missing ones placed at neutron lengths, or with X-H bonds lengthened to them.
+    cations : {"none", "basis"}
+        Whether counter-ions of groups 1 and 2 join the molecules of a CIF.
     max_atoms : int
         Largest number of atoms in a frame or a crystal cell.
     max_bytes : int
@@ -108,8 +127,8 @@ def read_frames(
     Returns
     -------
     fragments : tuple of Fragment
-        One per frame of XYZ, one per whole molecule with a metal of a crystal. Charge and unpaired electrons
-        are None where the file does not state them.
+        One per frame of XYZ, one per distinct molecule with a metal of a crystal. Charge and unpaired electrons
+        are None where neither the file states them nor a crystal balances them.
 
     Raises
     ------
@@ -123,18 +142,40 @@ def read_frames(
     place = shown(path, 200)
     kind = _kind(path, text)
     if kind == "cif":
-        from ehmo.structure.cif import cif_fragments
-
-        return cif_fragments(text, place, max_atoms)
+        return _cif_fragments(text, place, max_atoms, hydrogens, cations)
     if kind == "xyz":
         frames = split_frames(text, place, max_atoms)
-        return tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
-    return _ase_fragments(path, place, max_atoms)
+        found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
+    else:
+        found = _ase_fragments(path, place, max_atoms)
+    if hydrogens == "file":
+        return found
+    from ehmo.structure.cell_hydrogens import with_hydrogens, with_longer_bonds
+
+    change = with_hydrogens if hydrogens == "place" else with_longer_bonds
+    return tuple(change(fragment) for fragment in found)
+
+
+def is_crystal(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> bool:
+    """Whether a file is a CIF, by its suffix or its content."""
+    path = Path(path)
+    return path.suffix.lower() in CIF_SUFFIXES or _kind(path, read_text(path, max_bytes)) == "cif"
+
+
+def _cif_fragments(
+    text: str, place: str, max_atoms: int, hydrogens: Hydrogens, cations: Cations
+) -> tuple[Fragment, ...]:
+    """Molecules of every block; a block without any is refused only where no other has some."""
+    from ehmo.structure.crystal import crystals_of_text, molecules_of
+
+    crystals = crystals_of_text(text, place, max_atoms, hydrogens=hydrogens, cations=cations)
+    usable = [contents for contents in crystals if contents.molecules] or crystals[:1]
+    return tuple(fragment for contents in usable for fragment in molecules_of(contents))
 
 
 def _kind(path: Path, text: str) -> str:
     suffix = path.suffix.lower()
-    if suffix in (".cif", ".mcif"):
+    if suffix in CIF_SUFFIXES:
         return "cif"
     if suffix in (".xyz", ".extxyz"):
         return "xyz"
@@ -167,7 +208,12 @@ def _fragments_of(atoms: Atoms, source: str, title: str, stated: StatedElectrons
         labels = tuple(f"{symbol}{k}" for k, symbol in enumerate(atoms.get_chemical_symbols(), start=1))
         if "X" in atoms.get_chemical_symbols():
             raise InputError("unknown element", place=source, mend="write chemical symbols such as V or O")
-        found = molecules_with_metals(PeriodicCell(atoms, np.ones(len(atoms), bool), labels, source, title))
+        from ehmo.structure.contents import contents_of_cell
+        from ehmo.structure.crystal import molecules_of
+        from ehmo.structure.periodic import PeriodicCell
+
+        cell = PeriodicCell(atoms, np.ones(len(atoms), bool), labels, source, title)
+        found = molecules_of(contents_of_cell(cell))
         if len(found) > 1 or len(found[0]) < len(atoms):
             # The stated charge belongs to all the atoms, so it is no molecule's own.
             return found

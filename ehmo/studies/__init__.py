@@ -1,1 +1,1 @@
-"""Studies: many calculations on one fragment."""
+"""Many calculations on one fragment, or one set beside another."""

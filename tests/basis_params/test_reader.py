@@ -55,7 +55,8 @@ def test_header_keys_are_read():
     table = parse(HYDROGEN, head=head)
     assert (table.name, table.edition, table.notes) == ("mine", "2", ("A note.",))
     assert (table.settings.K, table.settings.weighting, table.settings.K_pi) == (1.9, False, 2.0)
-    assert dict(table.settings.sd) == {"K": 0.1}
+    # lambda is taken from the standard set together with its standard deviation.
+    assert dict(table.settings.sd) == {"K": 0.1, "lambda": basis_params.load_set("standard").settings.sd["lambda"]}
     assert "K" not in table.inherited
 
 

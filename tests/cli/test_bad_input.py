@@ -56,14 +56,10 @@ CIF_FAULTS = {
     "empty": ("", ["empty"]),
     "binary": (BINARY, ["binary"]),
     "truncated": (CIF[: CIF.index("Cr1 Cr6+") + 20], ["a.cif"]),
-    "partially occupied": (CIF.replace("0.2053 1.0", "0.2053 0.5"), ["partially occupied or disordered", "O1"]),
-    "disordered": (CIF.replace("_atom_site_occupancy", "_atom_site_disorder_group"), ["disordered", "Cr1"]),
-    "polymeric": (
-        CIF.replace("_cell_length_c 9", "_cell_length_c 3.6")
-        .replace("O1 O2- 0.2053 0.2053 0.2053 1.0", "O1 O 0.1 0.1 0.6 1")
-        .replace("0.9947 0.9947 0.2053(3)", "0.5 0.1 0.1")
-        .split("O3 O2-")[0],
-        ["polymeric", "Cr1"],
+    "impossible occupancy": (CIF.replace("0.2053 1.0", "0.2053 1.5"), ["no usable occupancy", "O1"]),
+    "metal disordered about a centre": (
+        CIF.replace("Cr1 Cr6+ 0.1 0.1 0.1 1", "Cr1 Cr6+ 0.02 0.02 0.02 0.5").replace("'P 1'", "'P -1'"),
+        ["Cr1 disordered about a symmetry element", "subgroup"],
     ),
     "unknown element": (CIF.replace("O1 O2-", "Qx1 Qx"), ["unknown element", "Qx1"]),
     "undefined coordinates": (CIF.replace("0.2053(3)", "?"), ["coordinates", "O2"]),

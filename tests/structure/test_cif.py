@@ -1,4 +1,4 @@
-"""CIF: whole molecules are read, everything else is refused with the reason."""
+"""CIF: sites, symmetry and labels are read; what cannot be used is refused with the reason."""
 
 from __future__ import annotations
 
@@ -29,8 +29,8 @@ O1 O2- 0.2053 0.2053 0.2053 1.0
 O2 O2- 0.9947 0.9947 0.2053(3) 1
 O3 O2- 0.9947 0.2053 -0.0053 .
 O4 O2- 0.2053 -0.0053 -0.0053 ?
-K1 K 0.5 0.5 0.5 1
-K2 K 0.5 0.0 0.5 1
+K1 K 0.55 0.2 0.1 1
+K2 K 0.75 0.1 0.4 1
 """
 """Tetrahedral CrO4, Cr-O 1.64, over the cell edge (idealised)."""
 
@@ -56,9 +56,9 @@ def test_molecule_over_a_cell_face_is_put_together(read):
     assert fragment.symbols == ("Cr", "O", "O", "O", "O")
     lengths = np.linalg.norm(fragment.positions_A[1:] - fragment.positions_A[0], axis=1)
     np.testing.assert_allclose(lengths, 0.1053 * 9 * np.sqrt(3), atol=2e-3)
-    assert fragment.charge is None
+    assert fragment.charge == -2
     assert any("lattice translations" in note for note in fragment.notes)
-    assert any("2 listed atoms outside" in note for note in fragment.notes)
+    assert "Left out of the fragment, for each molecule: 2 K+." in fragment.notes
     assert [bond.kind.value for bond in perceive(fragment).bonds] == ["oxo"] * 4
 
 
@@ -96,26 +96,50 @@ def test_triclinic_cell_agrees_with_ase():
     np.testing.assert_allclose(ours @ ours.T, theirs @ theirs.T, atol=1e-9)
 
 
-def test_symmetry_generated_molecule_is_refused(read):
+def test_symmetry_generated_molecule_is_completed(read):
     half = CIF.replace("0.1 0.1 0.1 1", "0 0 0 1").replace("0.2053 0.2053 0.2053", "0.1053 0.1053 0.1053")
     half = "\n".join(line for line in half.splitlines() if line[:2] not in ("O2", "O3", "O4")) + "\n"
-    with pytest.raises(InputError, match="not listed whole: symmetry makes 1 of its 3 atoms"):
-        read(half.replace("loop_\n_atom_site_label", OPERATIONS))
+    (fragment,) = read(half.replace("loop_\n_atom_site_label", OPERATIONS))
+    assert fragment.symbols == ("Cr", "O", "O")
+    np.testing.assert_allclose(fragment.positions_A[1] + fragment.positions_A[2], 2 * fragment.positions_A[0])
+    assert any("Symmetry makes 1 of the 3 atoms" in note for note in fragment.notes)
 
 
-def test_polymer_is_refused(read):
+def test_polymer_is_refused_as_a_molecule(read):
     chain = CIF.replace("_cell_length_c 9", "_cell_length_c 3.6").replace(
         "O1 O2- 0.2053 0.2053 0.2053", "O1 O 0.1 0.1 0.6"
     )
     chain = "\n".join(line for line in chain.splitlines() if line[:2] not in ("O2", "O3", "O4", "K1", "K2")) + "\n"
-    with pytest.raises(InputError, match="polymeric: the bonds from Cr1 run on"):
+    with pytest.raises(InputError, match="extended structure without molecules: chain CrO") as caught:
         read(chain)
+    assert "--list" in caught.value.mend
+
+
+def test_operations_from_a_name_or_against_it_are_told(read):
+    assert "Symmetry operations from the space-group symbol P 21/n." in read(_with_group("'P 21/n'"))[0].notes
+    by_number = CIF.replace("_space_group_name_H-M_alt 'P 1'", "_space_group_IT_number 14")
+    said = "Symmetry operations from the space-group number 14, in its standard setting."
+    assert said in read(by_number)[0].notes
+    both = _with_group("'P 21/n'").replace("loop_\n_atom_site_label", OPERATIONS)
+    assert any(note.startswith("The file lists 2 symmetry operations, P 21/n has 4") for note in read(both)[0].notes)
+
+
+def test_sites_are_held_against_the_formula(read):
+    (fragment,) = read(CIF.replace("'Cr O4 K2'", "'Cr O4 K3'"))
+    said = "The sites do not add up to the formula of the file, per formula unit: K 2 of 3."
+    assert said in fragment.notes
+
+
+def test_element_that_the_formula_forgets_goes_by_its_type_symbol(read):
+    assert read(CIF.replace("'Cr O4 K2'", "'O4 K2'"))[0].formula == "CrO4"
 
 
 def test_atoms_listed_and_made_by_symmetry_count_once(read):
-    text = CIF.replace("loop_\n_atom_site_label", OPERATIONS) + "K3 K -0.5 0.0 -0.5 1\n"
+    text = CIF.replace("loop_\n_atom_site_label", OPERATIONS) + "K3 K -0.75 -0.1 -0.4 1\n"
     (fragment,) = read(text)
     assert fragment.formula == "CrO4"
+    assert "1 listed sites repeat symmetry images of others and count once." in fragment.notes
+    assert "Left out of the fragment, for each molecule: 2 K+." in fragment.notes
 
 
 def test_labels_without_type_symbols(read):
@@ -143,11 +167,20 @@ def test_byte_order_mark_and_content_without_suffix(read):
 
 
 FAULTS = {
-    "partial occupancy": (CIF.replace("0.2053 1.0", "0.2053 0.5"), "partially occupied or disordered: O1"),
-    "disorder group": (
-        CIF.replace("_atom_site_occupancy", "_atom_site_disorder_group"),
-        "disordered: Cr1, O1",
+    "impossible occupancy": (CIF.replace("0.2053 1.0", "0.2053 1.5"), "no usable occupancy: O1"),
+    "metal mostly absent": (
+        CIF.replace("0.1 0.1 0.1 1", "0.1 0.1 0.1 0.3"),
+        "the only metals are less than half occupied: Cr1",
     ),
+    "overlapping images": (
+        CIF.replace("0.1 0.1 0.1 1", "0.02 0.02 0.02 1").replace("loop_\n_atom_site_label", OPERATIONS),
+        "symmetry images of Cr1 overlap at 0.624 A",
+    ),
+    "crowd on one point": (
+        CIF + "".join(f"K{k} K 0.5 0.{500 + k} 0.5 1\n" for k in range(3, 60)),
+        "atoms fall into one cube of 2 A",
+    ),
+    "truncated in the loop": (CIF[: CIF.index("O4 O2-") + 12], "no valid CIF"),
     "undefined coordinates": (CIF.replace("0.2053(3)", "?"), "no usable coordinates: O2"),
     "unknown element": (CIF.replace("O1 O2-", "Qx1 Qx"), "unknown element: Qx1"),
     "all faults at once": (
@@ -195,5 +228,13 @@ def test_faults(read, text, said):
 
 
 def test_limit_on_cell_contents(read):
-    with pytest.raises(LimitError, match="more than 5 atoms; raise max_atoms"):
+    with pytest.raises(LimitError, match="7 atom sites, the limit is 5; raise max_atoms"):
         read(CIF, max_atoms=5)
+    with pytest.raises(LimitError, match="more than 10 atoms; raise max_atoms"):
+        read(CIF.replace("loop_\n_atom_site_label", OPERATIONS), max_atoms=10)
+
+
+def test_hundreds_of_thousands_of_sites_are_refused_by_their_number(read):
+    many = "".join(f"O{k} O2- 0.{k % 997:03d} 0.{k % 991:03d} 0.{k % 983:03d} 1\n" for k in range(200_000))
+    with pytest.raises(LimitError, match="200007 atom sites, the limit is 10000"):
+        read(CIF + many)

@@ -90,7 +90,7 @@ REFUSED = {
     "[CrO(OH2)5]2+": "4.38 for Cr(IV), does not decide; give the charge",
     "FeO4 2-": "does not decide; give the charge",
     "[Co(NH3)6]3+": "does not decide; give the charge: +1 for Co(I), +2 for Co(II), +3 for Co(III)",
-    "MnO4 3-": "may lack hydrogen (hydroxo?); add the hydrogens or give the charge",
+    "MnO4 3-": "may lack hydrogen (hydroxo?); add the hydrogens (--hydrogens place) or give the charge",
     "[TiOCl4]2-": "O2 may lack hydrogen (hydroxo?)",
 }
 

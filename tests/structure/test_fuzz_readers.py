@@ -8,7 +8,8 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from ehmo.errors import EhmoError
-from ehmo.structure import perceive, read_frames
+from ehmo.structure import perceive, read_crystals, read_frames
+from tests.structure.cif_text import INVERSION, cif, tetraoxo
 from tests.structure.test_cif import CIF
 from tests.structure.test_xyz import VOCL3
 
@@ -67,6 +68,29 @@ def test_xyz(tmp_path, raw):
 @given(raw=mutated(CIF) | st.binary(max_size=200).map(b"data_x\n".__add__))
 def test_cif(tmp_path, raw):
     _try(tmp_path / "fuzz.cif", raw)
+
+
+DISORDERED = cif(
+    [
+        *(f"{line} 1 . ." for line in tetraoxo()),
+        "O9 O 0.55 0.55 0.5 0.5 . -1",
+        "K1 K 0.6 0.6 0.6 0.7 A 1",
+        "K2 K 0.65 0.6 0.6 0.3 A 2",
+        "OW O 0.4 0.6 0.7 0.4 . .",
+    ],
+    operations=INVERSION,
+    columns="occupancy disorder_assembly disorder_group",
+    extra="_chemical_formula_sum 'K Cr O5'",
+)
+
+
+@relaxed
+@given(raw=mutated(DISORDERED), hydrogens=st.sampled_from(["file", "place", "lengthen"]), cations=st.booleans())
+def test_disordered_crystal(tmp_path, raw, hydrogens, cations):
+    path = tmp_path / "fuzz.cif"
+    path.write_bytes(raw)
+    with contextlib.suppress(EhmoError):
+        read_crystals(path, hydrogens=hydrogens, cations="basis" if cations else "none", max_atoms=500)
 
 
 @relaxed

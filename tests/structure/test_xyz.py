@@ -125,7 +125,7 @@ def test_periodic_extended_frame_is_made_whole(read):
 
 def test_periodic_extended_frame_of_a_polymer_is_refused(read):
     comment = 'Lattice="3.6 0 0 0 10 0 0 0 10" Properties=species:S:1:pos:R:3'
-    with pytest.raises(InputError, match="polymeric"):
+    with pytest.raises(InputError, match="extended structure without molecules: chain OV"):
         read(f"2\n{comment}\nV 0 0 0\nO 1.8 0 0\n")
 
 

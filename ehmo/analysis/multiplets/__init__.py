@@ -7,6 +7,7 @@ from ehmo.analysis.multiplets.first_order import d1_square_pyramid_g, octahedral
 from ehmo.analysis.multiplets.magnetism import effective_moment, magnetic_properties, spin_only_moment
 from ehmo.analysis.multiplets.momentum import orbital_momentum, reduced_momentum
 from ehmo.analysis.multiplets.spin_orbit import spin_orbit_states
+from ehmo.analysis.multiplets.stacked import term_energies
 from ehmo.analysis.multiplets.terms import free_ion_terms, multiplet_terms
 
 __all__ = [
@@ -23,5 +24,6 @@ __all__ = [
     "reduced_momentum",
     "spin_only_moment",
     "spin_orbit_states",
+    "term_energies",
     "tetragonal_energies",
 ]

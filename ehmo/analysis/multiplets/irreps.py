@@ -46,22 +46,22 @@ class SortedBasis:
 
         Parameters
         ----------
-        matrix : (size, size) ndarray
-            Symmetric [cm^-1].
+        matrix : (..., size, size) ndarray
+            Symmetric, one or a stack [cm^-1].
 
         Returns
         -------
-        values : (size,) ndarray
+        values : (..., size) ndarray
             Ascending up to the tie breaker.
-        vectors : (size, size) ndarray
+        vectors : (..., size, size) ndarray
             Columns. Where the matrix has the symmetry each belongs to one irrep, also in a level in which
             several irreps meet by accident.
-        shares : (n_irreps, size) ndarray
+        shares : (..., n_irreps, size) ndarray
             Columns add up to 1.
         """
         values, vectors = np.linalg.eigh(matrix + self.tie_breaker)
         starts = np.concatenate([[0], np.cumsum(self.counts)[:-1]])
-        shares = np.add.reduceat((self.functions.T @ vectors) ** 2, starts, axis=0)
+        shares = np.add.reduceat((self.functions.T @ vectors) ** 2, starts, axis=-2)
         return values - _TIE_BREAK * np.arange(len(starts)) @ shares, vectors, shares
 
 
