@@ -89,6 +89,8 @@ def balance_charges(
     found: list[Balance] = []
     for k, unit in enumerate(units):
         balanced = None if obstacle else _rest(k, units, species, guesses, stated)
+        if unit.fragment is not None and not facts.deposited and not any(one.charge for one in species):
+            balanced = None
         found.append(_decided(unit, stated[k], balanced, guesses[k], species, obstacle))
     return found
 

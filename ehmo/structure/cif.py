@@ -11,8 +11,8 @@ from ehmo.errors import EhmoError, InputError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.fragment import hill_formula
 from ehmo.structure.cif_cell import ordered_cell
-from ehmo.structure.cif_sites import formula_counts, read_sites
-from ehmo.structure.cif_symmetry import item_text, symmetry_operations
+from ehmo.structure.cif_sites import formula_counts, read_sites, site_prefix
+from ehmo.structure.cif_symmetry import item, item_text, symmetry_operations
 from ehmo.structure.files import shown
 from ehmo.structure.periodic import PeriodicCell, StatedFacts
 
@@ -42,7 +42,7 @@ def cif_cells(text: str, place: str, max_atoms: int) -> tuple[PeriodicCell, ...]
         document = gemmi.cif.read_string(text)
     except (ValueError, RuntimeError) as error:
         raise InputError(f"no valid CIF ({shown(error)})", place=place, mend="correct that line") from error
-    blocks = [block for block in document if block.find_loop("_atom_site_fract_x")]
+    blocks = [block for block in document if site_prefix(block)]
     if not blocks:
         raise InputError(
             "no atom sites with fractional coordinates", place=place, mend="give a CIF of a crystal structure"
@@ -67,18 +67,19 @@ def _cell(block: gemmi.cif.Block, place: str, max_atoms: int, notes: list[str]) 
     title = next((value for tag in _TITLE_TAGS if (value := item_text(block, tag))), block.name)
     riding = sum(site.symbol == "H" and site.calculated for site in sites)
     if riding:
-        notes.append(f"{riding} hydrogen sites have calculated (riding) positions.")
+        notes.append(f"Calculated (riding) hydrogen positions: {riding}.")
     return ordered_cell(sites, rotations, translations, lattice, _facts(block), place, title.strip(), notes, max_atoms)
 
 
 def _facts(block: gemmi.cif.Block) -> StatedFacts:
     import gemmi
 
-    units = gemmi.cif.as_number(block.find_value("_cell_formula_units_Z") or "?")
+    units = gemmi.cif.as_number(item(block, "_cell_formula_units_Z") or "?")
     return StatedFacts(
         formula=formula_counts(item_text(block, "_chemical_formula_sum")),
         formula_units=int(units) if np.isfinite(units) and 1 <= units < 1e4 and units == int(units) else None,
         moieties=_moieties(item_text(block, "_chemical_formula_moiety")),
+        deposited=True,
         masked=any(block.find_values(tag) or block.find_value(tag) for tag in _MASK_TAGS),
     )
 
@@ -104,7 +105,7 @@ def _moieties(text: str) -> dict[str, int]:
 def _lattice(block: gemmi.cif.Block, place: str) -> FloatArray:
     import gemmi
 
-    numbers = [gemmi.cif.as_number(block.find_value(f"_cell_{tag}") or "?") for tag in _CELL_TAGS]
+    numbers = [gemmi.cif.as_number(item(block, f"_cell_{tag}") or "?") for tag in _CELL_TAGS]
     usable = np.isfinite(numbers).all() and min(numbers[:3]) > 0 and all(5 < a < 175 for a in numbers[3:])
     if not usable or max(numbers) > 1e4:
         raise InputError("no usable unit cell", place=place, mend="give the six _cell_length_ and _cell_angle_ items")

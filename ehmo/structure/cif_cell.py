@@ -137,7 +137,7 @@ def ordered_cell(
     ordered = major_parts(sites, lattice, notes)
     images = expanded(ordered.kept, rotations, translations, lattice, place, max_atoms)
     if images.repeated:
-        notes.append(f"{len(images.repeated)} listed sites repeat symmetry images of others and count once.")
+        notes.append(f"Sites that repeat symmetry images of others count once: {listed(images.repeated)}.")
     symbols = [ordered.kept[k].symbol for k in images.site_of.tolist()]
     labels = tuple(ordered.kept[k].label for k in images.site_of.tolist())
     atoms = Atoms(symbols, positions=images.fractional @ lattice, cell=lattice, pbc=True)

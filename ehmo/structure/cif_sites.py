@@ -64,6 +64,11 @@ class Site:
     attached: int | None = None
 
 
+def site_prefix(block: gemmi.cif.Block) -> str:
+    """How the items of atom sites begin in a block; empty where it has none with fractional coordinates."""
+    return next((name for name in ("_atom_site_", "_atom_site.") if block.find_loop(f"{name}fract_x")), "")
+
+
 def read_sites(block: gemmi.cif.Block, place: str, notes: list[str], max_atoms: int) -> list[Site]:
     """Sites that are atoms; every fault of the list is collected into one message.
 
@@ -74,7 +79,7 @@ def read_sites(block: gemmi.cif.Block, place: str, notes: list[str], max_atoms: 
     LimitError
         If more than `max_atoms` sites are listed.
     """
-    rows = len(block.find_loop("_atom_site_fract_x"))
+    rows = len(block.find_loop(f"{site_prefix(block)}fract_x"))
     if rows > max_atoms:
         raise LimitError(
             f"{rows} atom sites, the limit is {max_atoms}", place=place, mend="raise max_atoms (--max-atoms)"
@@ -116,7 +121,7 @@ def read_sites(block: gemmi.cif.Block, place: str, notes: list[str], max_atoms: 
     if dummies:
         notes.append(f"Hydrogens listed without a position: {listed(dummies)}.")
     if deuterium:
-        notes.append(f"{deuterium} deuterium sites were taken as hydrogen.")
+        notes.append(f"Deuterium taken as hydrogen: {deuterium} site{'s' * (deuterium > 1)}.")
     return sites
 
 
@@ -140,7 +145,7 @@ class _Row:
 def _rows(block: gemmi.cif.Block) -> Iterator[_Row]:
     from gemmi import cif
 
-    table = block.find("_atom_site_", list(_TAGS))
+    table = block.find(site_prefix(block), list(_TAGS))
     present = [k for k in range(len(_TAGS)) if table.has_column(k)]
     for number, row in enumerate(table, start=1):
         text = {k: cif.as_string(row[k]) for k in present if not cif.is_null(row[k])}
@@ -164,7 +169,8 @@ def _oxidation_numbers(block: gemmi.cif.Block) -> dict[str, float]:
     from gemmi import cif
 
     found = {}
-    for row in block.find("_atom_type_", ["symbol", "oxidation_number"]):
+    rows = block.find("_atom_type_", ["symbol", "oxidation_number"])
+    for row in rows or block.find("_atom_type.", ["symbol", "oxidation_number"]):
         number = cif.as_number(row[1])
         if np.isfinite(number):
             found[cif.as_string(row[0])] = number

@@ -22,6 +22,16 @@ _OPERATION_TAGS = (
     "_symmetry_equiv_pos_as_xyz",
     "_space_group_symop.operation_xyz",
 )
+_CATEGORIES: Final = (
+    "_space_group_symop",
+    "_space_group",
+    "_chemical_formula",
+    "_chemical",
+    "_atom_site",
+    "_atom_type",
+    "_symmetry",
+    "_cell",
+)
 _NAME_TAGS = (
     "_space_group_name_Hall",
     "_symmetry_space_group_name_Hall",
@@ -32,11 +42,29 @@ _NAME_TAGS = (
 )
 
 
+def dotted(tag: str) -> str:
+    """Name of an item in the newer dictionaries, where a dot ends the category.
+
+    Examples
+    --------
+    >>> dotted("_atom_site_fract_x"), dotted("_space_group_symop_operation_xyz")
+    ('_atom_site.fract_x', '_space_group_symop.operation_xyz')
+    """
+    category = next((name for name in _CATEGORIES if tag.startswith(f"{name}_")), "")
+    return f"{category}.{tag[len(category) + 1 :]}" if category else tag
+
+
+def item(block: gemmi.cif.Block, tag: str) -> str | None:
+    """Value of a CIF item as it stands, under its older or newer name."""
+    value = block.find_value(tag)
+    return block.find_value(dotted(tag)) if value is None else value
+
+
 def item_text(block: gemmi.cif.Block, tag: str) -> str:
     """Text of a CIF item; empty where it is absent or null."""
     from gemmi import cif
 
-    value = block.find_value(tag)
+    value = item(block, tag)
     return "" if value is None or cif.is_null(value) else cif.as_string(value)
 
 

@@ -27,8 +27,8 @@ _SINGLE_A: Final = {"C": 1.46, "N": 1.41, "O": 1.36, "S": 1.76, "P": 1.78, "Si":
 _DOUBLE_A: Final = {"C": 1.25, "N": 1.20, "O": 1.00, "S": 1.50}
 _ANGLES: Final = {"O": (117.0, 127.0), "N": (110.5, 120.0), "C": (109.5, 120.0)}
 _ACCEPTORS: Final = frozenset({"O", "N", "F", "Cl", "Br", "S"})
-_WATER_LABEL: Final = re.compile(r"(OW|O-?W|WAT|W)\W?\d*[A-Z]?\W?", re.IGNORECASE)
-_HYDROXYL_LABEL: Final = re.compile(r"(OH|O-H)\W?\d*[A-Z]?\W?", re.IGNORECASE)
+_WATER_LABEL: Final = re.compile(r"(O\d*W|O-W|WAT|W)\W?\d*[A-Z]?\W?", re.IGNORECASE)
+_HYDROXYL_LABEL: Final = re.compile(r"(O\d*H|O-H)\W?\d*[A-Z]?\W?", re.IGNORECASE)
 
 
 @dataclass(frozen=True, slots=True)

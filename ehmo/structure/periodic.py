@@ -72,6 +72,9 @@ class StatedFacts:
     moieties : mapping of str to int
         Charge by Hill formula, as the author states it.
     left_out : tuple of LeftOut
+    deposited : bool
+        Whether the file describes a crystal as determined, whose ions must all be there; a box around a molecule
+        that was made for a calculation need not be neutral.
     masked : bool
         Whether solvent was taken out of the electron density instead of being refined.
     """
@@ -80,6 +83,7 @@ class StatedFacts:
     formula_units: int | None = None
     moieties: Mapping[str, int] = field(default_factory=dict)
     left_out: tuple[LeftOut, ...] = ()
+    deposited: bool = False
     masked: bool = False
 
 

@@ -25,6 +25,7 @@ ASE_FORMATS: Final = frozenset({"aims", "gen", "mol", "proteindatabank", "sdf", 
 """Text formats left to ASE; others are refused, since some of its readers run or unpickle what they read."""
 
 CIF_SUFFIXES: Final = (".cif", ".mcif")
+XYZ_SUFFIXES: Final = (".xyz", ".extxyz")
 
 
 def read(
@@ -159,7 +160,10 @@ def read_frames(
 def is_crystal(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> bool:
     """Whether a file is a CIF, by its suffix or its content."""
     path = Path(path)
-    return path.suffix.lower() in CIF_SUFFIXES or _kind(path, read_text(path, max_bytes)) == "cif"
+    suffix = path.suffix.lower()
+    if suffix in CIF_SUFFIXES or suffix in XYZ_SUFFIXES:
+        return suffix in CIF_SUFFIXES
+    return _kind(path, read_text(path, max_bytes)) == "cif"
 
 
 def _cif_fragments(
@@ -177,7 +181,7 @@ def _kind(path: Path, text: str) -> str:
     suffix = path.suffix.lower()
     if suffix in CIF_SUFFIXES:
         return "cif"
-    if suffix in (".xyz", ".extxyz"):
+    if suffix in XYZ_SUFFIXES:
         return "xyz"
     if re.search(r"^_cell[_.]length_a\s", text, re.MULTILINE) and re.search(r"^data_", text, re.MULTILINE):
         return "cif"

@@ -138,7 +138,7 @@ def test_atoms_listed_and_made_by_symmetry_count_once(read):
     text = CIF.replace("loop_\n_atom_site_label", OPERATIONS) + "K3 K -0.75 -0.1 -0.4 1\n"
     (fragment,) = read(text)
     assert fragment.formula == "CrO4"
-    assert "1 listed sites repeat symmetry images of others and count once." in fragment.notes
+    assert "Sites that repeat symmetry images of others count once: K3." in fragment.notes
     assert "Left out of the fragment, for each molecule: 2 K+." in fragment.notes
 
 
@@ -159,6 +159,14 @@ def test_several_blocks(read):
     frames = read(CIF + CIF.replace("data_chromate", "data_two") + "data_empty\n_cell_length_a 5\n")
     assert len(frames) == 2
     assert "block two" in frames[1].source
+
+
+def test_names_with_a_dot_as_in_newer_dictionaries(read):
+    text = CIF
+    for category in ("_atom_site", "_cell", "_chemical_formula", "_space_group"):
+        text = text.replace(f"{category}_", f"{category}.")
+    assert "_atom_site.fract_x" in text
+    assert read(text)[0].charge == -2
 
 
 def test_byte_order_mark_and_content_without_suffix(read):

@@ -163,6 +163,14 @@ def test_crystal_of_ase_gives_its_one_molecule():
     assert np.linalg.norm(fragment.positions_A[1] - fragment.positions_A[0]) == pytest.approx(1.6)
 
 
+def test_box_around_molecules_need_not_be_neutral():
+    """Two kinds of ions in a computed box: no counter-ions, so no balance; a deposited crystal would be neutral."""
+    corners = np.array([[1, 1, 1], [-1, -1, 1], [-1, 1, -1], [1, -1, -1]]) / np.sqrt(3)
+    places = [[0, 0, 0], *(1.62 * corners), [9, 9, 9], *(9 + 0.96 * corners[:2])]
+    atoms = Atoms("FeO4OH2", places, cell=[18, 18, 18], pbc=True)
+    assert from_ase(atoms).charge is None
+
+
 NETWORKS = {
     "chain": (["V1 V 0 0 0", "O1 O 0.5 0 0"], (3.6, 9, 9, 90, 90, 90), 1, "OV"),
     "layer": (["V1 V 0 0 0", "O1 O 0.5 0 0", "O2 O 0 0.5 0"], (3.6, 3.6, 9, 90, 90, 90), 2, "O2V"),

@@ -46,6 +46,7 @@ def _oxygen(valence: float | None, label: str = "O1", n_metals: int = 1, **more)
         (_oxygen(1.70), 0),
         (_oxygen(0.80, "OW3"), 2),
         (_oxygen(0.80, "Wat(4)"), 2),
+        (_oxygen(0.80, "O12W"), 2),
         (_oxygen(1.20, "OH2", n_metals=2), 1),
         (_oxygen(1.20, "O-H2", n_metals=2), 1),
         (_oxygen(1.70, "OW3"), 0),
@@ -217,8 +218,8 @@ def test_attached_hydrogens_and_dummies_of_the_file(contents):
 def test_deuterium_riding_and_x_ray_lengths_are_told(contents):
     water = ["O9 O 0.6 0.6 0.6 .", "D1 D 0.69 0.6 0.6 calc", "H2 H 0.577 0.687 0.6 calc"]
     crystal = contents(cif([*(f"{line} ." for line in tetraoxo()), *water], columns="calc_flag"))
-    assert "1 deuterium sites were taken as hydrogen." in crystal.notes
-    assert "2 hydrogen sites have calculated (riding) positions." in crystal.notes
+    assert "Deuterium taken as hydrogen: 1 site." in crystal.notes
+    assert "Calculated (riding) hydrogen positions: 2." in crystal.notes
     assert any(note.startswith("X-ray lengths to hydrogen, on the average O-H 0.81") for note in crystal.notes)
     longer = contents(cif([*(f"{line} ." for line in tetraoxo()), *water], columns="calc_flag"), hydrogens="lengthen")
     k, o = longer.labels.index("D1"), longer.labels.index("O9")
