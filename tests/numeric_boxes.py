@@ -25,7 +25,7 @@ from ehmo.records.electronic import ElectronicState, OverlapSpectrum
 from tests.geometries import Species
 
 DONOR_REACH_A = 2.65
-PLAIN = ModelSettings(1.75, True, None, None, None, 0.0, 0.85)
+PLAIN = ModelSettings(1.75, True, None, None, None, 0.0, 1.0)
 
 
 @dataclass(frozen=True)

@@ -99,11 +99,13 @@ def extended_crystals(chosen: argparse.Namespace) -> Sequence[CrystalContents]:
 
 def _crystals(chosen: argparse.Namespace) -> Sequence[CrystalContents] | None:
     """Contents of each data block of a CIF, read once; None for other files."""
-    from ehmo.structure import is_crystal, read_crystals
+    from ehmo.structure import is_crystal
 
     if not is_crystal(chosen.file, max_bytes=chosen.max_bytes):
         return None
     if "crystals" not in chosen:
+        from ehmo.structure import read_crystals
+
         chosen.crystals = read_crystals(
             chosen.file,
             hydrogens=chosen.hydrogens,

@@ -10,7 +10,7 @@ from ehmo.records.crystal_electronic import CrystalBonding
 from ehmo.records.options import Options
 from tests.crystal.structures import Crystal
 
-PLAIN = ModelSettings(1.75, True, None, None, None, 0.0, 0.85)
+PLAIN = ModelSettings(1.75, True, None, None, None, 0.0, 1.0)
 
 
 def run_crystal(
