@@ -67,7 +67,7 @@ def _refuse_incomplete_cell(contents: CrystalContents, options: Options) -> None
         return
     if contents.missing_hydrogens:
         raise InputError(
-            f"the cell is not complete: {contents.missing_hydrogens[0]}",
+            f"the cell is not complete: {contents.missing_hydrogens[0].rstrip('.')}",
             mend="place the hydrogens with --hydrogens place, or state the charge of what the file lists with --charge",
         )
     outside = [one.formula for one in contents.species if not one.in_model and one.charge]

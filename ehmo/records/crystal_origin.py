@@ -30,11 +30,29 @@ class CrystalOrigin:
         shape = (None, len(self.labels))
         object.__setattr__(self, "permutations", frozen_ints(self.permutations, shape, "permutations"))
 
-    def equivalent_bonds(self, first: int, second: int) -> int:
+    def equivalent_bonds(self, metal: int, donor: int) -> int:
         """How many bonds of the molecule symmetry makes of one, itself included."""
-        pairs = {tuple(sorted(pair)) for pair in self.permutations[:, [first, second]].tolist()}
-        return len(pairs)
+        return len(self._images(metal, donor))
 
-    def bond_multiplicity(self, first: int, second: int) -> int:
+    def bonds_per_metal(self, metal: int, donor: int) -> int:
+        """How many of the equivalent bonds are at the same metal."""
+        return sum(image == metal for image, _ in self._images(metal, donor))
+
+    def equivalent_atoms(self, atom: int) -> list[int]:
+        """Atoms of the molecule that symmetry makes of one, itself included, in order."""
+        return sorted({int(other) for other in self.permutations[:, atom]})
+
+    def first_equivalent(self, atom: int) -> int:
+        """Lowest index of the atoms of the molecule that symmetry makes of one."""
+        return int(self.permutations[:, atom].min())
+
+    def is_first(self, metal: int, donor: int) -> bool:
+        """Whether no equivalent bond of the molecule has a lower metal or, at the same one, a lower donor."""
+        return min(self._images(metal, donor)) == (metal, donor)
+
+    def bond_multiplicity(self, metal: int, donor: int) -> int:
         """How many bonds of the unit cell symmetry makes of one, itself included."""
-        return self.multiplicity * self.equivalent_bonds(first, second)
+        return self.multiplicity * self.equivalent_bonds(metal, donor)
+
+    def _images(self, metal: int, donor: int) -> set[tuple[int, int]]:
+        return {(int(one), int(other)) for one, other in self.permutations[:, [metal, donor]]}

@@ -144,6 +144,20 @@ class BondReport:
         """Each metal-donor bond with its orders."""
         return zip(self.coordination.bonds, self.orders, strict=True)
 
+    def distinct_bonds(self) -> list[int]:
+        """Places of the bonds that crystal symmetry does not make of an earlier one; all of them without a crystal."""
+        crystal = self.fragment.crystal
+        return [
+            place
+            for place, bond in enumerate(self.coordination.bonds)
+            if crystal is None or crystal.is_first(bond.metal, bond.donor)
+        ]
+
+    def distinct_sites(self) -> list[MetalSite]:
+        """Metals that crystal symmetry does not make of an earlier one."""
+        crystal = self.fragment.crystal
+        return [site for site in self.sites if crystal is None or crystal.first_equivalent(site.metal) == site.metal]
+
     def bond_label(self, bond: MetalDonorBond) -> str:
         """Label such as ``V1-O2``."""
         symbols = self.fragment.symbols
@@ -170,10 +184,6 @@ class BondReport:
     def level_spreads(self, site: MetalSite) -> tuple[LevelSpread, ...]:
         """Standard deviations of the levels of a metal's ladder; empty where there are none."""
         return () if self.spread is None else self.spread.levels[self.sites.index(site)]
-
-    def orders_of(self, metal: int) -> tuple[BondOrders, ...]:
-        """Orders of the bonds of one metal, in the order of `coordination.bonds_of`."""
-        return tuple(orders for bond, orders in self.bonds() if bond.metal == metal)
 
     def __str__(self) -> str:
         return "\n".join([self._heading(), *aligned(self._rows(), numeric=BOND_NUMBERS)])

@@ -9,8 +9,6 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from ehmo import __version__
-from ehmo.records.bonding import BondOrders
-from ehmo.records.coordination import MetalDonorBond
 from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.report import BondReport
 from ehmo.report.cautions import CAUTIONS
@@ -46,7 +44,7 @@ def bond_document(report: BondReport) -> dict[str, Any]:
             "orbitals": _orbitals(report),
             "atoms": _atoms(report),
             "ligands": _ligands(report),
-            "bonds": [_bond(report, place, bond, orders) for place, (bond, orders) in enumerate(report.bonds())],
+            "bonds": [_bond(report, place) for place in report.distinct_bonds()],
             "ladder": [ladder_part(report, site) for site in report.sites],
             **spectroscopy_part(report),
             "local_frames": [
@@ -198,8 +196,8 @@ def _ligands(report: BondReport) -> list[dict[str, Any]]:
     ]
 
 
-def _bond(report: BondReport, place: int, bond: MetalDonorBond, orders: BondOrders) -> dict[str, Any]:
-    formal = report.formal_orders[place]
+def _bond(report: BondReport, place: int) -> dict[str, Any]:
+    bond, orders, formal = report.coordination.bonds[place], report.orders[place], report.formal_orders[place]
     crystal = report.fragment.crystal
     return {
         "metal": bond.metal,
@@ -207,6 +205,7 @@ def _bond(report: BondReport, place: int, bond: MetalDonorBond, orders: BondOrde
         "label": report.bond_label(bond),
         "kind": str(bond.kind),
         "length_A": bond.length_A,
+        "per_metal": None if crystal is None else crystal.bonds_per_metal(bond.metal, bond.donor),
         "multiplicity": None if crystal is None else crystal.bond_multiplicity(bond.metal, bond.donor),
         "bond_valence": bond.bond_valence,
         "overlap_population": orders.overlap_population,

@@ -133,7 +133,7 @@ def ladder_text(report: BondReport) -> str:
     """
     spectrum = report.spectroscopy
     sections = [
-        *(ladder_lines(report, site) for site in report.sites),
+        *(ladder_lines(report, site) for site in report.distinct_sites()),
         _constants_lines(spectrum.constants),
         _terms_lines(spectrum),
         _band_lines(spectrum.bands, None if report.spread is None else report.spread.bands_per_cm),

@@ -48,12 +48,12 @@ def bond_text(report: BondReport) -> str:
     """
     sections = [
         heading_lines(report),
-        *(_bonds_of(report, metal) for metal in report.coordination.metals),
+        *(_bonds_of(report, site.metal) for site in report.distinct_sites()),
         _words(report),
         _hybrids(report),
         _charges(report),
         _frontier(report),
-        *(ladder_lines(report, site) for site in report.sites),
+        *(ladder_lines(report, site) for site in report.distinct_sites()),
         short_spectrum_lines(report),
         spread_lines(report),
         sentence_lines("Assumed", report.assumptions),
@@ -77,7 +77,7 @@ def heading_lines(report: BondReport) -> list[str]:
         f"{fragment.formula}, {electrons_in_words(fragment)}{_metals_in_all(report)}",
         f"Extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
         *_molecule_lines(report),
-        *(line for site in report.sites for line in _site_lines(report, site)),
+        *(line for site in report.distinct_sites() for line in _site_lines(report, site)),
     ]
 
 
@@ -108,37 +108,54 @@ def _site_lines(report: BondReport, site: MetalSite) -> list[str]:
     )
     if site.shapes:
         said.append(f"nearest shape {site.shapes[0].shape} ({site.shapes[0].measure:.1f})")
-    line = f"{report.fragment.labels[site.metal]}: {'; '.join(said)}"
+    line = f"{', '.join(_alike(report, site.metal))}: {'; '.join(said)}"
     return textwrap.wrap(line, WIDTH, subsequent_indent="  ")
 
 
+def _alike(report: BondReport, atom: int) -> list[str]:
+    """Labels of the atoms that crystal symmetry makes of one."""
+    labels, crystal = report.fragment.labels, report.fragment.crystal
+    return [labels[atom]] if crystal is None else [labels[other] for other in crystal.equivalent_atoms(atom)]
+
+
 def _axes(report: BondReport) -> list[str]:
-    """Local axes of each metal, in words."""
-    labels = report.fragment.labels
-    return [f"Axes of {labels[f.metal]}: z {f.z_reason}, x {f.x_reason}" for f in report.coordination.frames]
+    """Local axes of each distinct metal, in words."""
+    labels, shown = report.fragment.labels, {site.metal for site in report.distinct_sites()}
+    frames = [frame for frame in report.coordination.frames if frame.metal in shown]
+    return [f"Axes of {labels[f.metal]}: z {f.z_reason}, x {f.x_reason}" for f in frames]
 
 
 def _bonds_of(report: BondReport, metal: int) -> list[str]:
-    labels = report.fragment.labels
-    formal = [
-        order
-        for bond, order in zip(report.coordination.bonds, report.formal_orders, strict=True)
-        if bond.metal == metal
-    ]
-    spreads = None
-    if report.spread is not None:
-        pairs = zip(report.coordination.bonds, report.spread.bonds, strict=True)
-        spreads = [spread for bond, spread in pairs if bond.metal == metal]
-    rows = bond_rows(report.coordination.bonds_of(metal), report.orders_of(metal), formal, labels, spreads)
-    return [f"Bonds of {labels[metal]}", *aligned(rows, numeric=BOND_NUMBERS, indent="  ")]
+    labels, crystal = report.fragment.labels, report.fragment.crystal
+    places = [k for k in report.distinct_bonds() if report.coordination.bonds[k].metal == metal]
+    bonds = [report.coordination.bonds[k] for k in places]
+    rows = bond_rows(
+        bonds,
+        [report.orders[k] for k in places],
+        [report.formal_orders[k] for k in places],
+        labels,
+        None if report.spread is None else [report.spread.bonds[k] for k in places],
+    )
+    numeric: Sequence[int] = BOND_NUMBERS
+    if crystal is not None:
+        counts = [("per metal", "in the cell")] + [
+            (
+                str(crystal.bonds_per_metal(bond.metal, bond.donor)),
+                str(crystal.bond_multiplicity(bond.metal, bond.donor)),
+            )
+            for bond in bonds
+        ]
+        rows = [[*row[:3], *count, *row[3:]] for row, count in zip(rows, counts, strict=True)]
+        numeric = range(2, 9)
+    return [f"Bonds of {labels[metal]}", *aligned(rows, numeric=numeric, indent="  ")]
 
 
 def _words(report: BondReport) -> list[str]:
     """Multiple bonds in words: by counting, by calculation, and how the donor leans."""
     readings = {reading.bond: reading for reading in report.reactivity}
     lines, rules = [], []
-    for place, (bond, orders) in enumerate(report.bonds()):
-        formal = report.formal_orders[place]
+    for place in report.distinct_bonds():
+        bond, orders, formal = report.coordination.bonds[place], report.orders[place], report.formal_orders[place]
         if not bond.may_be_multiple and (formal is None or formal.order == 1):
             continue
         counted = "no order by counting without a ladder" if formal is None else f"{formal.words} by counting"
@@ -175,7 +192,8 @@ def _leaning(reading: DonorReactivity) -> str:
 def _hybrids(report: BondReport) -> list[str]:
     """Make-up of the channels of the bonds that may be multiple."""
     rows = [["bond", "channel", "weight", "metal hybrid", "donor hybrid"]]
-    for bond, orders in report.bonds():
+    for place in report.distinct_bonds():
+        bond, orders = report.coordination.bonds[place], report.orders[place]
         if bond.may_be_multiple:
             rows += [
                 [
@@ -200,12 +218,15 @@ def _hybrid_cells(report: BondReport, bond: MetalDonorBond, channel: BondChannel
 
 def _charges(report: BondReport) -> list[str]:
     unpaired = bool(report.fragment.unpaired_electrons)
+    crystal = report.fragment.crystal
     listed = sorted({*report.coordination.metals, *(bond.donor for bond in report.coordination.bonds)})
     rows = [["atom", "charge/e", *(["unpaired/e"] if unpaired else [])]]
     for atom in listed:
+        if crystal is not None and crystal.first_equivalent(atom) != atom:
+            continue
         deviation = None if report.spread is None else float(report.spread.charges[atom])
         charge = with_deviation(f"{report.populations.charges[atom]:+.2f}", deviation, 2)
-        row = [report.fragment.labels[atom], charge]
+        row = [", ".join(_alike(report, atom)), charge]
         rows.append([*row, f"{report.populations.spin[atom]:.2f}"] if unpaired else row)
     rest = np.delete(np.arange(len(report.fragment)), listed)
     if len(rest):

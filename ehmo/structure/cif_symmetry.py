@@ -61,11 +61,12 @@ def item(block: gemmi.cif.Block, tag: str) -> str | None:
 
 
 def item_text(block: gemmi.cif.Block, tag: str) -> str:
-    """Text of a CIF item; empty where it is absent or null."""
+    """Text of a CIF item; empty where it is absent or null, also where a text field holds nothing but the null."""
     from gemmi import cif
 
     value = item(block, tag)
-    return "" if value is None or cif.is_null(value) else cif.as_string(value)
+    text = "" if value is None or cif.is_null(value) else cif.as_string(value)
+    return "" if text.strip() in ("?", ".") else text
 
 
 def symmetry_operations(block: gemmi.cif.Block, place: str, notes: list[str]) -> tuple[FloatArray, FloatArray]:

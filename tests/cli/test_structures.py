@@ -6,8 +6,12 @@ import json
 
 import pytest
 
+from ehmo import Options, bond_report
+from ehmo.structure import crystal_contents
+from ehmo.structure.crystal import molecules_of
 from tests.cli.conftest import VOCL3
 from tests.structure.cif_text import INVERSION, cif, tetraoxo
+from tests.structure.test_crystal_contents import C2, DICHROMATE, FOURFOLD, MONOCLINIC
 from tests.structure.test_hydrogens import AQUO
 
 EDGE = 14.0
@@ -83,12 +87,45 @@ def test_json_of_a_crystal_carries_multiplicities_and_labels(ehmo, put):
     document = json.loads(ehmo("bond", "a.cif", "--json", "-").out)
     assert document["fragment"]["multiplicity"] == 2
     assert [atom["site_label"] for atom in document["fragment"]["atoms"]] == ["Cr1", "O1", "O2", "O3", "O4"]
-    assert [bond["multiplicity"] for bond in document["bonds"]] == [2, 2, 2, 2]
+    assert [(bond["per_metal"], bond["multiplicity"]) for bond in document["bonds"]] == [(1, 2)] * 4
     assert document["fragment"]["charge_reason"] == "balance of the crystal: 2 K+ for each"
     put(VOCL3)
     plain = json.loads(ehmo("bond", "a.xyz", "--json", "-").out)
     assert plain["fragment"]["multiplicity"] is None
     assert {bond["multiplicity"] for bond in plain["bonds"]} == {None}
+
+
+def test_equal_bonds_of_a_crystal_are_listed_once(ehmo, put):
+    put(cif(["Cr1 Cr 0 0 0", "O1 O 0.1053 0.1053 0.1053", "Ba1 Ba 0.5 0.5 0.5"], operations=FOURFOLD), "a.cif")
+    (bond,) = json.loads(ehmo("bond", "a.cif", "--json", "-").out)["bonds"]
+    assert (bond["label"], bond["per_metal"], bond["multiplicity"]) == ("Cr1-O2", 4, 4)
+    lines = ehmo("bond", "a.cif").out.splitlines()
+    (row,) = [line.split() for line in lines if line.startswith("  Cr1-O2  oxo")]
+    assert row[3:5] == ["4", "4"]
+    assert any(line.split()[:4] == ["O2,", "O3,", "O4,", "O5"] for line in lines)
+
+
+def test_equal_metals_of_a_crystal_are_listed_once(ehmo, put):
+    put(cif(DICHROMATE, cell=MONOCLINIC, operations=C2), "a.cif")
+    stated = ("bond", "a.cif", "--charge", "-2", "--unpaired", "0")
+    bonds = json.loads(ehmo(*stated, "--json", "-").out)["bonds"]
+    assert len(bonds) == 4
+    assert {(bond["per_metal"], bond["multiplicity"]) for bond in bonds} == {(1, 4)}
+    assert {bond["metal"] for bond in bonds} == {0}
+    out = ehmo(*stated).out
+    assert out.count("Bonds of Cr") == 1
+    assert "\nCr1, Cr2: Cr(VI)" in out or "\nCr1, Cr2: bond-valence" in out
+
+
+def test_symmetry_makes_the_bonds_equal_that_it_says_it_does(put):
+    path = put(cif(DICHROMATE, cell=MONOCLINIC, operations=C2), "a.cif")
+    (molecule,) = molecules_of(crystal_contents(path))
+    report = bond_report(molecule, options=Options(charge=-2, unpaired_electrons=0))
+    first = report.distinct_bonds()
+    assert len(first) == 4
+    assert len(report.orders) == 8
+    mayer = sorted(orders.mayer for orders in report.orders)
+    assert mayer == pytest.approx(sorted(2 * [report.orders[place].mayer for place in first]), abs=1e-7)
 
 
 def test_molecule_that_cannot_be_calculated_does_not_hide_the_others(ehmo, put):

@@ -100,6 +100,7 @@ FIELDS = {
         "label",
         "kind",
         "length_A",
+        "per_metal",
         "multiplicity",
         "bond_valence",
         "overlap_population",

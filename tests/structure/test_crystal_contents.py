@@ -365,3 +365,9 @@ def test_several_blocks_and_a_faulty_one(tmp_path):
     with pytest.raises(InputError, match="2 crystal structures"):
         crystal_contents(path)
     assert len(read_frames(path)) == 2
+
+
+@pytest.mark.parametrize("value", ["?", "\n;\n?\n;", "'.'"])
+def test_title_that_says_nothing_is_none(read, value):
+    contents = read(cif(tetraoxo(), extra=f"_chemical_name_systematic {value}", name="own"))
+    assert contents.title == "own"
