@@ -64,3 +64,7 @@ class ConvergenceError(EhmoError):
 
 class MultipletError(EhmoError):
     """Terms or magnetism asked of a shell that has none to give, or more than are computed here."""
+
+
+class StoreError(EhmoError):
+    """A store of results that cannot be opened, read or written."""
