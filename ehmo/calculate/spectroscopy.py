@@ -16,7 +16,6 @@ from ehmo.analysis.multiplets import (
     multiplet_terms,
     reduced_momentum,
 )
-from ehmo.analysis.symmetry import term_symbol
 from ehmo.calculate.numbers import Bonding
 from ehmo.calculate.sites import group_axes_in_frame
 from ehmo.errors import EhmoError, MultipletError
@@ -94,7 +93,7 @@ def _shell_results(
     if shell.n_electrons in (0, closed):
         return replace(
             _nothing("terms, bands within the shell and magnetism: the shell is empty or full"),
-            ground_term=f"1{term_symbol(group.irreps[0])}" if shell.unpaired == 0 else "",
+            ground_term=f"1{group.term_irreps[0]}" if shell.unpaired == 0 else "",
         )
     try:
         constants, repulsion = _constants(fragment, shell.site, shell.ladder, shell.n_electrons, options)

@@ -64,19 +64,24 @@ class PointGroup:
     def __len__(self) -> int:
         return len(self.operations)
 
+    @property
+    def term_irreps(self) -> tuple[str, ...]:
+        """Symbols of the irreps as they stand in terms: the first letter a capital, such as ``B2`` or ``Σg+``."""
+        return tuple(irrep[:1].upper() + irrep[1:] for irrep in self.irreps)
+
     def multiplicities(self, characters: FloatArray) -> IntArray:
         """How often each irrep occurs in a representation.
 
         Parameters
         ----------
-        characters : (n_ops,) ndarray
+        characters : (..., n_ops) ndarray
             Trace of the representation under each operation.
 
         Returns
         -------
-        counts : (n_irreps,) ndarray of int
+        counts : (..., n_irreps) ndarray of int
         """
-        counts: IntArray = np.round(self.projection_weights @ characters / self.dimensions).astype(np.intp)
+        counts: IntArray = np.round(characters @ self.projection_weights.T / self.dimensions).astype(np.intp)
         return counts
 
 

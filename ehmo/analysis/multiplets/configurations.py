@@ -7,7 +7,7 @@ from functools import lru_cache
 
 import numpy as np
 
-from ehmo.analysis.multiplets.groups import LabelGroup, label_group
+from ehmo.analysis.multiplets.groups import label_group, operation_powers
 from ehmo.errors import MultipletError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.symmetry import PointGroup
@@ -49,13 +49,13 @@ def configuration_terms(
 
 
 @lru_cache(maxsize=1024)
-def _allowed_terms(labels: LabelGroup, configuration: tuple[tuple[str, int], ...]) -> tuple[tuple[int, str, int], ...]:
+def _allowed_terms(labels: PointGroup, configuration: tuple[tuple[str, int], ...]) -> tuple[tuple[int, str, int], ...]:
     blocks = {0: np.ones(len(labels.operations))}
     for irrep, n_electrons in configuration:
         blocks = _coupled(blocks, _spin_blocks(labels, irrep, n_electrons))
     terms = []
     for two_s in sorted((two_m for two_m in blocks if two_m >= 0), reverse=True):
-        counts = labels.reduce(blocks[two_s] - blocks.get(two_s + 2, 0.0))
+        counts = labels.multiplicities(blocks[two_s] - blocks.get(two_s + 2, 0.0))
         terms += [
             (two_s + 1, irrep, int(count)) for irrep, count in zip(labels.term_irreps, counts, strict=True) if count
         ]
@@ -68,7 +68,7 @@ def highest_spin_terms(group: PointGroup | None, configuration: Sequence[tuple[s
     return tuple(f"{mult}{irrep}" for mult, irrep, count in terms for _ in range(count) if mult == terms[0][0])
 
 
-def _spin_blocks(labels: LabelGroup, irrep: str, n_electrons: int) -> dict[int, FloatArray]:
+def _spin_blocks(labels: PointGroup, irrep: str, n_electrons: int) -> dict[int, FloatArray]:
     """Characters of one level by 2 M_S."""
     if irrep not in labels.irreps:
         raise MultipletError(f"{labels.name} has no irrep {irrep!r}", mend=f"use one of {', '.join(labels.irreps)}")
@@ -76,7 +76,7 @@ def _spin_blocks(labels: LabelGroup, irrep: str, n_electrons: int) -> dict[int, 
     dimension = int(labels.dimensions[place])
     if not 0 <= n_electrons <= 2 * dimension:
         raise MultipletError(f"{irrep} holds at most {2 * dimension} electrons, not {n_electrons}")
-    powers = _exterior_powers(labels.characters[place][labels.powers(dimension)])
+    powers = _exterior_powers(labels.by_operation[place][operation_powers(labels, dimension)])
     splits = [(a, n_electrons - a) for a in range(dimension + 1) if 0 <= n_electrons - a <= dimension]
     return {a - b: powers[a] * powers[b] for a, b in splits}
 
@@ -129,9 +129,8 @@ def dipole_polarisations(group: PointGroup | None, lower: str, upper: str) -> st
             raise MultipletError(
                 f"{labels.name} has no irrep {irrep!r}", mend=f"use one of {', '.join(labels.term_irreps)}"
             )
-        product = product * labels.characters[labels.term_irreps.index(irrep)]
-    present = labels.reduce(product) > 0
-    scale = labels.dimensions / labels.norms / len(labels.operations)
+        product = product * labels.by_operation[labels.term_irreps.index(irrep)]
+    present = labels.multiplicities(product) > 0
     # Diagonal elements of the projectors on the vectors x, y, z.
-    axes = (scale[:, None] * labels.characters) @ np.diagonal(labels.operations, axis1=1, axis2=2)
+    axes = labels.projection_weights @ np.diagonal(labels.operations, axis1=1, axis2=2)
     return "".join(letter for letter, part in zip("xyz", axes[present].sum(axis=0), strict=True) if part > 1e-6)

@@ -8,10 +8,10 @@ from functools import lru_cache
 import numpy as np
 
 from ehmo.analysis.multiplets.determinants import fermion_space
-from ehmo.analysis.multiplets.groups import LabelGroup
 from ehmo.analysis.multiplets.spin_adapted import SpinSpace
 from ehmo.harmonics import harmonic_rotations
 from ehmo.records.arrays import FloatArray, IntArray
+from ehmo.records.symmetry import PointGroup
 
 MOMENTUM_LETTERS = "SPDFGHIKLMNOQ"
 """Letters of L = 0, 1, 2, .."""
@@ -96,20 +96,19 @@ def momentum_basis(space: SpinSpace) -> SortedBasis:
 
 
 @lru_cache(maxsize=128)
-def orbital_basis(group: LabelGroup, l: int) -> SortedBasis:
+def orbital_basis(group: PointGroup, l: int) -> SortedBasis:
     """Basis of one shell in the axes of the group, small letters."""
     matrices = harmonic_rotations(group.operations, l)
     return sorted_basis(group.irreps, group.dimensions, _projectors(group, matrices.reshape(len(matrices), -1)))
 
 
 @lru_cache(maxsize=256)
-def term_basis(group: LabelGroup, space: SpinSpace) -> SortedBasis:
+def term_basis(group: PointGroup, space: SpinSpace) -> SortedBasis:
     """Basis of all functions of one spin in the axes of the group, capitals."""
     turned = harmonic_rotations(group.operations, space.l)
     alpha, beta = minors(turned, space.n_alpha), minors(turned, space.n_beta)
     # A product of strings turns with the product of the minors; summing over operations first keeps this small.
-    weights = _projection_weights(group)
-    combined = weights @ np.einsum("gab,gcd->gacbd", alpha, beta).reshape(len(turned), -1)
+    combined = group.projection_weights @ np.einsum("gab,gcd->gacbd", alpha, beta).reshape(len(turned), -1)
     size = alpha.shape[1] * beta.shape[1]
     projectors = space.vectors.T @ combined.reshape(-1, size, size) @ space.vectors
     return sorted_basis(group.term_irreps, group.dimensions, projectors)
@@ -136,16 +135,10 @@ def minors(matrices: FloatArray, order: int) -> FloatArray:
     return compounds
 
 
-def _projection_weights(group: LabelGroup) -> FloatArray:
-    """(n_irreps, n_ops) factors of the operations in each projector."""
-    scale = group.dimensions / group.norms / len(group.operations)
-    return scale[:, None] * group.characters
-
-
-def _projectors(group: LabelGroup, matrices: FloatArray) -> FloatArray:
+def _projectors(group: PointGroup, matrices: FloatArray) -> FloatArray:
     """Projectors from flattened matrices of the operations."""
     size = round(matrices.shape[1] ** 0.5)
-    return (_projection_weights(group) @ matrices).reshape(-1, size, size)
+    return (group.projection_weights @ matrices).reshape(-1, size, size)
 
 
 def irrep_of_states(shares: FloatArray, counts: IntArray) -> IntArray:

@@ -9,7 +9,7 @@ import numpy as np
 
 from ehmo.analysis.multiplets.configurations import highest_spin_terms
 from ehmo.analysis.multiplets.determinants import fermion_space
-from ehmo.analysis.multiplets.groups import LabelGroup, label_group
+from ehmo.analysis.multiplets.groups import label_group
 from ehmo.analysis.multiplets.irreps import (
     MOMENTUM_LETTERS,
     SortedBasis,
@@ -158,7 +158,7 @@ def _numbered(irreps: list[str]) -> list[str]:
     ]
 
 
-def _unnumbered(labels: LabelGroup, configuration: tuple[tuple[str, int], ...]) -> list[tuple[str, int]]:
+def _unnumbered(labels: PointGroup, configuration: tuple[tuple[str, int], ...]) -> list[tuple[str, int]]:
     """Configuration with bare irreps: the number before a repeated one is dropped."""
     return [(label if label in labels.irreps else label.lstrip("0123456789"), count) for label, count in configuration]
 

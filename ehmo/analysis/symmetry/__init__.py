@@ -6,7 +6,7 @@ from ehmo.analysis.symmetry.adapted import donor_irreps, functions_of_atoms, she
 from ehmo.analysis.symmetry.detect import find_symmetry
 from ehmo.analysis.symmetry.groups import GROUP_NAMES, point_group
 from ehmo.analysis.symmetry.irreps import lowdin_rows, orbital_irreps
-from ehmo.analysis.symmetry.labels import ascii_symbol, term_symbol
+from ehmo.analysis.symmetry.labels import ascii_symbol
 from ehmo.analysis.symmetry.shape import shape_measures
 
 __all__ = [
@@ -20,5 +20,4 @@ __all__ = [
     "point_group",
     "shape_measures",
     "shell_irreps",
-    "term_symbol",
 ]

@@ -52,11 +52,6 @@ def ascii_symbol(symbol: str) -> str:
     return f"{name}_{rest}" if rest[:1] in ("g", "u") else name + rest
 
 
-def term_symbol(irrep: str) -> str:
-    """Representation as it stands in a term: its first letter a capital, such as ``B2`` or ``Σg+``."""
-    return irrep[:1].upper() + irrep[1:]
-
-
 def with_parity(stem: str, suffix: str) -> str:
     """Mulliken symbol with g, u, ' or '' in its place: ``b1`` and ``g`` give ``b1g``, ``σ+`` and ``u`` give ``σu+``."""
     return f"{stem[:-1]}{suffix}{stem[-1]}" if stem[-1] in "+-" else stem + suffix
