@@ -5,5 +5,18 @@ from ehmo.store.opening import open_store
 from ehmo.store.packing import PackedRow, pack
 from ehmo.store.records import DONE, FAILED, Provenance, StoredRow
 from ehmo.store.store import Store
+from ehmo.store.where import Condition, condition
 
-__all__ = ["DONE", "FAILED", "PackedRow", "Provenance", "Store", "StoredRow", "masked", "open_store", "pack"]
+__all__ = [
+    "DONE",
+    "FAILED",
+    "Condition",
+    "PackedRow",
+    "Provenance",
+    "Store",
+    "StoredRow",
+    "condition",
+    "masked",
+    "open_store",
+    "pack",
+]

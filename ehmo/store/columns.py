@@ -110,6 +110,24 @@ def _first_band(kinds: tuple[str, ...]) -> Callable[[Document], Any]:
     return value
 
 
+def _sphere_groups(document: Document) -> str | None:
+    spheres = _at("symmetry", "spheres")(document) or ()
+    return " ".join(str(sphere.get("point_group")) for sphere in spheres) or None
+
+
+def _gap(document: Document) -> Any:
+    gap = _at("health", "frontier_gap_eV")(document)
+    return _at("gap", "gap_eV")(document) if gap is None else gap
+
+
+def _leaning(_: Document, bond: Document) -> Any:
+    return _at("reactivity", "leaning")(bond)
+
+
+def _mayer_sd(_: Document, bond: Document) -> Any:
+    return _at("spread", "mayer")(bond)
+
+
 def _stored(name: str, kind: Kind, unit: str, meaning: str) -> Column:
     """Column whose value comes with the row, not out of the document."""
     return Column(name, kind, unit, meaning, lambda: None)
@@ -141,10 +159,16 @@ STRUCTURE_COLUMNS = (
     Column("oxidation_state", "integer", "", "of a single metal, by counting", _at("oxidation_state")),
     Column("d_count", "integer", "", "d electrons by counting", _at("d_count")),
     Column("point_group", "text", "", "of the whole molecule", _at("symmetry", "molecule", "point_group")),
+    Column("sphere_point_group", "text", "", "of each coordination sphere, idealised", _sphere_groups),
     Column("ground_term", "text", "", "ground term", _at("ground_term")),
     Column("first_band_per_cm", "real", "1/cm", "lowest d-d or f-f band", _first_band(("d-d", "f-f"))),
+    Column(
+        "first_charge_transfer_per_cm", "real", "1/cm", "lowest charge-transfer band", _first_band(("charge transfer",))
+    ),
     Column("energy_eV", "real", "eV", "electronic energy, of no use for lengths", _at("method", "energy_eV")),
-    Column("gap_eV", "real", "eV", "gap of the frontier orbitals", _at("health", "frontier_gap_eV")),
+    Column("gap_eV", "real", "eV", "gap of the frontier orbitals, or of the bands", _gap),
+    Column("charge_model", "text", "", "fixed or self-consistent charges", _at("method", "charge_model")),
+    Column("iterations", "integer", "", "iterations of the charges", _at("method", "iterations")),
     Column("bonds", "integer", "", "metal-donor bonds", _count("bonds")),
     Column("warnings", "integer", "", "number of things to doubt", _count("warnings")),
 )
@@ -160,9 +184,28 @@ BOND_COLUMNS = (
     Column("mayer", "real", "", "Mayer bond order", _of_bond("mayer")),
     Column("wiberg", "real", "", "Wiberg bond order", _of_bond("wiberg")),
     Column("formal_order", "real", "", "bond order by textbook counting", _of_bond("formal_order")),
+    Column("formal_order_words", "text", "", "the same in words", _of_bond("formal_order_words")),
     Column("sigma_weight", "real", "", "weight of the largest sigma channel", _weight("sigma", 0)),
     Column("pi_weight_1", "real", "", "weight of the largest pi channel", _weight("pi", 0)),
     Column("pi_weight_2", "real", "", "weight of the second pi channel", _weight("pi", 1)),
+    Column("delta_weight", "real", "", "weight of the largest delta channel", _weight("delta", 0)),
     Column("metal_charge", "real", "e", "Mulliken charge of the metal", _of_atom("metal", "mulliken_charge")),
     Column("donor_charge", "real", "e", "Mulliken charge of the donor", _of_atom("donor", "mulliken_charge")),
+    Column("metal_spin", "real", "", "alpha minus beta population of the metal", _of_atom("metal", "spin_population")),
+    Column("leaning", "text", "", "nucleophilic to electrophilic, of a multiply bonded donor", _leaning),
+    Column("mayer_sd", "real", "", "standard deviation of the Mayer order, where draws were made", _mayer_sd),
 )
+
+CONTEXT_COLUMNS = tuple(
+    column
+    for column in (*PROVENANCE_COLUMNS, *STRUCTURE_COLUMNS)
+    if column.name
+    in {"key", "source", "entry", "tags", "formula", "charge", "unpaired_electrons", "oxidation_state", "d_count"}
+)
+"""Columns of the structure that come before those of each of its bonds in a table."""
+
+TABLES: dict[str, tuple[Column, ...]] = {
+    "structures": (*PROVENANCE_COLUMNS, *STRUCTURE_COLUMNS),
+    "bonds": (*CONTEXT_COLUMNS, *BOND_COLUMNS),
+}
+"""Tables that leave the store, one row per structure and one per bond."""

@@ -25,14 +25,15 @@ class Database(Protocol):
     """Where it lies, without secrets."""
     blob: str
     """Its type of binary data."""
-    like: str
-    """Its operator for patterns that ignore case."""
 
     def run(self, work: Callable[[Session], Result], *, write: bool = False) -> Result:
         """Do the work in one transaction: all of it or nothing. Work may be repeated if the connection is lost."""
 
     def tables(self, session: Session) -> set[str]:
         """Names of the tables."""
+
+    def columns(self, session: Session, table: str) -> set[str]:
+        """Names of the columns of a table."""
 
     def close(self) -> None:
         """Let go of the database."""

@@ -5,14 +5,14 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
-_DATABASE = re.compile(r"postgres(?:ql)?(?:\+\w+)?://", re.IGNORECASE)
-_USER_PART = re.compile(r"^(\w[\w+]*://[^/?#]*?):.*@", re.DOTALL)
+_DATABASE = re.compile(r"postgres(?:ql)?(?:\+\w+)?:/", re.IGNORECASE)
+_USER_PART = re.compile(r"^(\w[\w+]*:/{1,2}[^/?#]*?):.*@", re.DOTALL)
 _SECRET = re.compile(r"([?&](?:password|passfile|sslpassword|sslkey)=)[^&#]*", re.IGNORECASE)
 
 
 def is_database(location: str | Path) -> bool:
     """Whether the location is the address of a PostgreSQL database."""
-    return isinstance(location, str) and _DATABASE.match(location) is not None
+    return _DATABASE.match(str(location)) is not None
 
 
 def masked(location: str | Path) -> str:

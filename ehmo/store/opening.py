@@ -37,14 +37,27 @@ def open_store(
     StoreError
         If there is none, it is no store, it is damaged, locked, or written by a newer version of the program.
     """
+    database: Database
     if is_database(location):
-        raise StoreError("PostgreSQL is not available yet", place=masked(location), mend="give a file name")
-    database: Database = _sqlite(Path(location), create=create, read_only=read_only, wait_s=wait_s)
+        database = _postgres(str(location), read_only=read_only, wait_s=wait_s)
+    else:
+        database = _sqlite(Path(location), create=create, read_only=read_only, wait_s=wait_s)
     try:
         return Store(database, create=create, read_only=read_only)
     except BaseException:
         database.close()
         raise
+
+
+def _postgres(address: str, *, read_only: bool, wait_s: float) -> Database:
+    try:
+        from ehmo.store.postgres import PostgresDatabase
+
+        return PostgresDatabase(address, read_only=read_only, wait_s=wait_s)
+    except ImportError:
+        raise StoreError(
+            "SQLAlchemy and psycopg are not installed", place=masked(address), mend="pip install 'ehmo[postgres]'"
+        ) from None
 
 
 def _sqlite(path: Path, *, create: bool, read_only: bool, wait_s: float) -> Database:

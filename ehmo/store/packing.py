@@ -36,6 +36,21 @@ class PackedRow:
     bonds: tuple[Mapping[str, Cell], ...]
     document: bytes | None
 
+    @property
+    def key(self) -> str:
+        """Key of the row."""
+        return str(self.structure["key"])
+
+    @property
+    def status(self) -> str:
+        """Whether it is done or failed."""
+        return str(self.structure["status"])
+
+    @property
+    def started_utc(self) -> str:
+        """Start of the calculation."""
+        return str(self.structure["started_utc"])
+
 
 def pack(row: StoredRow) -> PackedRow:
     """Row with its document compressed and the cells of its columns taken out."""

@@ -6,8 +6,8 @@ from collections.abc import Sequence
 
 from ehmo.store.columns import BOND_COLUMNS, PROVENANCE_COLUMNS, STRUCTURE_COLUMNS, Column
 
-SCHEMA_VERSION = 1
-"""Rises with every change of tables or columns; `migrations` brings older stores forward."""
+SCHEMA_VERSION = 2
+"""Rises with every change of tables or columns; `versions` brings older stores forward."""
 
 FACTS_TABLE = "ehmo_store"
 """Name and value of facts on the store itself, its version among them."""
@@ -53,3 +53,8 @@ def listed(names: Sequence[str], table: str = "") -> str:
 def insertion(table: str, names: Sequence[str]) -> str:
     """Statement that inserts one row with bound values."""
     return f"INSERT INTO {table} ({listed(names)}) VALUES ({', '.join(f':{name}' for name in names)})"
+
+
+def assigned(names: Sequence[str]) -> str:
+    """Assignments of bound values to columns."""
+    return ", ".join(f'"{name}" = :{name}' for name in names)

@@ -47,7 +47,6 @@ class SqliteDatabase:
     """
 
     blob = "BLOB"
-    like = "LIKE"
 
     def __init__(self, path: Path, *, read_only: bool, wait_s: float) -> None:
         self.name = str(path)
@@ -72,6 +71,10 @@ class SqliteDatabase:
     def tables(self, session: Session) -> set[str]:
         """Names of the tables."""
         return {str(row[0]) for row in session.select("SELECT name FROM sqlite_master WHERE type = 'table'")}
+
+    def columns(self, session: Session, table: str) -> set[str]:
+        """Names of the columns of a table."""
+        return {str(row[0]) for row in session.select("SELECT name FROM pragma_table_info(:table)", {"table": table})}
 
     def close(self) -> None:
         """Close the file; the last to close it folds the write-ahead file back."""
