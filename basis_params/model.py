@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import math
 from collections.abc import Iterator, Mapping
 from dataclasses import asdict, dataclass, field
 from typing import Any, Generic, Literal, TypeVar
@@ -103,6 +104,49 @@ class ElementParameters:
 
 
 @dataclass(frozen=True, slots=True)
+class PairRepulsion:
+    """Two-body energy of one pair of elements, A exp(-B R), fitted to bonds of a stated range of lengths.
+
+    Attributes
+    ----------
+    first, second : str
+        Elements, the one of higher atomic number first.
+    amplitude_eV : float
+        A; negative for a pair that the orbitals alone bind too weakly [eV].
+    decay_per_A : float
+        B [A^-1].
+    lowest_A, highest_A : float
+        Shortest and longest bond that the pair was fitted to [A].
+    source_key, locator : str
+        As of a shell.
+    provenance : {"read", "memory", "derived"}
+    """
+
+    first: str
+    second: str
+    amplitude_eV: float
+    decay_per_A: float
+    lowest_A: float
+    highest_A: float
+    source_key: str
+    locator: str
+    provenance: Provenance
+
+    @property
+    def label(self) -> str:
+        """The pair as people write it, such as ``V-O``."""
+        return f"{self.first}-{self.second}"
+
+    def energy_eV(self, distance_A: float) -> float:
+        """A exp(-B R) [eV]."""
+        return self.amplitude_eV * math.exp(-self.decay_per_A * distance_A)
+
+    def covers(self, distance_A: float) -> bool:
+        """Whether a bond of this length lies within the calibrated range."""
+        return self.lowest_A <= distance_A <= self.highest_A
+
+
+@dataclass(frozen=True, slots=True)
 class ModelSettings:
     """Constants of the Hamiltonian that belong to a parameter set.
 
@@ -154,8 +198,10 @@ class ParameterTable:
         Free remarks at the head of the file; no part of the content.
     origin : str
         ``built in`` or the path of the file.
+    repulsion : mapping of str to PairRepulsion
+        Two-body terms by their label, such as ``V-O``; empty for a set that is not calibrated for energies.
     content_sha256 : str
-        Hash of name, edition, settings and all shells.
+        Hash of name, edition, settings, all shells and pairs.
     """
 
     name: str
@@ -165,10 +211,12 @@ class ParameterTable:
     inherited: tuple[str, ...] = ()
     notes: tuple[str, ...] = ()
     origin: str = "built in"
+    repulsion: Mapping[str, PairRepulsion] = field(default_factory=lambda: FrozenMapping({}))
     content_sha256: str = field(init=False)
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "elements", FrozenMapping(self.elements))
+        object.__setattr__(self, "repulsion", FrozenMapping(self.repulsion))
         object.__setattr__(self, "content_sha256", self._digest())
 
     def _digest(self) -> str:
@@ -180,6 +228,8 @@ class ParameterTable:
             "sd": dict(self.settings.sd),
             "elements": {symbol: asdict(element) for symbol, element in self.elements.items()},
         }
+        if self.repulsion:  # left out where there is none: the hash of such a table keys results of earlier editions
+            content["repulsion"] = {label: asdict(pair) for label, pair in self.repulsion.items()}
         return hashlib.sha256(json.dumps(content, sort_keys=True).encode()).hexdigest()
 
     def __eq__(self, other: object) -> bool:
@@ -201,3 +251,7 @@ class ParameterTable:
         if symbol not in self.elements:
             raise MissingElementError(symbol, self.name, tuple(self.elements))
         return self.elements[symbol]
+
+    def pair_repulsion(self, symbol: str, other: str) -> PairRepulsion | None:
+        """Return the two-body term of two elements in either order; None where the set has none."""
+        return self.repulsion.get(f"{symbol}-{other}") or self.repulsion.get(f"{other}-{symbol}")

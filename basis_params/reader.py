@@ -18,6 +18,7 @@ from basis_params.faults import (
     split_rows,
 )
 from basis_params.model import ElementParameters, ModelSettings, ParameterTable, Provenance, Shell
+from basis_params.repulsion import is_repulsion, parse_repulsion
 from basis_params.slater import radial_moment
 
 COLUMNS = (
@@ -71,8 +72,9 @@ def parse_table(text: str, origin: str, default_name: str, base: ParameterTable 
     faults = FaultList(origin)
     lines = text.splitlines()
     head = next((i for i, line in enumerate(lines) if line.strip() and not line.lstrip().startswith("#")), len(lines))
-    keys, notes = _split_head(lines[:head], faults)
+    keys, notes, pairs = _split_head(lines[:head], faults)
     settings, inherited = _settings(keys, base, faults)
+    repulsion = parse_repulsion(pairs, faults)
     header, rows = split_rows("\n".join(lines[head:]), head + 1, faults)
     _check_columns(header, head + 1, faults)
     faults.raise_if_any()
@@ -80,14 +82,20 @@ def parse_table(text: str, origin: str, default_name: str, base: ParameterTable 
     name = keys["name"][1] if "name" in keys else plain_text(default_name, "name", 1, faults)
     _, edition = keys.get("edition", (0, UNSTATED_EDITION))
     faults.raise_if_any()
-    return ParameterTable(name, edition, settings, elements, inherited, notes, origin)
+    return ParameterTable(name, edition, settings, elements, inherited, notes, origin, repulsion)
 
 
-def _split_head(lines: list[str], faults: FaultList) -> tuple[dict[str, tuple[int, str]], tuple[str, ...]]:
-    """Separate ``# key = value`` lines (with their line number) from notes."""
+def _split_head(
+    lines: list[str], faults: FaultList
+) -> tuple[dict[str, tuple[int, str]], tuple[str, ...], list[tuple[int, str]]]:
+    """Separate ``# key = value`` lines and two-body terms (with their line numbers) from notes."""
     keys: dict[str, tuple[int, str]] = {}
     notes = []
+    pairs = []
     for line, text in enumerate((raw.strip() for raw in lines), start=1):
+        if is_repulsion(text):
+            pairs.append((line, text))
+            continue
         match = _KEY_LINE.fullmatch(text)
         if match is None:
             note = text.lstrip("#").strip()
@@ -101,7 +109,7 @@ def _split_head(lines: list[str], faults: FaultList) -> tuple[dict[str, tuple[in
             faults.add(line, f"{key} is set twice: keep one (first on line {keys[key][0]})")
         else:
             keys[key] = (line, plain_text(value, key, line, faults) if key in TEXT_KEYS else value)
-    return keys, tuple(notes)
+    return keys, tuple(notes), pairs
 
 
 def _settings(

@@ -7,6 +7,7 @@ import io
 
 from basis_params.model import ElementParameters, ParameterTable, Shell
 from basis_params.reader import COLUMNS, OPTIONAL_COLUMNS, SETTING_KEYS
+from basis_params.repulsion import repulsion_line
 
 
 def format_table(table: ParameterTable) -> str:
@@ -19,6 +20,7 @@ def format_table(table: ParameterTable) -> str:
         text = ("no", "yes")[value] if key == "weighting" else "K" if value is None else repr(value)
         out.write(f"# {key} = {text}\n")
     out.writelines(f"# {key}_sd = {value!r}\n" for key, value in settings.sd.items())
+    out.writelines(f"{repulsion_line(term)}\n" for term in table.repulsion.values())
     out.writelines(f"# {note}\n" for note in table.notes)
     writer = csv.writer(out, lineterminator="\n")
     writer.writerow([*COLUMNS, *OPTIONAL_COLUMNS])

@@ -39,6 +39,47 @@ def real_harmonics(directions: FloatArray, l_max: int) -> FloatArray:
        Momentum, World Scientific 1988, chapter 5 (from memory).
     """
     polynomials, azimuth = _harmonic_factors(l_max)
+    z_powers, xy_powers = _coordinate_powers(directions, l_max)
+    # x^2 + y^2 = sin^2(theta), so the powers of (x + iy) carry both the azimuth and the sine factor.
+    parts: FloatArray = xy_powers.view(np.float64)
+    result: FloatArray = (z_powers @ polynomials) * parts[:, azimuth]
+    return result
+
+
+def harmonic_gradients(directions: FloatArray, l_max: int) -> FloatArray:
+    """Derivatives of the real harmonics by x, y and z of the direction.
+
+    The harmonics are taken as the polynomials in x, y, z that `real_harmonics` evaluates: on the sphere they are right,
+    off it one choice of many, so only the part of each gradient across its direction has a meaning.
+
+    Parameters
+    ----------
+    directions : (n, 3) ndarray
+        Unit vectors.
+    l_max : int
+        Highest degree, at most 7.
+
+    Returns
+    -------
+    gradients : (n, (l_max + 1)**2, 3) ndarray
+    """
+    polynomials, azimuth = _harmonic_factors(l_max)
+    z_powers, xy_powers = _coordinate_powers(directions, l_max)
+    orders = np.arange(l_max + 1)
+    z_slopes = np.zeros_like(z_powers)
+    z_slopes[:, 1:] = z_powers[:, :-1] * orders[1:]
+    xy_slopes = np.zeros_like(xy_powers)  # d/dx (x + iy)^m; d/dy is i times that
+    xy_slopes[:, 1:] = xy_powers[:, :-1] * orders[1:]
+    gradients = np.empty((len(directions), (l_max + 1) ** 2, 3))
+    along_z = z_powers @ polynomials
+    gradients[:, :, 0] = along_z * xy_slopes.view(np.float64)[:, azimuth]
+    gradients[:, :, 1] = along_z * (1j * xy_slopes).view(np.float64)[:, azimuth]
+    gradients[:, :, 2] = (z_slopes @ polynomials) * xy_powers.view(np.float64)[:, azimuth]
+    return gradients
+
+
+def _coordinate_powers(directions: FloatArray, l_max: int) -> tuple[FloatArray, NDArray[np.complex128]]:
+    """Powers of z and of x + iy up to l_max."""
     z_powers = np.empty((len(directions), l_max + 1))
     xy_powers = np.empty((len(directions), l_max + 1), dtype=np.complex128)
     z_powers[:, 0] = 1.0
@@ -49,10 +90,7 @@ def real_harmonics(directions: FloatArray, l_max: int) -> FloatArray:
         xy_powers[:, 1:].imag = directions[:, 1:2]
         np.multiply.accumulate(z_powers, axis=1, out=z_powers)
         np.multiply.accumulate(xy_powers, axis=1, out=xy_powers)
-    # x^2 + y^2 = sin^2(theta), so the powers of (x + iy) carry both the azimuth and the sine factor.
-    parts: FloatArray = xy_powers.view(np.float64)
-    result: FloatArray = (z_powers @ polynomials) * parts[:, azimuth]
-    return result
+    return z_powers, xy_powers
 
 
 @lru_cache(maxsize=MAX_L + 1)

@@ -52,6 +52,24 @@ class Bonding:
     orders: tuple[BondOrders, ...]
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Solution:
+    """Orbitals of a fragment with the matrices they come from; no interaction where charges are fixed.
+
+    Attributes
+    ----------
+    overlap : (n_ao, n_ao) ndarray
+        S.
+    interaction_eV : (n_atoms, n_atoms) ndarray or None
+        lambda gamma [eV].
+    state : ElectronicState
+    """
+
+    overlap: FloatArray
+    interaction_eV: FloatArray | None
+    state: ElectronicState
+
+
 def effective_settings(settings: ModelSettings, options: Options) -> ModelSettings:
     """Settings of the set with the constants that the options override; refused outside any sensible range."""
     names = ("K", "weighting", "K_sigma", "K_pi", "K_delta", "K_decay_per_A", "lambda_")
@@ -98,6 +116,26 @@ def calculate_bonding(
     EhmoError
         See `bond_report`.
     """
+    plan = checked_plan(fragment, table, options)
+    with threads_for(len(plan.basis)):
+        solution = solved(plan, fragment, settings, options)
+        spectrum = overlap_spectrum(solution.overlap, plan.basis)
+        state = solution.state
+        bonded = bonded_functions(coordination.bonds, plan.basis, spectrum, state, coordination.metals)
+        populations, orders = analyse_bonding(
+            coordination.bonds, fragment.positions_A, plan.basis, spectrum, state, bonded
+        )
+    return Bonding(plan, spectrum, state, bonded, populations, orders)
+
+
+def checked_plan(fragment: Fragment, table: ParameterTable, options: Options) -> OrbitalPlan:
+    """Plan of a fragment whose charge and spin are set and whose functions are within the limit.
+
+    Raises
+    ------
+    EhmoError
+        See `calculate_bonding`.
+    """
     if fragment.charge is None or fragment.unpaired_electrons is None:
         raise InputError("charge and unpaired electrons are not set", mend="set them with Fragment.with_electrons")
     n_functions = _count_functions(fragment, table)
@@ -106,25 +144,29 @@ def calculate_bonding(
             f"{n_functions} basis functions, more than the limit of {options.max_functions}",
             mend="cut the fragment, or raise the limit with --max-functions",
         )
-    plan = orbital_plan(fragment.symbols, table)
-    with threads_for(len(plan.basis)):
-        overlap, hamiltonian = _matrices(plan, fragment, settings)
-        spectrum = overlap_spectrum(overlap, plan.basis)
-        total = round(float(plan.basis.core_charges.sum())) - fragment.charge
-        count = ElectronCount(total, fragment.unpaired_electrons)
-        if options.charge_model == "fixed":
-            state = fixed_charges(hamiltonian, overlap, plan.basis, count)
-        else:
-            hardness = np.array([basis_params.atom(symbol).hardness_U_eV for symbol in fragment.symbols])
-            interaction = charge_interaction(fragment.positions_A, hardness, settings.lambda_)
-            state = self_consistent_charges(
-                hamiltonian, overlap, plan.basis, count, interaction, max_iterations=options.max_iterations
-            )
-        bonded = bonded_functions(coordination.bonds, plan.basis, spectrum, state, coordination.metals)
-        populations, orders = analyse_bonding(
-            coordination.bonds, fragment.positions_A, plan.basis, spectrum, state, bonded
-        )
-    return Bonding(plan, spectrum, state, bonded, populations, orders)
+    return orbital_plan(fragment.symbols, table)
+
+
+def solved(plan: OrbitalPlan, fragment: Fragment, settings: ModelSettings, options: Options) -> Solution:
+    """Orbitals of a fragment, with the matrices that they come from.
+
+    Raises
+    ------
+    EhmoError
+        See `calculate_bonding`.
+    """
+    assert fragment.charge is not None and fragment.unpaired_electrons is not None
+    overlap, hamiltonian = _matrices(plan, fragment, settings)
+    total = round(float(plan.basis.core_charges.sum())) - fragment.charge
+    count = ElectronCount(total, fragment.unpaired_electrons)
+    if options.charge_model == "fixed":
+        return Solution(overlap, None, fixed_charges(hamiltonian, overlap, plan.basis, count))
+    hardness = np.array([basis_params.atom(symbol).hardness_U_eV for symbol in fragment.symbols])
+    interaction = charge_interaction(fragment.positions_A, hardness, settings.lambda_)
+    state = self_consistent_charges(
+        hamiltonian, overlap, plan.basis, count, interaction, max_iterations=options.max_iterations
+    )
+    return Solution(overlap, interaction, state)
 
 
 def _count_functions(fragment: Fragment, table: ParameterTable) -> int:
@@ -137,19 +179,25 @@ def _count_functions(fragment: Fragment, table: ParameterTable) -> int:
 
 
 def _matrices(plan: OrbitalPlan, fragment: Fragment, settings: ModelSettings) -> tuple[FloatArray, FloatArray]:
-    """Overlap and fixed Hamiltonian; channels are scaled apart only where the set says so."""
-    by_channel = channel_constants(settings)
-    if len(set(by_channel)) == 1 and not settings.K_decay_per_A:
-        overlap = overlap_matrix(plan, fragment.positions_A)
-        scaled = None
+    """Overlap and fixed Hamiltonian."""
+    scale = channel_scale(fragment.symbols, settings)
+    if scale is None:
+        overlap, scaled = overlap_matrix(plan, fragment.positions_A), None
     else:
-        radii = tuple(basis_params.atom(symbol).covalent_radius_A for symbol in fragment.symbols)
-        scale = ChannelScale(by_channel, settings.K_decay_per_A, radii)
         overlap, scaled = scaled_overlap_matrices(plan, fragment.positions_A, scale)
     hamiltonian = wolfsberg_helmholz(
-        plan.basis, overlap, by_channel[0], weighting=settings.weighting, scaled_overlap=scaled
+        plan.basis, overlap, channel_constants(settings)[0], weighting=settings.weighting, scaled_overlap=scaled
     )
     return overlap, hamiltonian
+
+
+def channel_scale(symbols: tuple[str, ...], settings: ModelSettings) -> ChannelScale | None:
+    """Factors of the channels; None where one K serves all of them at every distance."""
+    by_channel = channel_constants(settings)
+    if len(set(by_channel)) == 1 and not settings.K_decay_per_A:
+        return None
+    radii = tuple(basis_params.atom(symbol).covalent_radius_A for symbol in symbols)
+    return ChannelScale(by_channel, settings.K_decay_per_A, radii)
 
 
 def channel_constants(settings: ModelSettings) -> tuple[float, float, float, float]:

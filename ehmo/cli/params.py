@@ -12,7 +12,7 @@ from ehmo.errors import ParameterError, visible
 from ehmo.records.table import aligned
 
 if TYPE_CHECKING:
-    from basis_params import ParameterTable
+    from basis_params import PairRepulsion, ParameterTable
 
 
 def add_command(commands: Any) -> None:
@@ -87,8 +87,18 @@ def run_show(chosen: argparse.Namespace) -> str:
         head.append(f"not stated in the table, taken from the standard set: {', '.join(table.inherited)}")
     shown = [note for note in table.notes if not (found := _OUTLIER.match(note)) or found[1] in elements]
     notes = [line for note in shown for line in textwrap.wrap(visible(note), 100, subsequent_indent="  ")]
-    keys = sorted({shell.source_key for symbol in elements for shell in table.elements[symbol].shells})
-    sections = [_COLUMNS, _atoms_text(elements), _references_text(keys), ["Notes", *notes] if notes else []]
+    pairs = [term for term in table.repulsion.values() if {term.first, term.second} <= set(elements)]
+    keys = sorted(
+        {shell.source_key for symbol in elements for shell in table.elements[symbol].shells}
+        | {term.source_key for term in pairs}
+    )
+    sections = [
+        _COLUMNS,
+        _pairs_text(pairs),
+        _atoms_text(elements),
+        _references_text(keys),
+        ["Notes", *notes] if notes else [],
+    ]
     lines = [line for section in sections if section for line in ("", *section)]
     return "\n".join([*head, "", *aligned(rows, numeric=(1, 3)), *lines]) + "\n"
 
@@ -98,6 +108,7 @@ _OUTLIER = re.compile(r"Audit outlier: (\w+) ")
 _CHECKS = [
     "norm: integral of the squared function, 1. radius: mean radius, energy: H_ii, both against the orbital of a",
     "  computed free atom. ionisation: highest filled shell against the measured ionisation energy.",
+    "range, softness: of a two-body term, middle of its lengths against covalent radii, 1/B against closed shells.",
     "Functions meant for molecules are tighter and deeper than those of free atoms, empty p shells most of all:",
     "  the audits find wrong digits, exponents and elements; an outlier is a question, not a verdict.",
 ]
@@ -107,6 +118,28 @@ _COLUMNS = [
     "  of each Slater function, c its coefficient. origin: how the figure came into the table, read in the source,",
     "  from memory, or derived by a script.",
 ]
+
+
+def _pairs_text(pairs: Sequence[PairRepulsion]) -> list[str]:
+    """Two-body terms, if the set has any for these elements."""
+    rows = [["pair", "A/eV", "B/Å^-1", "bonds/Å", "source", "origin"]]
+    rows += [
+        [
+            term.label,
+            f"{term.amplitude_eV:.6g}",
+            f"{term.decay_per_A:.5g}",
+            f"{term.lowest_A:.2f} to {term.highest_A:.2f}",
+            visible(f"{term.source_key}, {term.locator}"),
+            term.provenance,
+        ]
+        for term in pairs
+    ]
+    if not pairs:
+        return []
+    return [
+        "Two-body repulsion A exp(-B R), with the range of bond lengths for which energies are calibrated",
+        *aligned(rows, numeric=(1, 2)),
+    ]
 
 
 def _atoms_text(elements: Sequence[str]) -> list[str]:

@@ -58,6 +58,10 @@ class ChannelScale:
         factors: FloatArray = 1 + (constants - 1) * np.exp(-self.decay_per_A * excess_A)[:, None]
         return factors
 
+    def factor_slopes(self, channel_m: IntArray, excess_A: FloatArray) -> FloatArray:
+        """Derivative of `factors` by the distance [A^-1]."""
+        return -self.decay_per_A * (self.factors(channel_m, excess_A) - 1)
+
 
 def overlap_matrix(plan: OrbitalPlan, positions_A: FloatArray) -> FloatArray:
     """Overlap matrix of the basis functions.

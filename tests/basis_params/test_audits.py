@@ -50,7 +50,7 @@ def test_outliers_are_exactly_those_named_in_the_notes(name):
 def test_every_shell_is_held_against_a_computed_atom(name):
     rows = audit(basis_params.load_set(name)).rows
     assert not [row for row in rows if row.status == "no reference"]
-    assert {row.check for row in rows} == {check for check, _ in BOUNDS}
+    assert {row.check for row in rows if row.shell != "pair"} == {check for check, _ in BOUNDS} - {"range", "softness"}
 
 
 def test_a_slipped_digit_is_found():

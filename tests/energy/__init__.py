@@ -1,0 +1,1 @@
+"""Energies, gradients, calculators."""
