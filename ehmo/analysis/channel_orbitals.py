@@ -69,7 +69,8 @@ def channel_orbitals(
                 metal_orbital=_over_basis(channel.metal_hybrid, on_metal, root),
                 donor_orbital=_over_basis(donor_hybrid, on_donor, root),
                 shares=parts / parts.sum(),
-                couplings=along * (donor_hybrid @ donor_rows),
+                metal_amplitudes=along,
+                donor_amplitudes=donor_hybrid @ donor_rows,
             )
         )
     return tuple(found)

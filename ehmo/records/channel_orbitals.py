@@ -19,25 +19,32 @@ class ChannelOrbitals:
         Hybrids over the basis functions, normalised, with the phases in which the density binds them.
     shares : (n_mo,) ndarray
         Part of the channel's weight that each orbital carries; they add up to 1, empty orbitals carry none.
-    couplings : (n_mo,) ndarray
-        Product of each orbital's amplitudes on the metal and on the donor hybrid (Löwdin functions): positive where
-        the two are in phase, negative in the antibonding orbitals of the channel, between -1/2 and 1/2.
+    metal_amplitudes, donor_amplitudes : (n_mo,) ndarray
+        Amplitude of each orbital on the metal and on the donor hybrid (Löwdin functions); the squares are its parts
+        on them.
     """
 
     metal_orbital: FloatArray
     donor_orbital: FloatArray
     shares: FloatArray
-    couplings: FloatArray
+    metal_amplitudes: FloatArray
+    donor_amplitudes: FloatArray
 
     def __post_init__(self) -> None:
         put = object.__setattr__
-        for name in ("metal_orbital", "donor_orbital", "shares", "couplings"):
+        for name in ("metal_orbital", "donor_orbital", "shares", "metal_amplitudes", "donor_amplitudes"):
             put(self, name, frozen_floats(getattr(self, name), (len(self.metal_orbital),), name))
 
     def carriers(self, least_share: float) -> tuple[int, ...]:
         """Orbitals whose share is at least so large in size, largest first."""
         order = np.argsort(-self.shares, kind="stable")
         return tuple(int(k) for k in order if abs(self.shares[k]) >= least_share)
+
+    @property
+    def couplings(self) -> FloatArray:
+        """(n_mo,) Product of the two amplitudes: positive in phase, negative in antibonding orbitals."""
+        products: FloatArray = self.metal_amplitudes * self.donor_amplitudes
+        return products
 
     @property
     def antibonding(self) -> int:

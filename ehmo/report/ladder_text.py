@@ -9,7 +9,7 @@ import numpy as np
 
 from ehmo.records.bands import Band
 from ehmo.records.ligand_field import LadderLevel, LigandFieldParameters
-from ehmo.records.multiplets import GTensor, Magnetism
+from ehmo.records.multiplets import GTensor, Magnetism, Terms
 from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
 from ehmo.records.table import aligned
@@ -27,6 +27,11 @@ _FORBIDDEN_STRENGTH = 1e-7  # rounding of a strength that symmetry makes zero
 _VISIBLE_STRENGTH = 0.01
 _AXIAL = 0.005
 
+LADDER_NUMBERS = tuple(range(2, 8))
+TERM_NUMBERS = (1, 4)
+BAND_NUMBERS = (0, 4, 7)
+"""Columns of `ladder_rows`, `term_rows` and `band_rows` that hold numbers."""
+
 
 def orbital_irrep(report: BondReport, orbital: int) -> str:
     """Irrep of an orbital, with its share where the structure is distorted."""
@@ -38,6 +43,29 @@ def orbital_irrep(report: BondReport, orbital: int) -> str:
 
 def ladder_lines(report: BondReport, site: MetalSite) -> list[str]:
     """Levels of one metal, and the ligand-field parameters that they give."""
+    ladder = site.ladder
+    if ladder is None:
+        return []
+    lines = [
+        *textwrap.wrap(ladder_heading(report, site), WIDTH, subsequent_indent="  "),
+        *aligned(ladder_rows(report, site), numeric=LADDER_NUMBERS, indent="  "),
+    ]
+    if site.parameters is not None:
+        for sentence in parameter_sentences(site.parameters):
+            lines += textwrap.wrap(sentence, WIDTH, initial_indent="  ", subsequent_indent="    ")
+    return lines
+
+
+def ladder_heading(report: BondReport, site: MetalSite) -> str:
+    """Metal, shell, group and how the levels were chosen."""
+    name, ladder = report.fragment.labels[site.metal], site.ladder
+    if ladder is None:
+        return f"Ladder of {name}: {site.ladder_withheld}"
+    return f"Ladder of {name} ({ladder.shell}, group {site.symmetry.group.name}; {ladder.selection})"
+
+
+def ladder_rows(report: BondReport, site: MetalSite) -> list[list[str]]:
+    """Heading, and one row for each level, topmost first; empty without a ladder."""
     ladder = site.ladder
     if ladder is None:
         return []
@@ -66,39 +94,39 @@ def ladder_lines(report: BondReport, site: MetalSite) -> list[str]:
                 _inversion(level),
             ]
         )
-    name = report.fragment.labels[site.metal]
-    heading = f"Ladder of {name} ({ladder.shell}, group {site.symmetry.group.name}; {ladder.selection})"
-    lines = [*textwrap.wrap(heading, WIDTH, subsequent_indent="  "), *aligned(rows, numeric=range(2, 8), indent="  ")]
-    if site.parameters is not None:
-        lines += _parameter_lines(site.parameters)
-    return lines
+    return rows
 
 
 def _inversion(level: LadderLevel) -> str:
     return f"inverted: its bonding partner has {100 * level.partner_share:.0f} %" if level.inverted else ""
 
 
-def _parameter_lines(parameters: LigandFieldParameters) -> list[str]:
+def parameter_sentences(parameters: LigandFieldParameters) -> list[str]:
+    """Crystal-field and angular-overlap parameters, and what the geometry leaves open."""
     lines = []
     if parameters.crystal_field_per_cm:
         said = ", ".join(f"{name} {value:.0f}" for name, value in parameters.crystal_field_per_cm.items())
-        lines.append(f"  Crystal field/cm-1: {said}")
+        lines.append(f"Crystal field/cm-1: {said}")
     by_kind: dict[str, list[str]] = {}
     for item in parameters.angular_overlap:
         value = "undetermined" if item.value_eV is None else f"{item.value_eV * PER_CM_PER_EV:.0f}"
         by_kind.setdefault(item.kind, []).append(f"e_{item.symmetry} {value}")
     said = "; ".join(f"{kind} {', '.join(values)}" for kind, values in by_kind.items())
-    text = f"Angular overlap/cm-1: {said}; misfit {parameters.rms_per_cm:.0f}"
-    lines += textwrap.wrap(text, WIDTH, initial_indent="  ", subsequent_indent="    ")
-    lines += [f"  Not determined by this geometry: {combination}" for combination in parameters.undetermined]
-    return lines
+    lines.append(f"Angular overlap/cm-1: {said}; misfit {parameters.rms_per_cm:.0f}")
+    return [*lines, *(f"Not determined by this geometry: {combination}" for combination in parameters.undetermined)]
 
 
 def short_spectrum_lines(report: BondReport) -> list[str]:
     """Ground term and the first bands in a few lines."""
+    text = spectrum_in_words(report)
+    return [*textwrap.wrap(text, WIDTH, subsequent_indent="  "), "  (in full: ehmo ladder FILE)"] if text else []
+
+
+def spectrum_in_words(report: BondReport) -> str:
+    """Ground term, first bands, moment and g in a sentence; empty if there are none."""
     spectrum = report.spectroscopy
     if not spectrum.ground_term and not spectrum.bands:
-        return []
+        return ""
     said = f"Ground term {spectrum.ground_term}" if spectrum.ground_term else "Bands"
     within = [band for band in spectrum.bands if band.kind != "charge transfer" and band.spin_allowed][:_SHORT_BANDS]
     allowed = [band for band in spectrum.bands if band.kind == "charge transfer" and band.dipole_allowed]
@@ -111,7 +139,7 @@ def short_spectrum_lines(report: BondReport) -> list[str]:
         text += f"; moment {spectrum.magnetism.effective_moment:.2f} at {spectrum.magnetism.temperature_K:.0f} K"
         if spectrum.magnetism.g_tensor is not None:
             text += f"; {_g_in_words(spectrum.magnetism.g_tensor)}"
-    return [*textwrap.wrap(text, WIDTH, subsequent_indent="  "), "  (in full: ehmo ladder FILE)"]
+    return text
 
 
 def _allowed(band: Band) -> str:
@@ -145,8 +173,11 @@ def ladder_text(report: BondReport) -> str:
 
 
 def _constants_lines(constants: ShellConstants | None) -> list[str]:
-    if constants is None:
-        return []
+    return [] if constants is None else textwrap.wrap(constants_in_words(constants), WIDTH, subsequent_indent="  ")
+
+
+def constants_in_words(constants: ShellConstants) -> str:
+    """Free-ion constants, their reductions and sources."""
     values = [
         f"{name} {value:.0f}"
         for name, value in (
@@ -160,12 +191,11 @@ def _constants_lines(constants: ShellConstants | None) -> list[str]:
         if value is not None
     ]
     repulsion = f"repulsion reduced by {constants.repulsion_factor:.2f}, " if constants.repulsion_factor < 1 else ""
-    text = (
+    return (
         f"Constants of {constants.ion}/cm-1: {', '.join(values) or 'none tabulated'}; {repulsion}orbital momentum "
         f"reduced by {constants.momentum_factor:.2f} on the average (metal shares); "
         f"sources {', '.join(constants.sources) or 'none'}"
     )
-    return textwrap.wrap(text, WIDTH, subsequent_indent="  ")
 
 
 def _terms_lines(spectrum: Spectroscopy) -> list[str]:
@@ -177,6 +207,13 @@ def _terms_lines(spectrum: Spectroscopy) -> list[str]:
         f"Ground term {spectrum.ground_term} in {terms.group}; the leading configuration of the lowest term, "
         f"{terms.ground.configuration_text}, alone allows {allowed}"
     ]
+    rows, rest = term_rows(terms)
+    more = [f"  and {rest} higher terms"] if rest else []
+    return [*lines, *aligned(rows, numeric=TERM_NUMBERS, indent="  "), *more]
+
+
+def term_rows(terms: Terms) -> tuple[list[list[str]], int]:
+    """Heading and one row for each of the lower terms, and the number of those left out."""
     rows = [["term", "energy/cm-1", "parent", "configuration", "weight/%", ""]]
     shown = [term for term in terms.terms if term.energy_per_cm < _SPECTRUM_PER_CM][:_LISTED_BANDS]
     rows += [
@@ -190,14 +227,19 @@ def _terms_lines(spectrum: Spectroscopy) -> list[str]:
         ]
         for term in shown
     ]
-    rest = len(terms.terms) - len(shown)
-    more = [f"  and {rest} higher terms"] if rest else []
-    return [*lines, *aligned(rows, numeric=(1, 4), indent="  "), *more]
+    return rows, len(terms.terms) - len(shown)
 
 
 def _band_lines(bands: Sequence[Band], deviations: Sequence[float | None] | None) -> list[str]:
     if not bands:
         return []
+    rows, rest = band_rows(bands, deviations)
+    more = [f"  and {rest} more, in the JSON"] if rest else []
+    return ["Bands", *aligned(rows, numeric=BAND_NUMBERS, indent="  "), *more]
+
+
+def band_rows(bands: Sequence[Band], deviations: Sequence[float | None] | None) -> tuple[list[list[str]], int]:
+    """Heading and one row for each of the more important bands, and the number of those left out."""
     rows = [["band/cm-1", "kind", "upper term", "transition", "factor", "spin", "dipole", "strength"]]
     every = zip(bands, deviations or [None] * len(bands), strict=True)
     shown = [(band, deviation) for band, deviation in every if band.wavenumber_per_cm < _SPECTRUM_PER_CM]
@@ -219,9 +261,7 @@ def _band_lines(bands: Sequence[Band], deviations: Sequence[float | None] | None
         ]
         for band, deviation in kept
     ]
-    rest = len(bands) - len(kept)
-    more = [f"  and {rest} more, in the JSON"] if rest else []
-    return ["Bands", *aligned(rows, numeric=(0, 4, 7), indent="  "), *more]
+    return rows, len(bands) - len(kept)
 
 
 def _strength(band: Band) -> str:
@@ -233,22 +273,26 @@ def _magnetism_lines(spectrum: Spectroscopy) -> list[str]:
     magnetism = spectrum.magnetism
     if magnetism is None:
         return []
+    return ["Magnetism", *(f"  {sentence}" for sentence in magnetism_sentences(spectrum, magnetism))]
+
+
+def magnetism_sentences(spectrum: Spectroscopy, magnetism: Magnetism) -> list[str]:
+    """Moment, zero-field splitting and g."""
     lines = [
-        "Magnetism",
-        f"  moment {magnetism.effective_moment:.2f} Bohr magnetons at {magnetism.temperature_K:.0f} K "
+        f"moment {magnetism.effective_moment:.2f} Bohr magnetons at {magnetism.temperature_K:.0f} K "
         f"(spin only {magnetism.spin_only_moment:.2f})",
         *_splitting_lines(magnetism),
     ]
     if magnetism.g_tensor is not None:
-        lines.append(f"  {_g_in_words(magnetism.g_tensor)}")
+        lines.append(f"{_g_in_words(magnetism.g_tensor)}")
     for name, tensor in (("g", magnetism.g_tensor), ("g of the lowest doublet", magnetism.doublet_g_tensor)):
         if tensor is not None and (name == "g" or tensor is not magnetism.g_tensor):
             axes = "; ".join(_numbers(axis, 2) for axis in tensor.axes)
-            lines.append(f"  {name} {_numbers(tensor.values, 3)} (spin {tensor.effective_spin:g}; local axes {axes})")
+            lines.append(f"{name} {_numbers(tensor.values, 3)} (spin {tensor.effective_spin:g}; local axes {axes})")
     if spectrum.first_order_g is not None:
         parallel, perpendicular = spectrum.first_order_g
-        lines.append(f"  g by first-order formulas: parallel {parallel:.3f}, perpendicular {perpendicular:.3f}")
-    lines.append("  Ligand spin-orbit coupling and charge-transfer states are left out of g and D.")
+        lines.append(f"g by first-order formulas: parallel {parallel:.3f}, perpendicular {perpendicular:.3f}")
+    lines.append("Ligand spin-orbit coupling and charge-transfer states are left out of g and D.")
     return lines
 
 
@@ -268,7 +312,7 @@ def _splitting_lines(magnetism: Magnetism) -> list[str]:
     if splitting is None:
         return []
     return [
-        f"  zero-field splitting D {splitting.D_per_cm:.2f}, E {splitting.E_per_cm:.2f} cm-1 (spin {splitting.spin:g})"
+        f"zero-field splitting D {splitting.D_per_cm:.2f}, E {splitting.E_per_cm:.2f} cm-1 (spin {splitting.spin:g})"
     ]
 
 
@@ -304,17 +348,20 @@ def _fit_lines(spectrum: Spectroscopy) -> list[str]:
 
 
 def _withheld_lines(report: BondReport) -> list[str]:
+    lines = ["Withheld"]
+    for reason in withheld_reasons(report):
+        lines += textwrap.wrap(reason, WIDTH, initial_indent="  - ", subsequent_indent="    ")
+    return lines if len(lines) > 1 else []
+
+
+def withheld_reasons(report: BondReport) -> list[str]:
+    """What of ladder, terms, bands and magnetism is missing, and why."""
     spectrum = report.spectroscopy
     reasons = [*spectrum.withheld]
     reasons += [f"ladder: {site.ladder_withheld}" for site in report.sites if site.ladder_withheld]
     if spectrum.magnetism is not None:
         reasons += spectrum.magnetism.withheld
-    if not reasons:
-        return []
-    lines = ["Withheld"]
-    for reason in dict.fromkeys(reasons):
-        lines += textwrap.wrap(reason, WIDTH, initial_indent="  - ", subsequent_indent="    ")
-    return lines
+    return list(dict.fromkeys(reasons))
 
 
 def _numbers(values: np.ndarray, digits: int) -> str:

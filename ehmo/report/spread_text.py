@@ -17,7 +17,7 @@ def draw_lines(report: BondReport) -> list[str]:
     """Draws behind the standard deviations; empty for a report without spread."""
     if report.spread is None:
         return []
-    return ["Spread (± is one standard deviation)", *_wrapped(_draws_in_words(report.spread))]
+    return ["Spread (± is one standard deviation)", *_wrapped(draws_in_words(report.spread))]
 
 
 def spread_lines(report: BondReport) -> list[str]:
@@ -35,29 +35,40 @@ def spread_lines(report: BondReport) -> list[str]:
     spread = report.spread
     if spread is None:
         return []
-    shown = [_largest(own) for own in spread.bonds]
+    rows, sizes = effect_rows(report)
+    if not rows:
+        return draw_lines(report)
+    return [
+        *draw_lines(report),
+        "  What moves the Mayer orders most, with one standard deviation of one parameter",
+        *aligned(rows, indent="    "),
+        *_wrapped(sizes),
+    ]
+
+
+def effect_rows(report: BondReport) -> tuple[list[list[str]], str]:
+    """For each bond the parameters that move its Mayer order most, and their standard deviations in words."""
+    if report.spread is None:
+        return [], ""
+    shown = [_largest(own) for own in report.spread.bonds]
     rows = [
         [report.bond_label(bond), *(f"{effect.parameter} {effect.mayer_per_sd:+.2f}" for effect in effects)]
         for bond, effects in zip(report.coordination.bonds, shown, strict=True)
     ]
     width = max((len(row) for row in rows), default=0)
     if width < 2:
-        return draw_lines(report)
+        return [], ""
     named = {effect.parameter for effects in shown for effect in effects}
-    sizes = [_size_in_words(parameter) for parameter in spread.parameters if parameter.name in named]
-    return [
-        *draw_lines(report),
-        "  What moves the Mayer orders most, with one standard deviation of one parameter",
-        *aligned([row + [""] * (width - len(row)) for row in rows], indent="    "),
-        *_wrapped(f"Standard deviations: {', '.join(sizes)}"),
-    ]
+    sizes = [_size_in_words(parameter) for parameter in report.spread.parameters if parameter.name in named]
+    return [row + [""] * (width - len(row)) for row in rows], f"Standard deviations: {', '.join(sizes)}"
 
 
 def _largest(spread: BondSpread) -> list[ParameterEffect]:
     return [effect for effect in spread.sensitivity[:_EFFECTS] if abs(effect.mayer_per_sd) >= _WORTH_SAYING]
 
 
-def _draws_in_words(spread: Spread) -> str:
+def draws_in_words(spread: Spread) -> str:
+    """How many draws there were, and what became of them."""
     lost = [
         f"{count} {reason}"
         for count, reason in (

@@ -32,6 +32,9 @@ from ehmo.structure.elements import F_BLOCK, with_state
 WIDTH = 100
 _FRONTIER = 6
 
+ORBITAL_NUMBERS = (0, 2, 3, 4, 5, 6, 7)
+"""Columns of `orbital_rows` that hold numbers."""
+
 
 def bond_text(report: BondReport) -> str:
     """Whole report as text.
@@ -94,6 +97,10 @@ def _metals_in_all(report: BondReport) -> str:
 
 
 def _site_lines(report: BondReport, site: MetalSite) -> list[str]:
+    return textwrap.wrap(site_in_words(report, site), WIDTH, subsequent_indent="  ")
+
+
+def site_in_words(report: BondReport, site: MetalSite) -> str:
     """Oxidation state, bond valences, group and shape of one metal."""
     symbol, said = report.fragment.symbols[site.metal], []
     if site.oxidation_state is not None:
@@ -108,8 +115,7 @@ def _site_lines(report: BondReport, site: MetalSite) -> list[str]:
     )
     if site.shapes:
         said.append(f"nearest shape {site.shapes[0].shape} ({site.shapes[0].measure:.1f})")
-    line = f"{', '.join(_alike(report, site.metal))}: {'; '.join(said)}"
-    return textwrap.wrap(line, WIDTH, subsequent_indent="  ")
+    return f"{', '.join(_alike(report, site.metal))}: {'; '.join(said)}"
 
 
 def _alike(report: BondReport, atom: int) -> list[str]:
@@ -118,7 +124,7 @@ def _alike(report: BondReport, atom: int) -> list[str]:
     return [labels[atom]] if crystal is None else [labels[other] for other in crystal.equivalent_atoms(atom)]
 
 
-def _axes(report: BondReport) -> list[str]:
+def axes_in_words(report: BondReport) -> list[str]:
     """Local axes of each distinct metal, in words."""
     labels, shown = report.fragment.labels, {site.metal for site in report.distinct_sites()}
     frames = [frame for frame in report.coordination.frames if frame.metal in shown]
@@ -152,28 +158,46 @@ def _bonds_of(report: BondReport, metal: int) -> list[str]:
 
 def _words(report: BondReport) -> list[str]:
     """Multiple bonds in words: by counting, by calculation, and how the donor leans."""
+    said, notes = multiple_bonds_in_words(report)
+    if not said:
+        return []
+    lines = [
+        line
+        for sentence in said
+        for line in textwrap.wrap(sentence, WIDTH, initial_indent="  ", subsequent_indent="    ")
+    ]
+    wrapped = [
+        line for note in notes for line in textwrap.wrap(note, WIDTH, initial_indent="  ", subsequent_indent="  ")
+    ]
+    return ["Multiple bonds in words", *lines, *wrapped]
+
+
+def multiple_bonds_in_words(report: BondReport) -> tuple[list[str], list[str]]:
+    """One sentence for each bond that may be multiple, and notes on how to read them.
+
+    Parameters
+    ----------
+    report : BondReport
+
+    Returns
+    -------
+    said, notes : list of str
+    """
     readings = {reading.bond: reading for reading in report.reactivity}
-    lines, rules = [], []
+    said, rules = [], []
     for place in report.distinct_bonds():
         bond, orders, formal = report.coordination.bonds[place], report.orders[place], report.formal_orders[place]
         if not bond.may_be_multiple and (formal is None or formal.order == 1):
             continue
         counted = "no order by counting without a ladder" if formal is None else f"{formal.words} by counting"
-        said = f"{report.bond_label(bond)}: {counted}; {channels_in_words(orders.channels)} by calculation"
+        sentence = f"{report.bond_label(bond)}: {counted}; {channels_in_words(orders.channels)} by calculation"
         if place in readings:
-            said += f"; {_leaning(readings[place])}"
-        lines += textwrap.wrap(said, WIDTH, initial_indent="  ", subsequent_indent="    ")
+            sentence += f"; {_leaning(readings[place])}"
+        said.append(sentence)
         if formal is not None and formal.rule:
             rules.append(formal.rule)
-    if not lines:
-        return []
     notes = [f"Counting: {rule}." for rule in dict.fromkeys(rules)]
-    if readings:
-        notes.append(REACTIVITY_LIMITS)
-    wrapped = [
-        line for note in notes for line in textwrap.wrap(note, WIDTH, initial_indent="  ", subsequent_indent="  ")
-    ]
-    return ["Multiple bonds in words", *lines, *wrapped]
+    return said, [*notes, REACTIVITY_LIMITS] if readings and said else notes
 
 
 def _leaning(reading: DonorReactivity) -> str:
@@ -200,7 +224,7 @@ def _hybrids(report: BondReport) -> list[str]:
                     report.bond_label(bond),
                     channel.type,
                     f"{channel.weight:.2f}",
-                    *_hybrid_cells(report, bond, channel),
+                    *hybrid_cells(report, bond, channel),
                 ]
                 for channel in orders.channels
                 if channel.weight >= PARTIAL_CHANNEL
@@ -208,7 +232,8 @@ def _hybrids(report: BondReport) -> list[str]:
     return ["What the channels are made of", *aligned(rows, numeric=(2,), indent="  ")] if len(rows) > 1 else []
 
 
-def _hybrid_cells(report: BondReport, bond: MetalDonorBond, channel: BondChannel) -> list[str]:
+def hybrid_cells(report: BondReport, bond: MetalDonorBond, channel: BondChannel) -> list[str]:
+    """Shells in the metal and in the donor hybrid."""
     cells = []
     for atom, hybrid in ((bond.metal, channel.metal_hybrid), (bond.donor, channel.donor_hybrid)):
         shares = sorted(report.hybrid_composition(atom, hybrid).items(), key=lambda item: -item[1])
@@ -217,6 +242,12 @@ def _hybrid_cells(report: BondReport, bond: MetalDonorBond, channel: BondChannel
 
 
 def _charges(report: BondReport) -> list[str]:
+    heading = "Mulliken charges (positive = electron poor)"
+    return [heading, *aligned(charge_rows(report), numeric=(1, 2), indent="  ")]
+
+
+def charge_rows(report: BondReport) -> list[list[str]]:
+    """Heading, and one row for each metal and donor and for the rest."""
     unpaired = bool(report.fragment.unpaired_electrons)
     crystal = report.fragment.crystal
     listed = sorted({*report.coordination.metals, *(bond.donor for bond in report.coordination.bonds)})
@@ -232,15 +263,25 @@ def _charges(report: BondReport) -> list[str]:
     if len(rest):
         row = ["all others", f"{report.populations.charges[rest].sum():+.2f}"]
         rows.append([*row, f"{report.populations.spin[rest].sum():.2f}"] if unpaired else row)
-    return ["Mulliken charges (positive = electron poor)", *aligned(rows, numeric=(1, 2), indent="  ")]
+    return rows
 
 
 def _frontier(report: BondReport) -> list[str]:
     """Orbitals round the highest one that holds electrons, topmost first."""
     state = report.state
+    top, bottom = min(state.homo + _FRONTIER, len(state.energies_eV) - 1), max(state.homo - _FRONTIER, -1)
+    heading = (
+        "Frontier orbitals (overlap population for two electrons, positive = bonding; irreps of the idealised sphere)"
+    )
+    rows = orbital_rows(report, range(top, bottom, -1))
+    return [heading, *axes_in_words(report), *aligned(rows, numeric=ORBITAL_NUMBERS, indent="  ")]
+
+
+def orbital_rows(report: BondReport, shown: Sequence[int]) -> list[list[str]]:
+    """Heading, and one row for each of some orbitals."""
+    state = report.state
     composition, overlap = 100 * report.populations.orbital_shares, report.orbital_overlap()
     filling = state.occupations.sum(axis=0)
-    shown = range(min(state.homo + _FRONTIER, len(filling) - 1), max(state.homo - _FRONTIER, -1), -1)
     gross = local_gross_populations(shown, state.coefficients, report.overlap, report.basis, report.coordination)
     rows = [
         [
@@ -267,10 +308,7 @@ def _frontier(report: BondReport) -> list[str]:
         ]
         for place, k in enumerate(shown)
     ]
-    heading = (
-        "Frontier orbitals (overlap population for two electrons, positive = bonding; irreps of the idealised sphere)"
-    )
-    return [heading, *_axes(report), *aligned(rows, numeric=(0, 2, 3, 4, 5, 6, 7), indent="  ")]
+    return rows
 
 
 def _leading_part(report: BondReport, gross: FloatArray) -> str:
