@@ -61,7 +61,10 @@ def test_levels_of_the_parts_are_diagonal_elements():
 
 def test_permanganate():
     """Published: 1t1, nonbonding oxygen, is the highest filled level and 2e the lowest empty one, of d and pi*
-    (Wolfsberg, Helmholz 1952; memory). Law: d spans e + t2, four sigma functions a1 + t2, eight pi functions e + t1 + t2."""
+    (Wolfsberg, Helmholz 1952; memory).
+
+    Law: d spans e + t2, four sigma functions a1 + t2, eight pi functions e + t1 + t2.
+    """
     _, found = interaction("MnO4 -")
     assert len(found.bonds) == 4
     filled = [s for s in found.sets if s.alpha > 0]
