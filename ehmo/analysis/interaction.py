@@ -97,6 +97,10 @@ def _functions(basis: Basis, atoms: Sequence[int]) -> IntArray:
     return np.flatnonzero(np.isin(basis.atom_of, np.asarray(atoms)))
 
 
+def _donors(report: BondReport, bonds: Sequence[int]) -> list[int]:
+    return sorted({report.coordination.bonds[k].donor for k in bonds})
+
+
 def _metal_orbitals(report: BondReport, metal: int, hamiltonian: FloatArray) -> _PartOrbitals:
     """Shells of the metal at their diagonal elements."""
     basis, functions = report.basis, _functions(report.basis, [metal])
@@ -136,6 +140,8 @@ def _ligand_orbitals(
     labels = _irreps(report, coefficients, energies)
     level_of = _numbered(energies, labels, _dimensions(report))
     by_m = _donor_parts(report, bonds, coefficients)
+    donors = _functions(basis, _donors(report, bonds))
+    on_donors = (coefficients * (report.overlap @ coefficients))[donors].sum(axis=0)
     levels = []
     for k in range(int(level_of[-1]) + 1):
         members = np.flatnonzero(level_of == k)
@@ -146,6 +152,7 @@ def _ligand_orbitals(
                 _leading_shell(report, bonds, coefficients[:, members]),
                 _distinct(report, [labels[i] for i in members]),
                 BOND_SYMMETRIES[int(by_m[:, members].sum(axis=1).argmax())],
+                float(on_donors[members].mean()),
             )
         )
     return _PartOrbitals(coefficients, energies, level_of, tuple(levels))
@@ -173,7 +180,7 @@ def _leading_shell(report: BondReport, bonds: Sequence[int], coefficients: Float
     basis = report.basis
     parts: dict[str, float] = {}
     squares = (coefficients**2).sum(axis=1)
-    for atom in {report.coordination.bonds[k].donor for k in bonds}:
+    for atom in _donors(report, bonds):
         for i in range(basis.functions_of(atom).start, basis.functions_of(atom).stop):
             label = basis.shell_label(int(basis.shell_of[i]))
             parts[label] = parts.get(label, 0.0) + float(squares[i])
@@ -284,7 +291,7 @@ def _orbital_sets(
     set_of = _numbered(state.energies_eV, labels, dimensions)
     by_part = orbital_overlap_by_part(report, bonds)
     gross = state.coefficients * (report.overlap @ state.coefficients)
-    shares = [gross[_functions(report.basis, own)].sum(axis=0) for own in ([metal], atoms)]
+    shares = [gross[_functions(report.basis, own)].sum(axis=0) for own in ([metal], atoms, _donors(report, bonds))]
     sizes = np.bincount(set_of)
     # Where a distortion splits degenerate levels, counting them would give both halves of one the same number.
     numbered = all(n == dimensions.get(labels[k], 1) for k, n in zip(np.cumsum(sizes) - 1, sizes, strict=True))
@@ -308,6 +315,7 @@ def _orbital_sets(
                 float(parts.sum()),
                 float(shares[0][members].mean()),
                 float(shares[1][members].mean()),
+                float(shares[2][members].mean()),
             )
         )
     return sets, set_of

@@ -22,6 +22,8 @@ class PartLevel:
         Irreps that it holds in the group of the sphere, such as ``("a1", "e")``; none without a group.
     symmetry : str
         "sigma", "pi", ... about the bonds; empty for the metal.
+    donor_share : float
+        Part on the donor atoms of the bonds; 0 for the metal.
     """
 
     energy_eV: float
@@ -29,6 +31,7 @@ class PartLevel:
     label: str
     irreps: tuple[str, ...]
     symmetry: str
+    donor_share: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -52,8 +55,8 @@ class OrbitalSet:
         Bond part that dominates its overlap population with the bonds; empty if there is next to none.
     overlap_population : float
         Of one orbital of it with the bonds, holding two electrons [e].
-    metal_share, ligand_share : float
-        Gross shares of the metal and of the ligands of the bond.
+    metal_share, ligand_share, donor_share : float
+        Gross shares of the metal, of the ligands of the bond, and of the donor atoms within these.
     """
 
     orbitals: tuple[int, ...]
@@ -66,6 +69,7 @@ class OrbitalSet:
     overlap_population: float
     metal_share: float
     ligand_share: float
+    donor_share: float
 
     @property
     def label(self) -> str:

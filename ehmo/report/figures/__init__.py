@@ -1,0 +1,1 @@
+"""Figures of reports, scans, batches and crystals."""
