@@ -17,6 +17,7 @@ from basis_params.ligand_field import (
     slater_integrals,
     spin_orbit,
 )
+from basis_params.masses import atomic_mass
 from basis_params.model import (
     ElementParameters,
     MissingElementError,
@@ -49,6 +50,7 @@ __all__ = [
     "SpinOrbitConstant",
     "atom",
     "atom_symbols",
+    "atomic_mass",
     "atomic_orbital",
     "audit",
     "available_sets",

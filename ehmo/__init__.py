@@ -16,12 +16,14 @@ if TYPE_CHECKING:
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
     from ehmo.structure import from_ase, read, read_frames
+    from ehmo.studies.ase_calculator import Calculator
     from ehmo.studies.spread import spread_report
 
 __version__ = "0.1.0"
 
 _HOMES = {
     "BondReport": "ehmo.records.report",
+    "Calculator": "ehmo.studies.ase_calculator",
     "EhmoError": "ehmo.errors",
     "Fragment": "ehmo.records.fragment",
     "Options": "ehmo.records.options",
@@ -34,6 +36,7 @@ _HOMES = {
 
 __all__ = [
     "BondReport",
+    "Calculator",
     "EhmoError",
     "Fragment",
     "Options",

@@ -6,6 +6,8 @@ checked against scipy.constants in the tests).
 
 from __future__ import annotations
 
+from math import pi
+
 BOHR_A = 0.529177210544
 """One bohr [angstrom]."""
 
@@ -23,3 +25,12 @@ BOLTZMANN_PER_CM_K = 0.6950348004861274
 
 ELECTRON_G = 2.00231930436092
 """g factor of the free electron, taken positive."""
+
+NEWTON_PER_M_PER_EV_A2 = 16.02176634
+"""Force constant of one electronvolt per square angstrom [N/m]."""
+
+ATOMIC_MASS_KG = 1.66053906892e-27
+"""One atomic mass unit [kg]."""
+
+PER_CM_PER_ROOT_EV_A2_U = (NEWTON_PER_M_PER_EV_A2 / ATOMIC_MASS_KG) ** 0.5 / (2 * pi * 2.99792458e10)
+"""Wavenumber of a mass of 1 u on a force constant of 1 eV/angstrom^2 [cm^-1]."""

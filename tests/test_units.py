@@ -32,3 +32,10 @@ def test_boltzmann_constant_in_wavenumbers_codata_2022():
 
 def test_electron_g_factor_codata_2022():
     assert pytest.approx(-constants.value("electron g factor"), rel=1e-12) == units.ELECTRON_G
+
+
+def test_vibrational_units_codata_2022():
+    assert pytest.approx(constants.e * 1e20, rel=1e-12) == units.NEWTON_PER_M_PER_EV_A2
+    assert pytest.approx(constants.value("atomic mass constant"), rel=1e-9) == units.ATOMIC_MASS_KG
+    expected = (constants.e * 1e20 / constants.value("atomic mass constant")) ** 0.5 / (2 * constants.pi * constants.c)
+    assert pytest.approx(expected / 100, rel=1e-9) == units.PER_CM_PER_ROOT_EV_A2_U

@@ -2,9 +2,26 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 from basis_params import ModelSettings, ParameterTable
-from ehmo.calculate.numbers import Solution, channel_constants, channel_scale, checked_plan, solved, threads_for
-from ehmo.electronic.energy import interaction_gradient, overlap_weights, smearing_entropy_eV, state_charges
+from ehmo.calculate.numbers import (
+    Solution,
+    channel_constants,
+    channel_scale,
+    checked_plan,
+    effective_settings,
+    solved,
+    threads_for,
+)
+from ehmo.electronic.energy import (
+    dipole_moment,
+    interaction_gradient,
+    overlap_weights,
+    smearing_entropy_eV,
+    state_charges,
+)
+from ehmo.orbitals.dipole import dipole_integrals
 from ehmo.orbitals.overlap_gradient import overlap_gradient
 from ehmo.orbitals.pairs import OrbitalPlan
 from ehmo.orbitals.two_body import separated_atoms_eV, two_body
@@ -14,6 +31,54 @@ from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 
 
+@dataclass(frozen=True, slots=True)
+class EnergyModel:
+    """What fixes the energy of a geometry: parameters, constants of the Hamiltonian, charge model.
+
+    Attributes
+    ----------
+    table : ParameterTable
+    settings : ModelSettings
+        Constants of the table unless the options override them.
+    options : Options
+    """
+
+    table: ParameterTable
+    settings: ModelSettings
+    options: Options
+
+    def energy(self, fragment: Fragment, *, gradient: bool = False, dipole: bool = False) -> FragmentEnergy:
+        """`fragment_energy` of this model."""
+        return fragment_energy(fragment, self.table, self.settings, self.options, gradient=gradient, dipole=dipole)
+
+    def calibrated(self, symbol: str, other: str, distance_A: float) -> bool:
+        """Whether the set has a two-body term for these elements whose range holds the distance."""
+        term = self.table.pair_repulsion(symbol, other)
+        return term is not None and term.covers(distance_A)
+
+
+def energy_model(table: ParameterTable, options: Options | None = None) -> EnergyModel:
+    """Model of a parameter set.
+
+    Parameters
+    ----------
+    table : ParameterTable
+    options : Options, optional
+        Choices that override the set.
+
+    Returns
+    -------
+    model : EnergyModel
+
+    Raises
+    ------
+    InputError
+        If a constant lies outside any sensible range.
+    """
+    options = options or Options()
+    return EnergyModel(table, effective_settings(table.settings, options), options)
+
+
 def fragment_energy(
     fragment: Fragment,
     table: ParameterTable,
@@ -21,6 +86,7 @@ def fragment_energy(
     options: Options | None = None,
     *,
     gradient: bool = False,
+    dipole: bool = False,
 ) -> FragmentEnergy:
     """Energy above the separated neutral atoms: electrons with their charges, and two-body repulsion.
 
@@ -34,8 +100,8 @@ def fragment_energy(
         Constants of the Hamiltonian; those of the table unless overridden, see `effective_settings`.
     options : Options, optional
         Charge model and limits.
-    gradient : bool
-        Whether the derivative by the positions is wanted too.
+    gradient, dipole : bool
+        Whether the derivative by the positions and the dipole moment are wanted too.
 
     Returns
     -------
@@ -56,9 +122,12 @@ def fragment_energy(
         solution = solved(plan, fragment, settings, options)
         charges = state_charges(solution.state, solution.overlap, plan.basis)
         repulsion = two_body(plan, table, fragment.positions_A)
-        slope = None
+        slope = moment = None
         if gradient:
             slope = electronic_gradient(plan, fragment, settings, solution, charges) + repulsion.gradient(plan)
+        if dipole:
+            integrals = dipole_integrals(plan, table, fragment.positions_A, solution.overlap)
+            moment = dipole_moment(solution.state, plan.basis, fragment.positions_A, integrals)
     return FragmentEnergy(
         electronic_eV=solution.state.energy_eV,
         repulsion_eV=float(repulsion.energies_eV.sum()),
@@ -67,6 +136,7 @@ def fragment_energy(
         charges=charges,
         smearing_eV=solution.state.smearing_eV,
         gradient_eV_per_A=slope,
+        dipole_e_A=moment,
     )
 
 

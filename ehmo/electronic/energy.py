@@ -43,7 +43,7 @@ def overlap_weights(
     filling = state.occupations.sum(axis=0)
     last = int(filling.nonzero()[0][-1]) + 1
     occupied, held = state.coefficients[:, :last], filling[:last]
-    density = (occupied * held) @ occupied.T
+    density = density_matrix(state)
     with_K, alone = shell_factors(basis, weighting)
     kinds = basis.type_of[:, None], basis.type_of
     factors = alone[kinds]
@@ -53,6 +53,38 @@ def overlap_weights(
     plain = density * factors
     plain -= (occupied * (held * state.energies_eV[:last])) @ occupied.T
     return plain, density * with_K[kinds]
+
+
+def density_matrix(state: ElectronicState) -> FloatArray:
+    """(n_ao, n_ao) density P of both spins [e]."""
+    filling = state.occupations.sum(axis=0)
+    last = int(filling.nonzero()[0][-1]) + 1
+    occupied = state.coefficients[:, :last]
+    density: FloatArray = (occupied * filling[:last]) @ occupied.T
+    return density
+
+
+def dipole_moment(state: ElectronicState, basis: Basis, positions_A: FloatArray, dipoles: FloatArray) -> FloatArray:
+    """Dipole moment of cores and electrons about the origin.
+
+    Parameters
+    ----------
+    state : ElectronicState
+        Orbitals and filling.
+    basis : Basis
+        Functions.
+    positions_A : (n_atoms, 3) ndarray
+        Coordinates [angstrom].
+    dipoles : (3, n_ao, n_ao) ndarray
+        Dipole integrals [angstrom].
+
+    Returns
+    -------
+    moment : (3,) ndarray
+        From negative to positive; it moves with the origin for an ion [e angstrom].
+    """
+    moment: FloatArray = basis.core_charges @ positions_A - np.tensordot(dipoles, density_matrix(state), axes=2)
+    return moment
 
 
 def state_charges(state: ElectronicState, overlap: FloatArray, basis: Basis) -> FloatArray:

@@ -27,6 +27,8 @@ class FragmentEnergy:
         Width of the filling, 0 for whole electrons [eV].
     gradient_eV_per_A : (n_atoms, 3) ndarray or None
         Derivative of `free_eV` by the positions, if it was asked for [eV/angstrom].
+    dipole_e_A : (3,) ndarray or None
+        Dipole moment about the origin of the coordinates, if it was asked for [e angstrom].
     """
 
     electronic_eV: float
@@ -36,6 +38,7 @@ class FragmentEnergy:
     charges: FloatArray
     smearing_eV: float
     gradient_eV_per_A: FloatArray | None = None
+    dipole_e_A: FloatArray | None = None
 
     def __post_init__(self) -> None:
         n_atoms = len(self.charges)
@@ -43,6 +46,8 @@ class FragmentEnergy:
         put(self, "charges", frozen_floats(self.charges, (n_atoms,), "charges"))
         if self.gradient_eV_per_A is not None:
             put(self, "gradient_eV_per_A", frozen_floats(self.gradient_eV_per_A, (n_atoms, 3), "gradient_eV_per_A"))
+        if self.dipole_e_A is not None:
+            put(self, "dipole_e_A", frozen_floats(self.dipole_e_A, (3,), "dipole_e_A"))
 
     @property
     def total_eV(self) -> float:
