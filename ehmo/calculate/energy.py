@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from basis_params import ModelSettings, ParameterTable
 from ehmo.calculate.numbers import (
@@ -23,9 +23,10 @@ from ehmo.electronic.energy import (
 )
 from ehmo.orbitals.dipole import dipole_integrals
 from ehmo.orbitals.overlap_gradient import overlap_gradient
-from ehmo.orbitals.pairs import OrbitalPlan
-from ehmo.orbitals.two_body import separated_atoms_eV, two_body
+from ehmo.orbitals.pairs import OrbitalPlan, orbital_plan
+from ehmo.orbitals.two_body import TwoBody, separated_atoms_eV, two_body
 from ehmo.records.arrays import FloatArray
+from ehmo.records.electronic import ElectronicState
 from ehmo.records.energy import FragmentEnergy
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
@@ -122,21 +123,49 @@ def fragment_energy(
         solution = solved(plan, fragment, settings, options)
         charges = state_charges(solution.state, solution.overlap, plan.basis)
         repulsion = two_body(plan, table, fragment.positions_A)
-        slope = moment = None
+        found = _parts(fragment, table, solution.state, charges, repulsion)
         if gradient:
             slope = electronic_gradient(plan, fragment, settings, solution, charges) + repulsion.gradient(plan)
+            found = replace(found, gradient_eV_per_A=slope)
         if dipole:
             integrals = dipole_integrals(plan, table, fragment.positions_A, solution.overlap)
             moment = dipole_moment(solution.state, plan.basis, fragment.positions_A, integrals)
+            found = replace(found, dipole_e_A=moment)
+    return found
+
+
+def state_energy(
+    fragment: Fragment, table: ParameterTable, state: ElectronicState, charges: FloatArray
+) -> FragmentEnergy:
+    """Energy of orbitals that are there already, such as those of a report.
+
+    Parameters
+    ----------
+    fragment : Fragment
+    table : ParameterTable
+        Set that the orbitals were made with.
+    state : ElectronicState
+    charges : (n_atoms,) ndarray
+        Its Mulliken charges [e].
+
+    Returns
+    -------
+    energy : FragmentEnergy
+    """
+    repulsion = two_body(orbital_plan(fragment.symbols, table), table, fragment.positions_A)
+    return _parts(fragment, table, state, charges, repulsion)
+
+
+def _parts(
+    fragment: Fragment, table: ParameterTable, state: ElectronicState, charges: FloatArray, repulsion: TwoBody
+) -> FragmentEnergy:
     return FragmentEnergy(
-        electronic_eV=solution.state.energy_eV,
+        electronic_eV=state.energy_eV,
         repulsion_eV=float(repulsion.energies_eV.sum()),
         atoms_eV=separated_atoms_eV(fragment.symbols, table),
-        entropy_eV=smearing_entropy_eV(solution.state),
+        entropy_eV=smearing_entropy_eV(state),
         charges=charges,
-        smearing_eV=solution.state.smearing_eV,
-        gradient_eV_per_A=slope,
-        dipole_e_A=moment,
+        smearing_eV=state.smearing_eV,
     )
 
 

@@ -2,9 +2,12 @@
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 
 from ehmo.harmonics import harmonic_gradients, real_harmonics
+from ehmo.orbitals.blocks import BlockStructure
 from ehmo.orbitals.overlap import ChannelScale, flat_targets, pair_chunks
 from ehmo.orbitals.pairs import OrbitalPlan, PairGroup
 from ehmo.orbitals.tables import LOG_STEP, table_positions
@@ -93,14 +96,16 @@ def _pulls(
         terms = weights @ structure.coupling.T
         radial_pull += np.einsum("pt,pt,pt->p", terms, (slopes @ structure.mixing)[:, structure.radial_column], angular)
         terms *= (values @ structure.mixing)[:, structure.radial_column]
-        by_harmonic += terms @ _column_sum(structure.angular_column, harmonics.shape[1])
+        by_harmonic += terms @ _column_sum(structure)
     turning = np.einsum("pc,pci->pi", by_harmonic, harmonic_gradients(directions, structure.l_max))
     turning -= directions * np.einsum("pi,pi->p", turning, directions)[:, None]
     pulls: FloatArray = radial_pull[:, None] * directions + turning / distances[:, None]
     return pulls
 
 
-def _column_sum(columns: IntArray, n_columns: int) -> FloatArray:
-    """Matrix that adds up the terms of each harmonic."""
-    same: FloatArray = np.equal.outer(columns, np.arange(n_columns)).astype(np.float64)
+@lru_cache(maxsize=256)
+def _column_sum(structure: BlockStructure) -> FloatArray:
+    """Matrix (n_terms, n_harmonics) that adds up the terms of each harmonic."""
+    columns = np.arange((structure.l_max + 1) ** 2)
+    same: FloatArray = np.equal.outer(structure.angular_column, columns).astype(np.float64)
     return same

@@ -13,7 +13,7 @@ from basis_params import ElementParameters, PairRepulsion, ParameterTable
 from ehmo.orbitals.pairs import OrbitalPlan
 from ehmo.orbitals.parameters import element_parameters
 from ehmo.orbitals.radial import orthogonal_radial_functions
-from ehmo.records.arrays import FloatArray
+from ehmo.records.arrays import FloatArray, IntArray
 from ehmo.units import BOHR_A, COULOMB_EV_A
 
 _COULOMB_EV_BOHR = COULOMB_EV_A / BOHR_A
@@ -67,13 +67,7 @@ def two_body(plan: OrbitalPlan, table: ParameterTable, positions_A: FloatArray) 
     vectors = positions_A[plan.second] - positions_A[plan.first]
     distances = np.sqrt(np.einsum("pi,pi->p", vectors, vectors))
     energies, slopes = np.zeros(len(distances)), np.zeros(len(distances))
-    symbols = plan.basis.symbols
-    names = sorted(set(symbols))
-    code = np.array([names.index(symbol) for symbol in symbols], dtype=np.intp)
-    pair_code = code[plan.first] * len(names) + code[plan.second]
-    for value in np.unique(pair_code):
-        chosen = np.flatnonzero(pair_code == value)
-        first, second = names[value // len(names)], names[value % len(names)]
+    for first, second, chosen in _element_pairs(plan):
         term = table.pair_repulsion(first, second)
         if term is not None:
             energies[chosen], slopes[chosen] = _exponential(term, distances[chosen])
@@ -82,6 +76,18 @@ def two_body(plan: OrbitalPlan, table: ParameterTable, positions_A: FloatArray) 
                 element_parameters(table, first), element_parameters(table, second), distances[chosen]
             )
     return TwoBody(energies, slopes, vectors / distances[:, None])
+
+
+@lru_cache(maxsize=16)
+def _element_pairs(plan: OrbitalPlan) -> tuple[tuple[str, str, IntArray], ...]:
+    """Pairs of atoms by pairs of elements."""
+    names = sorted(set(plan.basis.symbols))
+    code = np.array([names.index(symbol) for symbol in plan.basis.symbols], dtype=np.intp)
+    pair_code = code[plan.first] * len(names) + code[plan.second]
+    return tuple(
+        (names[value // len(names)], names[value % len(names)], np.flatnonzero(pair_code == value))
+        for value in np.unique(pair_code)
+    )
 
 
 def _exponential(term: PairRepulsion, distances_A: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -151,25 +157,22 @@ class AtomDensity:
         potential, slope : (n,) ndarray
             [bohr^-1], [bohr^-2]
         """
-        beyond, inverse = np.zeros(len(distances)), np.zeros(len(distances))
-        for power, exponent, weight in self.terms:
-            lower, upper = _tails(power, exponent, distances)
-            beyond += weight * upper
-            inverse += weight * lower
+        powers, exponents, weights = (np.array(column)[:, None] for column in zip(*self.terms, strict=True))
+        # Integrals from R of r^(p - 1) exp(-a r) and of r^p exp(-a r): Poisson sums in x = a R.
+        x = exponents * distances
+        term, lower = np.ones_like(x), np.zeros_like(x)
+        for k in range(int(powers.max())):
+            within = k < powers
+            lower += np.where(within, term, 0.0)
+            term = np.where(within, term * (x / (k + 1)), term)
+        scale = weights * _factorials(powers - 1) / exponents**powers * np.exp(-x)
+        inverse = (scale * lower).sum(axis=0)
+        beyond = (scale * powers / exponents * (lower + term)).sum(axis=0)
         return beyond / distances - inverse, -beyond / distances**2
 
 
-def _tails(power: int, exponent: float, distances: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Integrals from R of r^(power - 1) exp(-a r) and of r^power exp(-a r)."""
-    x = exponent * distances
-    term = np.ones(len(x))
-    lower = np.zeros(len(x))
-    for k in range(power):
-        lower += term
-        term *= x / (k + 1)
-    decay = np.exp(-x)
-    scale = factorial(power - 1) / exponent**power
-    return scale * decay * lower, scale * power / exponent * decay * (lower + term)
+def _factorials(numbers: IntArray) -> FloatArray:
+    return np.array([float(factorial(int(number))) for number in numbers.ravel()]).reshape(numbers.shape)
 
 
 @lru_cache(maxsize=256)

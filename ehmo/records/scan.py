@@ -25,6 +25,8 @@ class ScanPlan:
         Lengths [angstrom] or angles [degree].
     notes : tuple of str
         What was assumed, one sentence each.
+    relaxed : bool
+        Whether the rest of the molecule is relaxed at each value.
     """
 
     coordinate: Coordinate
@@ -32,6 +34,7 @@ class ScanPlan:
     moved: tuple[int, ...]
     values: tuple[float, ...]
     notes: tuple[str, ...] = ()
+    relaxed: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,6 +100,12 @@ class ScanPoint:
         Spin-allowed terms of the shell with their energies [cm^-1].
     iterations : int
     warnings : tuple of str
+    energy_eV : float or None
+        Energy above the separated neutral atoms; None where the set is not calibrated [eV].
+    smearing_eV : float
+        Width of the filling, 0 for whole electrons [eV].
+    positions_A : (n_atoms, 3) ndarray or None
+        Coordinates of a relaxed point [angstrom].
     """
 
     value: float
@@ -112,6 +121,9 @@ class ScanPoint:
     bands_per_cm: tuple[tuple[str, float], ...]
     iterations: int
     warnings: tuple[str, ...]
+    energy_eV: float | None = None
+    smearing_eV: float = 0.0
+    positions_A: FloatArray | None = None
 
     def __post_init__(self) -> None:
         n_mo = len(self.energies_eV)
@@ -120,6 +132,60 @@ class ScanPoint:
         put(self, "occupations", frozen_floats(self.occupations, (n_mo,), "occupations"))
         put(self, "followed", frozen_ints(self.followed, (n_mo,), "followed"))
         put(self, "charges", frozen_floats(self.charges, (None,), "charges"))
+        if self.positions_A is not None:
+            put(self, "positions_A", frozen_floats(self.positions_A, (len(self.charges), 3), "positions_A"))
+
+
+@dataclass(frozen=True, slots=True)
+class ScannedMode:
+    """A stretching mode with a part in the scanned bond; degenerate ones are one entry.
+
+    Attributes
+    ----------
+    wavenumber_per_cm : float
+        Harmonic [cm^-1].
+    reduced_mass_u : float
+        [u]
+    share : float
+        Share of the scanned bond; over all modes it adds up to 1.
+    stretches : tuple of (str, float)
+        Label and part of each bond, the scanned one positive.
+    """
+
+    wavenumber_per_cm: float
+    reduced_mass_u: float
+    share: float
+    stretches: tuple[tuple[str, float], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ScanMinimum:
+    """Minimum of the energy along a scanned length.
+
+    Attributes
+    ----------
+    length_A : float
+    energy_eV : float
+        Above the separated neutral atoms [eV].
+    force_constant_N_per_m : float
+        Second derivative of the fitted polynomial [N/m].
+    fitted : tuple of float
+        Lengths of the points that the polynomial goes through [angstrom].
+    fit_rms_eV : float
+        Root mean square distance of the points from it [eV].
+    modes : tuple of ScannedMode
+        Highest wavenumber first.
+    isotopes : tuple of (str, int)
+        Atom or element, and mass number; standard atomic weights for the rest.
+    """
+
+    length_A: float
+    energy_eV: float
+    force_constant_N_per_m: float
+    fitted: tuple[float, ...]
+    fit_rms_eV: float
+    modes: tuple[ScannedMode, ...]
+    isotopes: tuple[tuple[str, int], ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -142,6 +208,12 @@ class Scan:
         Where levels change places or the filling changes, in words.
     withheld : tuple of str
         What is not given, and why.
+    minimum : ScanMinimum or None
+        Where the set is calibrated for the scanned bond and the scan has one.
+    parameter_sha256 : str
+        Content hash of the set.
+    constants : tuple of (str, float or bool or None)
+        Constants of the Hamiltonian by name; None follows K.
     """
 
     plan: ScanPlan
@@ -155,3 +227,6 @@ class Scan:
     points: tuple[ScanPoint, ...]
     crossings: tuple[str, ...]
     withheld: tuple[str, ...]
+    minimum: ScanMinimum | None = None
+    parameter_sha256: str = ""
+    constants: tuple[tuple[str, float | bool | None], ...] = ()

@@ -19,6 +19,8 @@ class StretchingModes:
         Harmonic, highest first; negative for a direction in which the energy falls off [cm^-1].
     stretches : (n_modes, n_bonds) ndarray
         Changes of the lengths in each mode, of unit length together.
+    vectors : (n_modes, n_bonds) ndarray
+        The modes in symmetrically orthonormalised coordinates; their squares are the shares of the bonds.
     reduced_masses_u : (n,) ndarray
         (l F l)/omega^2 of each mode with its stretches l [u].
     """
@@ -26,6 +28,7 @@ class StretchingModes:
     force_constants_eV_per_A2: FloatArray
     wavenumbers_per_cm: FloatArray
     stretches: FloatArray
+    vectors: FloatArray
     reduced_masses_u: FloatArray
 
     def __post_init__(self) -> None:
@@ -33,5 +36,5 @@ class StretchingModes:
         put = object.__setattr__
         put(self, "wavenumbers_per_cm", frozen_floats(self.wavenumbers_per_cm, (n,), "wavenumbers_per_cm"))
         put(self, "reduced_masses_u", frozen_floats(self.reduced_masses_u, (n,), "reduced_masses_u"))
-        for name in ("force_constants_eV_per_A2", "stretches"):
+        for name in ("force_constants_eV_per_A2", "stretches", "vectors"):
             put(self, name, frozen_floats(getattr(self, name), (n, n), name))

@@ -12,7 +12,7 @@ import numpy as np
 
 from ehmo import __version__
 from ehmo.errors import InputError
-from ehmo.records.scan import Scan, ScannedBond, ScannedLevel, ScanPoint
+from ehmo.records.scan import Scan, ScanMinimum, ScannedBond, ScannedLevel, ScanPoint
 from ehmo.report.document import harmless
 
 SCAN_SCHEMA = "ehmo scan 1"
@@ -47,13 +47,37 @@ def scan_document(scan: Scan) -> dict[str, Any]:
         "bond_labels": list(scan.bond_labels),
         "scanned_bond": scan.scanned_bond,
         "parameter_set": scan.parameter_set,
+        "parameter_sha256": scan.parameter_sha256,
+        "constants": dict(scan.constants),
         "charge_model": scan.charge_model,
         "charge": scan.charge,
         "unpaired_electrons": scan.unpaired_electrons,
         "points": [_point(point) for point in scan.points],
+        "relaxed": scan.plan.relaxed,
+        "minimum": None if scan.minimum is None else _minimum(scan.minimum),
         "crossings": list(scan.crossings),
         "withheld": list(scan.withheld),
         "notes": list(scan.plan.notes),
+    }
+
+
+def _minimum(minimum: ScanMinimum) -> dict[str, Any]:
+    return {
+        "length_A": minimum.length_A,
+        "energy_eV": minimum.energy_eV,
+        "force_constant_N_per_m": minimum.force_constant_N_per_m,
+        "fitted_lengths_A": list(minimum.fitted),
+        "fit_rms_eV": minimum.fit_rms_eV,
+        "modes": [
+            {
+                "wavenumber_per_cm": mode.wavenumber_per_cm,
+                "reduced_mass_u": mode.reduced_mass_u,
+                "share": mode.share,
+                "stretches": [{"bond": label, "part": part} for label, part in mode.stretches],
+            }
+            for mode in minimum.modes
+        ],
+        "isotopes": [{"atom": name, "mass_number": number} for name, number in minimum.isotopes],
     }
 
 
@@ -61,6 +85,9 @@ def _point(point: ScanPoint) -> dict[str, Any]:
     return {
         "value": point.value,
         "fault": point.fault or None,
+        "energy_eV": point.energy_eV,
+        "smearing_eV": point.smearing_eV,
+        "positions_A": None if point.positions_A is None else point.positions_A.tolist(),
         "iterations": point.iterations,
         "ground_term": point.ground_term or None,
         "bonds": [
@@ -143,9 +170,12 @@ _IDENTITY = (
     "atom_labels",
     "bond_labels",
     "parameter_set",
+    "parameter_sha256",
+    "constants",
     "charge_model",
     "charge",
     "unpaired_electrons",
+    "relaxed",
 )
 
 
@@ -181,6 +211,9 @@ def _point_back(point: dict[str, Any]) -> ScanPoint:
         bands_per_cm=tuple((band["upper_term"], band["wavenumber_per_cm"]) for band in point["bands"]),
         iterations=int(point["iterations"]),
         warnings=tuple(point["warnings"]),
+        energy_eV=None if point["energy_eV"] is None else float(point["energy_eV"]),
+        smearing_eV=float(point["smearing_eV"]),
+        positions_A=None if point["positions_A"] is None else np.array(point["positions_A"], dtype=np.float64),
     )
 
 
@@ -198,7 +231,7 @@ def scan_csv(scan: Scan) -> str:
     """
     n_levels = max((len(point.levels) for point in scan.points), default=0)
     unit = "A" if scan.plan.coordinate == "length" else "degree"
-    heading = [f"{scan.plan.coordinate}_{unit}", "fault", "ground_term"]
+    heading = [f"{scan.plan.coordinate}_{unit}", "fault", "ground_term", "energy_eV"]
     for label in scan.bond_labels:
         heading += [f"{label} {name}" for name in ("length_A", "overlap_population", "mayer", "wiberg", "formal_order")]
         heading += [f"{label} {symmetry}_weight" for symmetry in ("sigma", "pi", "delta")]
@@ -209,7 +242,7 @@ def scan_csv(scan: Scan) -> str:
     writer = csv.writer(out, lineterminator="\n")
     writer.writerow(heading)
     for point in scan.points:
-        cells: list[Any] = [f"{point.value:.6f}", inert(point.fault), inert(point.ground_term)]
+        cells: list[Any] = [f"{point.value:.6f}", inert(point.fault), inert(point.ground_term), point.energy_eV]
         for bond in point.bonds or ():
             cells += [
                 bond.length_A,

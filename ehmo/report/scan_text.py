@@ -6,7 +6,7 @@ import re
 import textwrap
 
 from ehmo.errors import visible
-from ehmo.records.scan import Scan, ScanPoint
+from ehmo.records.scan import Scan, ScannedMode, ScanPoint
 from ehmo.records.table import aligned
 from ehmo.report.cautions import CAUTIONS
 from ehmo.report.text import sentence_lines
@@ -37,9 +37,10 @@ def scan_text(scan: Scan, source: str) -> str:
             f"{scan.charge_model} charges",
         ],
         _bonds(scan),
+        _energy(scan),
         _ladder(scan),
         sentence_lines("Crossings", scan.crossings) if scan.crossings else [],
-        sentence_lines("Withheld", scan.withheld),
+        sentence_lines("Withheld", scan.withheld) if scan.withheld else [],
         sentence_lines("Assumed", scan.plan.notes),
         _doubts(scan),
         sentence_lines("Cautions", CAUTIONS),
@@ -87,6 +88,59 @@ def _bonds(scan: Scan) -> list[str]:
     return [f"Bond {label}", *aligned(rows, numeric=range(9), indent="  ")]
 
 
+def _energy(scan: Scan) -> list[str]:
+    """Energies above the lowest point, and the minimum with its modes."""
+    known = [(point.value, point.energy_eV) for point in scan.points if point.energy_eV is not None]
+    if not known:
+        return []
+    name, digits = _coordinate(scan)
+    lowest = min(energy for _, energy in known)
+    rows = [[name, "energy/eV"]]
+    rows += [[f"{value:.{digits}f}", f"{energy - lowest:.3f}"] for value, energy in known]
+    lines = [f"Energy above the lowest point, which lies {lowest:+.2f} eV from the separated neutral atoms"]
+    return [*lines, *aligned(rows, numeric=range(2), indent="  "), *_minimum(scan)]
+
+
+def _minimum(scan: Scan) -> list[str]:
+    minimum, named = scan.minimum, "-".join(scan.labels[atom] for atom in scan.plan.atoms)
+    if minimum is None:
+        return []
+    isotopes = ", ".join(f"{name}={number}" for name, number in minimum.isotopes)
+    lines = [
+        "",
+        f"Minimum of {named}: {minimum.length_A:.4f} Å, force constant {minimum.force_constant_N_per_m:.0f} N/m "
+        f"({minimum.force_constant_N_per_m / 100:.2f} mdyn/Å)",
+        f"  quartic through {len(minimum.fitted)} points from {minimum.fitted[0]:.3f} to {minimum.fitted[-1]:.3f} Å, "
+        f"rms {minimum.fit_rms_eV:.1e} eV",
+    ]
+    if minimum.modes:
+        rows = [["stretching mode/cm-1", "reduced mass/u", f"part of {named}", "together with"]]
+        rows += [
+            [
+                f"{mode.wavenumber_per_cm:.1f}",
+                f"{mode.reduced_mass_u:.3f}",
+                f"{100 * mode.share:.0f} %",
+                _company(mode, named),
+            ]
+            for mode in minimum.modes
+        ]
+        masses = f"isotopes {isotopes}" if isotopes else "standard atomic weights"
+        lines += aligned(rows, numeric=range(3), indent="  ")
+        lines.append(f"  harmonic, with every angle held; {masses}")
+    return lines
+
+
+def _company(mode: ScannedMode, named: str) -> str:
+    """Other bonds of a mode, with their phase."""
+    own = max(abs(part) for label, part in mode.stretches if label == named)
+    words = [
+        f"{label} {'in phase' if part > 0 else 'out of phase'}"
+        for label, part in mode.stretches
+        if label != named and abs(part) > 0.3 * own
+    ]
+    return ", ".join(words) or "-"
+
+
 def _ladder(scan: Scan) -> list[str]:
     """Levels above the lowest one, each under its leading function."""
     with_levels = [point for point in scan.points if point.levels]
@@ -96,10 +150,17 @@ def _ladder(scan: Scan) -> list[str]:
     if any(sorted(level.function for level in point.levels) != sorted(functions) for point in with_levels):
         functions = []
     name, digits = _coordinate(scan)
-    titles = functions or [f"level {k + 1}" for k in range(len(with_levels[0].levels))]
+    titles = [_titled(with_levels, function) for function in functions]
+    titles = titles or [f"level {k + 1}" for k in range(len(with_levels[0].levels))]
     rows = [[name, *titles]]
     rows += [[f"{point.value:.{digits}f}", *_levels(point, functions)] for point in with_levels]
     return ["Ladder, cm-1 above the lowest level", *aligned(rows, numeric=range(len(rows[0])), indent="  ")]
+
+
+def _titled(points: list[ScanPoint], function: str) -> str:
+    """Function with its irrep, where that is the same all along the scan."""
+    irreps = {level.irrep for point in points for level in point.levels if level.function == function}
+    return f"{function} ({irreps.pop()})" if len(irreps) == 1 and "" not in irreps else function
 
 
 def _levels(point: ScanPoint, functions: list[str]) -> list[str]:

@@ -210,11 +210,12 @@ def normal_modes(force_constants: FloatArray, inverse_masses: FloatArray) -> Str
     root = (axes * np.sqrt(np.maximum(weights, 0.0))) @ axes.T
     squares, vectors = np.linalg.eigh(root @ force_constants @ root)
     order = np.argsort(-squares)
-    squares, stretches = squares[order], (root @ vectors[:, order]).T
+    squares, vectors = squares[order], vectors[:, order].T
+    stretches = vectors @ root
     stretches = stretches / np.linalg.norm(stretches, axis=1)[:, None]
     effective = np.einsum("ki,ij,kj->k", stretches, force_constants, stretches)
     wavenumbers = np.sign(squares) * np.sqrt(np.abs(squares)) * PER_CM_PER_ROOT_EV_A2_U
-    return StretchingModes(force_constants, wavenumbers, stretches, effective / squares)
+    return StretchingModes(force_constants, wavenumbers, stretches, vectors, effective / squares)
 
 
 def atom_masses(fragment: Fragment, isotopes: Mapping[str, int] | None = None) -> FloatArray:

@@ -88,4 +88,3 @@ def side_by_side(
 def _outwards(step: float, limit: float) -> list[float]:
     count = int(limit / step + 1e-9)
     return [0.0, *(sign * step * k for k in range(1, count + 1) for sign in (-1, 1))]
-

@@ -3,22 +3,37 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
 
+import basis_params
 from ehmo.errors import InputError, LimitError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.coordination import Coordination, MetalDonorBond
 from ehmo.records.fragment import Fragment
 from ehmo.records.scan import ScanPlan
+from ehmo.studies.displacement import rigid_group
+
+CONTACT_FRACTION = 0.7
+"""Atoms that are not bonded and come nearer than this part of the sum of their covalent radii run into each other."""
+
+RELAXED = "every other length and angle is relaxed at each point, from the geometry of the file"
 
 MOST_STEPS = 2000
 """Largest number of points."""
 
 
 def bond_plan(
-    fragment: Fragment, coordination: Coordination, words: str, first: float, last: float, steps: int
+    fragment: Fragment,
+    coordination: Coordination,
+    words: str,
+    first: float,
+    last: float,
+    steps: int,
+    *,
+    relax: bool = False,
 ) -> ScanPlan:
     """Plan of a scan of one metal-donor length.
 
@@ -34,6 +49,8 @@ def bond_plan(
         Lengths [angstrom].
     steps : int
         Points, ends included.
+    relax : bool
+        Whether the rest of the molecule is relaxed at each value.
 
     Returns
     -------
@@ -50,13 +67,19 @@ def bond_plan(
         listed = ", ".join(f"{fragment.labels[b.metal]}-{fragment.labels[b.donor]}" for b in coordination.bonds)
         raise InputError(f"there is no bond {words}", mend=f"choose from {listed}")
     moved, note = _moving(coordination, bond, fragment)
-    return ScanPlan(
-        "length", (bond.metal, bond.donor), moved, _values(first, last, steps, lowest=0.5, highest=20.0), (note,)
-    )
+    values = _values(first, last, steps, lowest=0.5, highest=20.0)
+    return ScanPlan("length", (bond.metal, bond.donor), moved, values, (RELAXED if relax else note,), relax)
 
 
 def angle_plan(
-    fragment: Fragment, coordination: Coordination, words: str, first: float, last: float, steps: int
+    fragment: Fragment,
+    coordination: Coordination,
+    words: str,
+    first: float,
+    last: float,
+    steps: int,
+    *,
+    relax: bool = False,
 ) -> ScanPlan:
     """Plan of a scan of one donor-metal-donor angle: the last donor's ligand turns about the metal.
 
@@ -70,6 +93,8 @@ def angle_plan(
         Angles [degree].
     steps : int
         Points, ends included.
+    relax : bool
+        Whether the rest of the molecule is relaxed at each value.
 
     Returns
     -------
@@ -87,7 +112,8 @@ def angle_plan(
             f"{words} is no angle of two bonds at a metal", mend="name donor-metal-donor, such as O2-V1-O3"
         )
     moved, note = _moving(coordination, bonds[1], fragment)
-    return ScanPlan("angle", (a, metal, b), moved, _values(first, last, steps, lowest=10.0, highest=180.0), (note,))
+    values = _values(first, last, steps, lowest=10.0, highest=180.0)
+    return ScanPlan("angle", (a, metal, b), moved, values, (RELAXED if relax else note,), relax)
 
 
 def displaced(fragment: Fragment, plan: ScanPlan, value: float) -> Fragment:
@@ -117,6 +143,37 @@ def displaced(fragment: Fragment, plan: ScanPlan, value: float) -> Fragment:
         first, second = positions[a] - positions[metal], positions[b] - positions[metal]
         positions[moved] = positions[metal] + (positions[moved] - positions[metal]) @ _turn(first, second, value).T
     return replace(fragment, positions_A=positions)
+
+
+def check_contacts(fragment: Fragment, plan: ScanPlan, bonded: Sequence[tuple[int, int]]) -> None:
+    """Refuse a geometry in which what moved comes upon an atom that it is not bonded to.
+
+    Parameters
+    ----------
+    fragment : Fragment
+        Displaced.
+    plan : ScanPlan
+    bonded : sequence of (int, int)
+        Bonded atoms of the start.
+
+    Raises
+    ------
+    InputError
+        It names the atoms.
+    """
+    moved = np.zeros(len(fragment), dtype=bool)
+    moved[list(plan.moved)] = True
+    first, second = np.nonzero(moved[:, None] & ~moved)
+    distances = np.linalg.norm(fragment.positions_A[first] - fragment.positions_A[second], axis=1)
+    radii = np.array([basis_params.atom(symbol).covalent_radius_A for symbol in fragment.symbols])
+    shared = {frozenset(pair) for pair in bonded} | {frozenset(plan.atoms[-2:])}
+    for place in np.flatnonzero(distances < CONTACT_FRACTION * (radii[first] + radii[second])):
+        a, b = int(first[place]), int(second[place])
+        if frozenset((a, b)) not in shared:
+            raise InputError(
+                f"{fragment.labels[a]} runs upon {fragment.labels[b]}, {distances[place]:.2f} Å away",
+                mend="take another range",
+            )
 
 
 def _turn(first: FloatArray, second: FloatArray, angle_deg: float) -> FloatArray:
@@ -151,13 +208,12 @@ def _bond_between(coordination: Coordination, pair: tuple[int, ...]) -> MetalDon
 
 
 def _moving(coordination: Coordination, bond: MetalDonorBond, fragment: Fragment) -> tuple[tuple[int, ...], str]:
-    ligand = coordination.ligands[bond.ligand]
-    label = fragment.labels[bond.donor]
-    if len(ligand.donors) == 1 and len(ligand.metals) == 1:
-        whole = ligand.atoms
-        said = f"the ligand {ligand.formula} of {label} moves rigidly" if len(whole) > 1 else f"{label} moves"
-        return whole, f"{said}; every other atom stays"
-    return (bond.donor,), f"{label} belongs to a chelating or bridging ligand: it moves alone"
+    whole = rigid_group(coordination, bond)
+    ligand, label = coordination.ligands[bond.ligand], fragment.labels[bond.donor]
+    if whole != ligand.atoms:
+        return whole, f"{label} belongs to a chelating or bridging ligand: it moves alone"
+    said = f"the ligand {ligand.formula} of {label} moves rigidly" if len(whole) > 1 else f"{label} moves"
+    return whole, f"{said}; every other atom stays"
 
 
 def _values(first: float, last: float, steps: int, *, lowest: float, highest: float) -> tuple[float, ...]:

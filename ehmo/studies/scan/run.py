@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from itertools import pairwise
 
 import numpy as np
 
-from basis_params import ParameterTable
+from basis_params import ModelSettings, ParameterTable
 from ehmo.calculate import effective_settings, known_report
 from ehmo.errors import EhmoError
 from ehmo.records.arrays import FloatArray, IntArray
@@ -18,7 +18,10 @@ from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 from ehmo.records.report import BondReport
 from ehmo.records.scan import Scan, ScannedBond, ScannedLevel, ScanPlan, ScanPoint
-from ehmo.studies.scan.plan import displaced
+from ehmo.studies.scan.energies import minimum, outside_range, point_energy, why_no_energy
+from ehmo.studies.scan.plan import check_contacts, displaced
+from ehmo.studies.scan.relax import bonded_pairs, check_relaxable, left_range, relaxed
+from ehmo.studies.stretching import atom_masses
 
 SAME_VALUE = 1e-9
 """Points of an earlier run count as done if their value differs by less."""
@@ -34,8 +37,9 @@ def run_scan(
     *,
     done: Sequence[ScanPoint] = (),
     on_point: Callable[[ScanPoint], None] | None = None,
+    isotopes: Mapping[str, int] | None = None,
 ) -> Scan:
-    """Report at each value of a scanned coordinate.
+    """Report at each value of a scanned coordinate, with the energy where the set is calibrated for it.
 
     Bonds, charge and spin are those of the start. A point that fails says why, and the scan goes on.
 
@@ -53,11 +57,24 @@ def run_scan(
         Points of an earlier run, taken as they are.
     on_point : callable, optional
         Told of each new point.
+    isotopes : mapping of str to int, optional
+        Mass numbers by label or element, for the wavenumbers; see `atom_masses`.
 
     Returns
     -------
     scan : Scan
+
+    Raises
+    ------
+    InputError
+        If the rest is to be relaxed by a set without two-body terms for its bonds, or an isotope is unknown.
     """
+    if plan.relaxed:
+        check_relaxable(fragment, table)
+    atom_masses(fragment, isotopes)
+    start = empty_scan(fragment, coordination, electrons, plan, table, options)
+    with_energy = not why_no_energy(fragment, plan, table, options)
+    bonded = bonded_pairs(fragment)
     settings = effective_settings(table.settings, options)
     known = {round(point.value / SAME_VALUE): point for point in done if not point.fault}
     points: list[ScanPoint] = []
@@ -66,14 +83,22 @@ def run_scan(
     for value in plan.values:
         point = known.get(round(value / SAME_VALUE))
         if point is None:
-            place = displaced(fragment, plan, value)
             try:
+                place = displaced(fragment, plan, value)
+                check_contacts(place, plan, bonded)
+                if plan.relaxed:
+                    place = relaxed(place, plan, value, table, options)
                 report = known_report(place, _measured(coordination, place), electrons, table, settings, options)
             except EhmoError as error:
                 point = failed_point(value, error.fault)
             else:
                 order = _followed(before, report, order)
                 point = _point(value, report, order)
+                if with_energy:
+                    point = replace(point, energy_eV=point_energy(plan, value, report, table))
+                if plan.relaxed:
+                    doubts = (*point.warnings, *left_range(place, table))
+                    point = replace(point, positions_A=place.positions_A, warnings=doubts)
                 before = report
             if on_point is not None:
                 on_point(point)
@@ -81,8 +106,12 @@ def run_scan(
             # The orbitals of earlier points are not kept: follow on from their order by energy.
             before, order = None, point.followed
         points.append(point)
-    start = empty_scan(fragment, coordination, electrons, plan, table, options)
-    return replace(start, points=tuple(points), crossings=_crossings(points))
+    scan = replace(start, points=tuple(points), crossings=_crossings(points))
+    if not with_energy:
+        return scan
+    found, reason = minimum(points, fragment, coordination, plan, table, options, isotopes or {})
+    withheld = (outside_range(plan, fragment, table), reason)
+    return replace(scan, minimum=found, withheld=tuple(said for said in withheld if said))
 
 
 def empty_scan(
@@ -95,6 +124,7 @@ def empty_scan(
 ) -> Scan:
     """Scan without its points; see `run_scan`."""
     labels = fragment.labels
+    reason = why_no_energy(fragment, plan, table, options)
     return Scan(
         plan=plan,
         labels=labels,
@@ -106,8 +136,15 @@ def empty_scan(
         unpaired_electrons=electrons.unpaired_electrons,
         points=(),
         crossings=(),
-        withheld=(f"energy, minimum, force constant and wavenumber: the set {table.name} is not calibrated for them",),
+        withheld=(reason,) if reason else (),
+        parameter_sha256=table.content_sha256,
+        constants=_constants(effective_settings(table.settings, options)),
     )
+
+
+def _constants(settings: ModelSettings) -> tuple[tuple[str, float | bool | None], ...]:
+    names = ("K", "weighting", "K_sigma", "K_pi", "K_delta", "K_decay_per_A", "lambda_")
+    return tuple((name.rstrip("_"), getattr(settings, name)) for name in names)
 
 
 def failed_point(value: float, fault: str) -> ScanPoint:
@@ -180,6 +217,7 @@ def _point(value: float, report: BondReport, followed: IntArray) -> ScanPoint:
         ),
         iterations=report.method.iterations,
         warnings=report.warnings,
+        smearing_eV=report.state.smearing_eV,
     )
 
 
@@ -204,6 +242,8 @@ def _crossings(points: Sequence[ScanPoint]) -> tuple[str, ...]:
         if len(before.followed) == len(after.followed) and len(before.followed):
             filled = before.occupations[before.followed] - after.occupations[after.followed]
             changed = np.flatnonzero(np.abs(filled) > 0.5)
+            if bool(before.smearing_eV) != bool(after.smearing_eV):
+                said.append(f"{between} levels cross as the charges settle: whole electrons give way to shared ones")
             if len(changed):
                 levels = ", ".join(
                     f"{after.followed[k] + 1} ({after.irreps[after.followed[k]] or '-'})" for k in changed
