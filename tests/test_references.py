@@ -48,7 +48,8 @@ def table_keys():
     shells = [
         s for n in basis_params.available_sets() for e in basis_params.load_set(n).elements.values() for s in e.shells
     ]
-    return {row["source_key"] for row in rows} | {shell.source_key for shell in shells}
+    pairs = [pair for n in basis_params.available_sets() for pair in basis_params.load_set(n).repulsion.values()]
+    return {row["source_key"] for row in rows} | {entry.source_key for entry in (*shells, *pairs)}
 
 
 def test_docstrings_cite_something():

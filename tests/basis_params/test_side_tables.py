@@ -29,6 +29,8 @@ def rows_with_sources():
         for element in basis_params.load_set(name).elements.values():
             for shell in element.shells:
                 yield name, shell.source_key, shell.locator, shell.provenance
+        for pair in basis_params.load_set(name).repulsion.values():
+            yield name, pair.source_key, pair.locator, pair.provenance
 
 
 def test_every_row_has_a_known_source_locator_and_provenance():
@@ -258,3 +260,25 @@ def test_every_metal_of_the_oxo_chemistry_has_bond_valences_with_the_common_dono
     for symbol in [*OXO_METALS, "Th", "U", "Np", "Pu"]:
         for donor in ("O", "N", "C", "F", "S", "P", "Cl", "Br", "I"):
             assert 1.4 < bond_valence_R0(symbol, donor).R0_A < 3.0
+
+
+@pytest.mark.parametrize(("symbol", "number"), [("H", 2), ("C", 13), ("O", 18), ("Mo", 98), ("U", 238)])
+def test_masses_of_nuclides(symbol, number):
+    """Cross-check: mendeleev (installed version; the table was read in 1.3.0)."""
+    isotope = next(i for i in mendeleev.element(symbol).isotopes if i.mass_number == number)
+    assert basis_params.atomic_mass(symbol, number) == pytest.approx(isotope.mass, abs=1e-6)
+
+
+def test_standard_weights_lie_among_the_nuclides():
+    # Law: a mean of masses.
+    for symbol in basis_params.atom_symbols():
+        weight = basis_params.atomic_mass(symbol)
+        near = [n for n in range(int(weight) - 6, int(weight) + 8) if (symbol, n) in known_nuclides()]
+        if near:
+            assert min(near) - 1 < weight < max(near) + 1
+    with pytest.raises(KeyError, match="no nuclide 'O' 99: the table has 16, 17, 18"):
+        basis_params.atomic_mass("O", 99)
+
+
+def known_nuclides():
+    return {(row["symbol"], int(row["mass_number"])) for row in side_table("masses") if row["mass_number"]}

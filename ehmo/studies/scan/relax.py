@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from basis_params import ParameterTable
+from ehmo.analysis.symmetry.fitting import superposition
 from ehmo.errors import ConvergenceError, InputError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.fragment import Fragment
@@ -104,16 +105,10 @@ def relaxed(fragment: Fragment, plan: ScanPlan, value: float, table: ParameterTa
 
 
 def laid_over(positions: FloatArray, target: FloatArray) -> FloatArray:
-    """Positions turned and shifted onto a target by least squares, so that local axes of the start still serve.
-
-    References
-    ----------
-    .. [1] kabsch-1976: W. Kabsch, Acta Crystallogr. A 32, 922 (1976).
-    """
+    """Positions turned and shifted onto a target by least squares, so that local axes of the start still serve."""
     centre, wanted = positions.mean(axis=0), target.mean(axis=0)
-    left, _, right = np.linalg.svd((positions - centre).T @ (target - wanted))
-    turn = left @ np.diag([1.0, 1.0, np.linalg.det(left @ right)]) @ right
-    result: FloatArray = (positions - centre) @ turn + wanted
+    turn = superposition(positions - centre, target - wanted)
+    result: FloatArray = (positions - centre) @ turn.T + wanted
     return result
 
 
