@@ -29,6 +29,10 @@ SHARP_ITERATIONS = 50
 SMEARING_EV = 0.02
 """Width of the Fermi-Dirac filling that takes over where levels cross as the charges settle [eV]."""
 
+SMEARED_DAMPING = 0.06
+"""Share of the residual in the next charges under that filling: a level that distant atoms share answers a potential by
+U / (4 width), some fifty times the step, and larger shares overshoot."""
+
 
 @dataclass(frozen=True, slots=True)
 class ElectronCount:
@@ -131,7 +135,11 @@ class _ChargeIteration:
     def settle(self, smearing_eV: float, limit: int) -> ElectronicState | None:
         """State whose charges reproduce themselves; None once `limit` diagonalisations are spent in all."""
         basis, electrons = self._basis, self._electrons
-        mixer = AndersonMixer(self._charges)
+        mixer = (
+            AndersonMixer(self._charges, damping=SMEARED_DAMPING, depth=8)
+            if smearing_eV
+            else AndersonMixer(self._charges)
+        )
         while self.iterations < limit:
             self.iterations += 1
             potential = -self._interaction @ mixer.value

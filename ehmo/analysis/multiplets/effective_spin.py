@@ -182,7 +182,9 @@ def _principal(tensor: FloatArray, same: float) -> tuple[FloatArray, FloatArray]
         pair, single = ([0, 1], 2) if low else ([1, 2], 0)
         values[pair] = values[pair].mean()
         plane = np.eye(3) - np.outer(axes[single], axes[single])
-        nearest = plane[np.diagonal(plane).argmax()]
+        # x before y before z among those that lie about as near to the plane: rounding must not choose.
+        lengths = np.diagonal(plane)
+        nearest = plane[int((lengths > lengths.max() - 1e-3).argmax())]
         axes[pair[0]] = nearest / np.linalg.norm(nearest)
         axes[pair[1]] = np.cross(axes[single], axes[pair[0]])
     return values, axes

@@ -14,7 +14,6 @@ from ehmo.analysis.symmetry import (
     lowdin_rows,
     orbital_irreps,
     point_group,
-    term_symbol,
 )
 from ehmo.electronic.eigen import overlap_spectrum
 from ehmo.harmonics import harmonic_rotations
@@ -124,7 +123,7 @@ def pyscf_labels(species, symmetry, subgroup, report, lowdin):
     adapted, numbers_of = symm.symm_adapted_basis(mol, subgroup)
     names = [symm.irrep_id2name(subgroup, k).replace('"', "''") for k in numbers_of]
     shares = np.array([((block.T @ lowdin[rows]) ** 2).sum(axis=0) for block in adapted])
-    return [term_symbol(name) for name in names], shares
+    return names, shares
 
 
 @pytest.mark.parametrize(
@@ -156,7 +155,9 @@ def test_labels_of_every_orbital_agree_with_pyscf(name, subgroup):
     np.testing.assert_allclose(symmetry.axes, np.eye(3), atol=1e-9)
     names, shares = pyscf_labels(SPECIES[name], symmetry, subgroup, report, lowdin)
     group = symmetry.group.name
-    descent = DESCENT.get((group, subgroup)) or {irrep: term_symbol(irrep) for irrep in symmetry.group.irreps}
+    descent = DESCENT.get((group, subgroup)) or dict(
+        zip(symmetry.group.irreps, symmetry.group.term_irreps, strict=True)
+    )
     energies = report.state.energies_eV
     starts = [*np.flatnonzero(np.diff(energies, prepend=-np.inf) > 1e-4), len(energies)]
     for first, stop in pairwise(starts):
