@@ -12,11 +12,22 @@ MAX_ATOMS = 10_000
 MAX_BYTES = 100_000_000
 """Default limit of the size of a file [byte]."""
 
+_SQLITE_HEADER = b"SQLite format 3\0"
+
 
 def shown(text: object, limit: int = 60) -> str:
     """Text from a file on one line: control characters shown, blanks squeezed, cut to a length."""
     line = visible(" ".join(str(text).split()))
     return line if len(line) <= limit else line[: limit - 3] + "..."
+
+
+def is_ase_database(path: Path) -> bool:
+    """Whether a file is a SQLite file, as an ASE database is."""
+    try:
+        with path.open("rb") as file:
+            return file.read(len(_SQLITE_HEADER)) == _SQLITE_HEADER
+    except (OSError, ValueError):
+        return False
 
 
 def read_text(path: Path, max_bytes: int = MAX_BYTES) -> str:

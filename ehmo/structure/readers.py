@@ -8,12 +8,11 @@ from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
-import numpy as np
-
 from ehmo.errors import InputError, LimitError
 from ehmo.records.fragment import Fragment
+from ehmo.structure.ase_atoms import fragments_of_atoms
 from ehmo.structure.electron_keys import StatedElectrons, comment_pairs, stated_electrons
-from ehmo.structure.files import MAX_ATOMS, MAX_BYTES, read_text, shown
+from ehmo.structure.files import MAX_ATOMS, MAX_BYTES, is_ase_database, read_text, shown
 from ehmo.structure.xyz import XyzFrame, extended_atoms, plain_fragment, split_frames
 
 if TYPE_CHECKING:
@@ -115,7 +114,7 @@ def read_frames(
     Parameters
     ----------
     path : str or path-like
-        XYZ, extended XYZ or CIF, told by suffix or content; else a text format that ASE knows.
+        XYZ, extended XYZ or CIF, told by suffix or content; else an ASE database, or a text format that ASE knows.
     hydrogens : {"file", "place", "lengthen"}
         As in the file, with missing ones placed at neutron lengths, or with X-H bonds lengthened to them.
     cations : {"none", "basis"}
@@ -139,16 +138,19 @@ def read_frames(
         If the file or a frame is over a limit.
     """
     path = Path(path)
-    text = read_text(path, max_bytes)
     place = shown(path, 200)
-    kind = _kind(path, text)
-    if kind == "cif":
-        return _cif_fragments(text, place, max_atoms, hydrogens, cations)
-    if kind == "xyz":
-        frames = split_frames(text, place, max_atoms)
-        found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
+    if is_ase_database(path):
+        found = _database_fragments(path, place, max_atoms, max_bytes)
     else:
-        found = _ase_fragments(path, place, max_atoms)
+        text = read_text(path, max_bytes)
+        kind = _kind(path, text)
+        if kind == "cif":
+            return _cif_fragments(text, place, max_atoms, hydrogens, cations)
+        if kind == "xyz":
+            frames = split_frames(text, place, max_atoms)
+            found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
+        else:
+            found = _ase_fragments(path, place, max_atoms)
     if hydrogens == "file":
         return found
     from ehmo.structure.cell_hydrogens import with_hydrogens, with_longer_bonds
@@ -163,6 +165,8 @@ def is_crystal(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> b
     suffix = path.suffix.lower()
     if suffix in CIF_SUFFIXES or suffix in XYZ_SUFFIXES:
         return suffix in CIF_SUFFIXES
+    if is_ase_database(path):
+        return False
     return _kind(path, read_text(path, max_bytes)) == "cif"
 
 
@@ -201,30 +205,34 @@ def _frame_fragments(frame: XyzFrame, place: str) -> tuple[Fragment, ...]:
 
 def _fragments_of(atoms: Atoms, source: str, title: str, stated: StatedElectrons) -> tuple[Fragment, ...]:
     """Fragments of ASE atoms: as they stand, or the molecules of a cell periodic in three directions."""
-    if not np.isfinite(atoms.positions).all():
-        bad = int(np.flatnonzero(~np.isfinite(atoms.positions).all(axis=1))[0])
-        raise InputError(
-            f"non-finite coordinates at atom {bad + 1}",
-            place=source,
-            mend="give every coordinate as a number",
-        )
-    if atoms.pbc.all():
-        labels = tuple(f"{symbol}{k}" for k, symbol in enumerate(atoms.get_chemical_symbols(), start=1))
-        if "X" in atoms.get_chemical_symbols():
-            raise InputError("unknown element", place=source, mend="write chemical symbols such as V or O")
-        from ehmo.structure.contents import contents_of_cell
+    found, contents = fragments_of_atoms(atoms, source, title, stated)
+    if not found and contents is not None:
         from ehmo.structure.crystal import molecules_of
-        from ehmo.structure.periodic import PeriodicCell
 
-        cell = PeriodicCell(atoms, np.ones(len(atoms), bool), labels, source, title)
-        found = molecules_of(contents_of_cell(cell))
-        if len(found) > 1 or len(found[0]) < len(atoms):
-            # The stated charge belongs to all the atoms, so it is no molecule's own.
-            return found
-    else:
-        found = (Fragment(tuple(atoms.get_chemical_symbols()), atoms.positions, title=title, source=source),)
-    one = found[0]
-    return (Fragment(one.symbols, one.positions_A, stated.charge, stated.unpaired_electrons, title, source, one.notes),)
+        return molecules_of(contents)  # says what the crystal holds instead
+    return found
+
+
+def _database_fragments(path: Path, place: str, max_atoms: int, max_bytes: int) -> tuple[Fragment, ...]:
+    """Molecules of every row of an ASE database; a row that cannot be used refuses the whole."""
+    from ehmo.structure.ase_database import ase_database_rows
+
+    if path.stat().st_size > max_bytes:
+        raise LimitError(
+            f"{path.stat().st_size} bytes, the limit is {max_bytes}", place=place, mend="raise max_bytes (--max-bytes)"
+        )
+    found: list[Fragment] = []
+    for row in ase_database_rows(path, max_atoms=max_atoms):
+        if row.fault:
+            raise InputError(row.fault)
+        if not row.fragments:
+            raise InputError(
+                "extended structure without molecules", place=f"{place}, {row.entry}", mend="give it as a CIF"
+            )
+        found += row.fragments
+    if not found:
+        raise InputError("no rows", place=place, mend="give an ASE database with structures")
+    return tuple(found)
 
 
 def _ase_fragments(path: Path, place: str, max_atoms: int) -> tuple[Fragment, ...]:
