@@ -13,7 +13,9 @@ from ehmo.cli import _parser
 from ehmo.records.health import AntibondingShell, ShellPopulation
 from ehmo.report.cautions import CAUTIONS
 from ehmo.report.document import bond_document
+from ehmo.report.scan_document import scan_document
 from ehmo.studies.spread import spread_report
+from tests.energy.test_scan_energies import scan
 from tests.geometries import SPECIES
 
 ROOT = Path(__file__).parents[1]
@@ -35,7 +37,7 @@ def test_commands_parse(command):
     assert callable(_parser().parse_args(shlex.split(command)[1:]).handler)
 
 
-FREE_KEYS = {"metal_hybrid", "donor_hybrid", "configuration", "crystal_field_per_cm", "doublet_g_tensor"}
+FREE_KEYS = {"metal_hybrid", "donor_hybrid", "configuration", "crystal_field_per_cm", "doublet_g_tensor", "constants"}
 """Fields whose keys are names of shells, levels or parameters, or are described elsewhere."""
 
 
@@ -76,6 +78,13 @@ def test_json_fields_are_those_in_the_table(key, document):
     row = next(line for line in README.splitlines() if re.match(rf"\| (`\w+`, )*`{key}`[ ,]", line))
     written = keys_within(document[key])
     assert set(re.findall(r"`(\w+)`", row.split("|")[2])) == written
+
+
+def test_json_fields_of_a_scan_are_those_in_its_table():
+    found = scan_document(scan("[VO(OH2)5]2+", "V1-O2", 1.5, 1.9, 9, isotopes={"O2": 18}))
+    table = README.split("### JSON of a scan")[1].split("\n## ")[0]
+    assert {name for line in table.splitlines() for name in re.findall(r"`(\w+)`", line)} == keys_within([found])
+    assert {"modes", "stretches", "mulliken_charges"} <= keys_within([found])
 
 
 def test_cautions_are_those_of_the_reports():
