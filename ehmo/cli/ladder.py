@@ -40,7 +40,7 @@ def run(chosen: argparse.Namespace) -> str:
     """Ladder text of each structure in the file; the JSON is that of the whole report."""
     if chosen.list:
         return listing(chosen)
-    bands = _bands(chosen.bands)
+    bands = observed_bands(chosen.bands)
     options = replace(
         bond.calculation_options(chosen),
         observed_bands_per_cm=tuple(value for _, value in bands),
@@ -66,8 +66,14 @@ def _text(report: BondReport) -> str:
     return "\n\n".join(parts) + "\n"
 
 
-def _bands(words: str | None) -> list[tuple[str, float]]:
-    """Upper term (empty if not named) and wavenumber of each observed band."""
+def observed_bands(words: str | None) -> list[tuple[str, float]]:
+    """Upper term (empty if not named) and wavenumber of each observed band.
+
+    Raises
+    ------
+    InputError
+        If a word is no band.
+    """
     found = []
     for word in (words or "").replace(";", ",").split(","):
         if not word.strip():

@@ -9,18 +9,18 @@ from pathlib import Path
 from ehmo.errors import InputError
 
 
-def write_whole(path: str | Path, text: str) -> None:
-    """Write a text file so that a failure leaves no half of it behind.
+def write_whole(path: str | Path, content: str | bytes) -> None:
+    """Write a file so that a failure leaves no half of it behind.
 
-    The text goes to a temporary file in the same folder, which then takes the name of the target. A link keeps
+    The content goes to a temporary file in the same folder, which then takes the name of the target. A link keeps
     pointing where it does; a pipe or a device is written to and never replaced.
 
     Parameters
     ----------
     path : str or Path
         Target.
-    text : str
-        Content, written as UTF-8.
+    content : str or bytes
+        Text is written as UTF-8.
 
     Raises
     ------
@@ -30,15 +30,14 @@ def write_whole(path: str | Path, text: str) -> None:
     target = Path(path)
     temporary: str | None = None
     try:
+        raw = content.encode() if isinstance(content, str) else content
         target = target.resolve()
         if target.exists() and not target.is_file():
-            target.write_text(text, encoding="utf-8")
+            target.write_bytes(raw)
             return
-        with tempfile.NamedTemporaryFile(
-            "w", encoding="utf-8", dir=target.parent, prefix=f".{target.name}.", delete=False
-        ) as file:
+        with tempfile.NamedTemporaryFile(dir=target.parent, prefix=f".{target.name}.", delete=False) as file:
             temporary = file.name
-            file.write(text)
+            file.write(raw)
         _give_usual_permissions(temporary)
         Path(temporary).replace(target)
     except (OSError, ValueError, RuntimeError) as fault:  # ValueError: a null character; RuntimeError: a loop of links

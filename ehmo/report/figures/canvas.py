@@ -20,10 +20,10 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-COLUMN_CM: Final = 8.5
+COLUMN_CM: Final = 8.4
 """Width of one column of a journal [cm]."""
 
-DOUBLE_COLUMN_CM: Final = 17.5
+DOUBLE_COLUMN_CM: Final = 17.4
 """Width of two columns [cm]."""
 
 FORMATS: Final = ("svg", "pdf", "png")

@@ -11,11 +11,11 @@ import numpy as np
 
 from ehmo.analysis.interaction import bond_interaction
 from ehmo.errors import InputError
-from ehmo.records.electronic import NO_ELECTRON
 from ehmo.records.interaction import Interaction, OrbitalSet, PartLevel
 from ehmo.records.report import BondReport
 from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, dashes, drawn, new_figure, paper_axes
 from ehmo.report.figures.energy_axis import EnergyAxis, energy_axis
+from ehmo.report.figures.levels import ARROW_CM, DASH_CM, GAP_CM, LABEL_CM, draw_electrons, draw_set, set_width
 from ehmo.report.figures.markup import chemical, irrep, joined, part, write
 from ehmo.report.figures.placement import side_by_side, spread_out
 from ehmo.report.formula import complex_formula
@@ -38,9 +38,6 @@ LINE_SHARE: Final = 0.08
 """Contribution from which a level of a part and a level of the fragment are joined by a line."""
 
 _ABOVE_EV = 1.0  # what is drawn above the highest level of interest
-_LABEL_CM = 0.29
-_DASH_CM, _GAP_CM = 0.30, 0.07
-_ARROW_CM = 0.13
 _TOP_CM, _BOTTOM_CM = 0.95, 1.15
 _SHORTEST_CM, _TALLEST_CM = 9.0, 22.0
 
@@ -135,17 +132,17 @@ def _laid_out(found: Interaction, top_eV: float, width_cm: float) -> _Layout:
     energies += [level.energy_eV for level in found.metal_levels if level.energy_eV <= top_eV]
     energies += [s.energy_eV for s in found.ligand_levels if s.energy_eV <= top_eV and s.donor_share >= DONOR_SHARE]
     drawn_sets = [found.sets[k] for k in shown]
-    height = float(np.clip(_TOP_CM + _BOTTOM_CM + 1.25 * len(shown) * _LABEL_CM, _SHORTEST_CM, _TALLEST_CM))
+    height = float(np.clip(_TOP_CM + _BOTTOM_CM + 1.25 * len(shown) * LABEL_CM, _SHORTEST_CM, _TALLEST_CM))
     while True:
         scale = energy_axis(energies, _BOTTOM_CM + 0.15, height - _TOP_CM - 0.15)
         heights = [scale.height_cm(level.energy_eV) for level in drawn_sets]
-        widths = [_set_width(level) + 0.12 for level in drawn_sets]
-        centres = side_by_side(heights, widths, 2.4 * _ARROW_CM, (_DASH_CM + _GAP_CM) / 2, 0.15 * width_cm)
+        widths = [set_width(len(level.orbitals)) + 0.12 for level in drawn_sets]
+        centres = side_by_side(heights, widths, 2.4 * ARROW_CM, (DASH_CM + GAP_CM) / 2, 0.15 * width_cm)
         if height >= _TALLEST_CM or not np.isnan(centres).any():
             break
         # Crowded levels get more paper before they are laid over one another.
         height = min(1.15 * height, _TALLEST_CM)
-    labels = spread_out(heights, [_LABEL_CM] * len(shown), _BOTTOM_CM, height - _TOP_CM)
+    labels = spread_out(heights, [LABEL_CM] * len(shown), _BOTTOM_CM, height - _TOP_CM)
     return _Layout(
         width_cm,
         height,
@@ -161,10 +158,6 @@ def _laid_out(found: Interaction, top_eV: float, width_cm: float) -> _Layout:
 
 def _own_share(level: OrbitalSet) -> float:
     return level.metal_share + level.donor_share
-
-
-def _set_width(level: OrbitalSet) -> float:
-    return len(level.orbitals) * (_DASH_CM + _GAP_CM) - _GAP_CM
 
 
 def _draw_axis(axes: Axes, layout: _Layout, look: Look) -> None:
@@ -196,7 +189,7 @@ def _draw_lines(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
     metal_x, middle, _, ligand_x, _ = layout.columns
     for k, y, centre in zip(layout.shown, layout.heights, layout.centres, strict=True):
         level = found.sets[k]
-        half = _set_width(level) / 2
+        half = set_width(len(level.orbitals)) / 2
         for levels, shares, x, side in (
             (found.metal_levels, found.metal_contributions[k], metal_x, -1),
             (found.ligand_levels, found.ligand_contributions[k], ligand_x, 1),
@@ -232,12 +225,10 @@ def _draw_sets(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> N
     for k, y, centre, label_y in places:
         level = found.sets[k]
         colour = look.origins[int(np.argmax(_shares(level)))]
-        left = middle + centre - _set_width(level) / 2
-        for n in range(len(level.orbitals)):
-            x = left + n * (_DASH_CM + _GAP_CM)
-            axes.plot([x, x + _DASH_CM], [y, y], color=colour, lw=1.8, solid_capstyle="butt", zorder=4)
-        _draw_electrons(axes, level, left, y, look)
-        right = left + _set_width(level)
+        left = middle + centre - set_width(len(level.orbitals)) / 2
+        draw_set(axes, len(level.orbitals), left, y, colour)
+        draw_electrons(axes, level.alpha, level.beta, left, y, look)
+        right = left + set_width(len(level.orbitals))
         axes.plot([right + 0.03, label_x - 0.06], [y, label_y], color=look.grid, lw=0.5, zorder=0)
         text = joined(irrep(level.label), part(level.part))
         colour = look.part(level.symmetry) if level.symmetry else look.ink
@@ -257,25 +248,6 @@ def _shares(level: OrbitalSet) -> tuple[float, float, float]:
     return level.metal_share, level.ligand_share, 1.0 - level.metal_share - level.ligand_share
 
 
-def _draw_electrons(axes: Axes, level: OrbitalSet, left: float, y: float, look: Look) -> None:
-    """Half arrows, one per electron; the number in place of them where it is broken."""
-    alpha, beta = level.alpha, level.beta
-    if max(abs(alpha - round(alpha)), abs(beta - round(beta))) > NO_ELECTRON:
-        write(
-            axes, left, y + 0.05, f"{alpha + beta:.1f} e", ha="left", va="bottom", fontsize=SMALL_POINTS - 1,
-            color=look.ink, zorder=6, gid="electrons",
-        )  # fmt: skip
-        return
-    for count, shift, up, colour in ((round(alpha), -0.065, 1, look.alpha), (round(beta), 0.065, -1, look.beta)):
-        for n in range(count):
-            x = left + n * (_DASH_CM + _GAP_CM) + _DASH_CM / 2 + shift
-            tip = y + up * _ARROW_CM
-            axes.plot(
-                [x, x, x - up * 0.05], [y - up * _ARROW_CM, tip, tip - up * 0.09], color=colour, lw=0.7, zorder=5,
-                solid_joinstyle="miter",
-            )  # fmt: skip
-
-
 def _draw_parts(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> None:
     metal_x, _, _, ligand_x, _ = layout.columns
     for levels, x, side, colour in (
@@ -288,13 +260,13 @@ def _draw_parts(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
         for rows in grouped:
             _draw_part_level(axes, [inside[k] for k in rows], heights[rows[0]], x, colour)
         wanted = [heights[rows[0]] for rows in grouped]
-        sizes = [_LABEL_CM * len(rows) for rows in grouped]
+        sizes = [LABEL_CM * len(rows) for rows in grouped]
         tops = spread_out(wanted, sizes, _BOTTOM_CM, layout.height - _TOP_CM) + np.array(sizes) / 2
         widest = max((_part_width(level) for level in inside), default=0.0) / 2
         for rows, top, y in zip(grouped, tops, wanted, strict=True):
             for n, k in enumerate(reversed(rows)):
-                height = top - (n + 0.5) * _LABEL_CM
-                if abs(height - y) > _LABEL_CM / 2:
+                height = top - (n + 0.5) * LABEL_CM
+                if abs(height - y) > LABEL_CM / 2:
                     start, end = x + side * _part_width(inside[k]) / 2, x + side * (widest + 0.08)
                     axes.plot([start, end], [y, height], color=look.grid, lw=0.5, zorder=0)
                 write(
@@ -308,7 +280,7 @@ def _draw_parts(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
 def _draw_metal_irreps(axes: Axes, levels: Sequence[PartLevel], heights: Sequence[float], x: float) -> None:
     """Irreps of each shell under its level, where the next level leaves room."""
     for k, (level, y) in enumerate(zip(levels, heights, strict=True)):
-        if level.irreps and (k == 0 or y - heights[k - 1] > 2 * _LABEL_CM):
+        if level.irreps and (k == 0 or y - heights[k - 1] > 2 * LABEL_CM):
             text = joined(*(irrep(name) for name in dict.fromkeys(level.irreps)))
             write(axes, x, y - 0.15, text, ha="center", va="top", fontsize=SMALL_POINTS, gid="label irreps", zorder=3)
 

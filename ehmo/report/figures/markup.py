@@ -8,7 +8,8 @@ from __future__ import annotations
 import re
 from typing import TYPE_CHECKING, Any, Final
 
-from ehmo.report.figures.canvas import plain
+from ehmo.report.figures.canvas import POINTS_PER_CM, plain
+from ehmo.report.look import FIGURE_FONT
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -27,6 +28,8 @@ PART_LETTERS: Final = {"sigma": "σ", "pi": "π", "delta": "δ", "phi": "φ"}
 _PRIMES = ("", "′", "″")
 _IRREP = re.compile(r"(\d*)([abetABETσπδφγΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
 _TERM = re.compile(r"(\d+)([A-Z]|[ΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
+_FUNCTION = re.compile(r"[pdf]([xyz0-9()+\-]+)")
+_POWER = re.compile(r"(?<=[xyz)])([2-9])")
 _FORMULA_PIECE = re.compile(r"([A-Z][a-z]?|[()])(\d*)")
 
 
@@ -46,6 +49,15 @@ def term(label: str) -> str:
         return label
     multiplicity, letter, below, primes, sign = found.groups()
     return _with_indices("", multiplicity, letter, below, primes, sign)
+
+
+def function(label: str) -> str:
+    """Angular part of a function such as ``dx2-y2`` with its powers; other text as it is."""
+    found = _FUNCTION.fullmatch(label)
+    if not found:
+        return label
+    powers = _POWER.sub(r"^{\1}", found[1])
+    return Formula(f"${powers}$")
 
 
 def _with_indices(before: str, raised: str, letter: str, below: str, primes: str, sign: str) -> Formula:
@@ -83,6 +95,17 @@ def joined(*parts: str) -> str:
     if not any(isinstance(word, Formula) for word in kept):
         return " ".join(kept)
     return Formula(" ".join(word if isinstance(word, Formula) else plain(word).replace("$", "") for word in kept))
+
+
+def width_cm(text: str, points: float) -> float:
+    """Width of a text as `write` draws it [cm]."""
+    from matplotlib.font_manager import FontProperties
+    from matplotlib.textpath import text_to_path
+
+    ours = isinstance(text, Formula)
+    font = FontProperties(family=FIGURE_FONT, size=points)
+    width, _, _ = text_to_path.get_text_width_height_descent(str(text) if ours else plain(text), font, ismath=ours)
+    return float(width) / POINTS_PER_CM
 
 
 def write(axes: Axes, x: float, y: float, text: str, **style: Any) -> Text:
