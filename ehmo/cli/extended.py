@@ -101,10 +101,22 @@ def crystal_options(chosen: argparse.Namespace) -> CrystalOptions:
     """
     from ehmo.calculate.crystal import CrystalOptions
 
-    mesh = None
-    if chosen.mesh is not None:
-        words = [word.strip() for word in chosen.mesh.split(",")]
-        if len(words) != 3 or not all(word.isascii() and word.isdigit() and 0 < int(word) < 1000 for word in words):
-            raise InputError(f"--mesh {chosen.mesh!r} is no mesh", mend="give three positive numbers such as 4,4,4")
-        mesh = (int(words[0]), int(words[1]), int(words[2]))
-    return CrystalOptions(mesh=mesh, path=chosen.path or None, cations_basis=chosen.cations == "basis")
+    return CrystalOptions(
+        mesh=mesh_counts(chosen.mesh), path=chosen.path or None, cations_basis=chosen.cations == "basis"
+    )
+
+
+def mesh_counts(text: str | None) -> tuple[int, int, int] | None:
+    """Counts of a mesh of words such as ``4,4,4``.
+
+    Raises
+    ------
+    InputError
+        If they are not three positive whole numbers.
+    """
+    if text is None:
+        return None
+    words = [word.strip() for word in text.split(",")]
+    if len(words) != 3 or not all(word.isascii() and word.isdigit() and 0 < int(word) < 1000 for word in words):
+        raise InputError(f"--mesh {text!r} is no mesh", mend="give three positive numbers such as 4,4,4")
+    return int(words[0]), int(words[1]), int(words[2])

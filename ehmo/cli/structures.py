@@ -18,6 +18,11 @@ def add_structure_options(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("structures of the file")
     group.add_argument("--list", action="store_true", help="print what the file holds, and calculate nothing")
     group.add_argument("--pick", metavar="N[,M]", help="take only these entries of the list (default: all molecules)")
+    add_reading_options(group)
+
+
+def add_reading_options(group: argparse._ArgumentGroup) -> None:
+    """Options on atoms that a file lacks or that a calculation may leave out."""
     group.add_argument(
         "--hydrogens",
         choices=("file", "place", "lengthen"),

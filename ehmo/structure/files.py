@@ -67,10 +67,17 @@ def read_text(path: Path, max_bytes: int = MAX_BYTES) -> str:
     except (OSError, ValueError) as error:
         reason = error.strerror if isinstance(error, OSError) else str(error)
         raise InputError(f"cannot be read ({shown(reason)})", place=place, mend="check the path") from None
-    return _decoded(raw, place)
+    return decoded(raw, place)
 
 
-def _decoded(raw: bytes, place: str) -> str:
+def decoded(raw: bytes, place: str) -> str:
+    """Text of the bytes of an input file, or of a piece of one, without byte-order mark.
+
+    Raises
+    ------
+    InputError
+        If they are empty or binary.
+    """
     if not raw.strip():
         raise InputError("the file is empty", place=place, mend="give a file with atoms")
     if b"\0" in raw:

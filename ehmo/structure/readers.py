@@ -140,17 +140,54 @@ def read_frames(
     path = Path(path)
     place = shown(path, 200)
     if is_ase_database(path):
-        found = _database_fragments(path, place, max_atoms, max_bytes)
-    else:
-        text = read_text(path, max_bytes)
-        kind = _kind(path, text)
-        if kind == "cif":
-            return _cif_fragments(text, place, max_atoms, hydrogens, cations)
-        if kind == "xyz":
-            frames = split_frames(text, place, max_atoms)
-            found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
-        else:
-            found = _ase_fragments(path, place, max_atoms)
+        return _with_hydrogens(_database_fragments(path, place, max_atoms, max_bytes), hydrogens)
+    text = read_text(path, max_bytes)
+    kind = _kind(path, text)
+    if kind == "cif":
+        return _cif_fragments(text, place, max_atoms, hydrogens, cations)
+    if kind == "xyz":
+        return frames_of_text(text, place, hydrogens=hydrogens, max_atoms=max_atoms)
+    return _with_hydrogens(_ase_fragments(path, place, max_atoms), hydrogens)
+
+
+def frames_of_text(
+    text: str,
+    place: str,
+    *,
+    hydrogens: Hydrogens = "file",
+    max_atoms: int = MAX_ATOMS,
+    first_line: int = 1,
+    first_number: int = 1,
+) -> tuple[Fragment, ...]:
+    """Fragments of the text of an XYZ file, or of some frames of one.
+
+    Parameters
+    ----------
+    text : str
+    place : str
+        File, as messages name it.
+    hydrogens, max_atoms
+        As for `read_frames`.
+    first_line, first_number : int
+        Line and frame of the file that the text starts with.
+
+    Returns
+    -------
+    fragments : tuple of Fragment
+
+    Raises
+    ------
+    InputError
+        If a frame cannot be read.
+    LimitError
+        If a frame is over the limit.
+    """
+    frames = split_frames(text, place, max_atoms, first_line=first_line, first_number=first_number)
+    found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
+    return _with_hydrogens(found, hydrogens)
+
+
+def _with_hydrogens(found: tuple[Fragment, ...], hydrogens: Hydrogens) -> tuple[Fragment, ...]:
     if hydrogens == "file":
         return found
     from ehmo.structure.cell_hydrogens import with_hydrogens, with_longer_bonds

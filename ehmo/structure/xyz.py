@@ -50,8 +50,10 @@ class XyzFrame:
         return without_keys(self.comment, _SAID_ELSEWHERE)
 
 
-def split_frames(text: str, place: str, max_atoms: int) -> Iterator[XyzFrame]:
-    """Frames of a text, one after another.
+def split_frames(
+    text: str, place: str, max_atoms: int, *, first_line: int = 1, first_number: int = 1
+) -> Iterator[XyzFrame]:
+    """Frames of a text, one after another; the text may be a piece of a file that starts at a later line and frame.
 
     Raises
     ------
@@ -64,27 +66,27 @@ def split_frames(text: str, place: str, max_atoms: int) -> Iterator[XyzFrame]:
     lines = re.split(r"\r\n|\n|\r", text)
     while lines and not lines[-1].strip():
         lines.pop()
-    start, number = 0, 1
+    start, number = 0, first_number
     while start < len(lines):
-        if number > 1 and not lines[start].strip():
+        if number > first_number and not lines[start].strip():
             start += 1
             continue
-        count = _count(lines[start], f"{place}, line {start + 1}", max_atoms)
+        count = _count(lines[start], f"{place}, line {start + first_line}", max_atoms)
         rows = lines[start + 2 : start + 2 + count]
         for offset, row in enumerate(rows):
             if not row.strip():
                 raise InputError(
                     f"blank line inside frame {number}",
-                    place=f"{place}, line {start + 3 + offset}",
+                    place=f"{place}, line {start + first_line + 2 + offset}",
                     mend=f"the count line promises {count} atoms",
                 )
         if len(rows) < count:
             raise InputError(
                 f"frame {number} stops after {len(rows)} of {count} atoms",
-                place=f"{place}, line {len(lines)}",
+                place=f"{place}, line {len(lines) + first_line - 1}",
                 mend="complete the file or correct the count",
             )
-        yield XyzFrame(number, start + 1, lines[start + 1], tuple(rows))
+        yield XyzFrame(number, start + first_line, lines[start + 1], tuple(rows))
         start += 2 + count
         number += 1
 

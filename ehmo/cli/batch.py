@@ -1,0 +1,124 @@
+"""``ehmo batch``: many structures into a store."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from typing import TYPE_CHECKING, Any
+
+from ehmo.cli import bond
+from ehmo.cli.structures import add_reading_options
+from ehmo.errors import InputError
+
+if TYPE_CHECKING:
+    from ehmo.batch import BatchResult, BatchSettings
+
+
+def add_command(commands: Any) -> None:
+    """Add the command to the program's parser."""
+    parser = commands.add_parser(
+        "batch",
+        help="many structures into a store; a rerun goes on where the last one stopped",
+        description="Bond reports of many structures, kept in a store. Structures that it has are passed over.",
+    )
+    parser.add_argument(
+        "sources",
+        metavar="SOURCE",
+        nargs="+",
+        help="XYZ or CIF file, folder, pattern such as 'set/**/*.cif', or manifest (.csv: path,charge,unpaired,tags)",
+    )
+    parser.add_argument(
+        "--store", required=True, metavar="PATH|URL", help="SQLite file, or postgresql://USER@HOST/DATABASE"
+    )
+    parser.add_argument("--retry", choices=("failed",), help="calculate those again that failed")
+    parser.add_argument("--shard", metavar="I/N", help="only the I-th of N parts, for job arrays with one store each")
+    parser.add_argument(
+        "--allow-outside", action="store_true", help="follow links and manifest paths that lead out of the folder"
+    )
+    parser.add_argument("--quiet", action="store_true", help="no progress on the error stream")
+    add_reading_options(parser.add_argument_group("structures"))
+    parser.add_argument("--mesh", metavar="A,B,C", help="k-points for extended structures (default: by the cell)")
+    bond.add_calculation_options(parser)
+    bond.add_spread_option(parser)
+    parser.set_defaults(handler=run)
+
+
+def run(chosen: argparse.Namespace) -> str:
+    """Closing words; progress goes to the error stream."""
+    from ehmo.batch import InProcess, run_batch, work_items
+    from ehmo.batch.progress import Progress
+    from ehmo.batch.sources import source_files
+    from ehmo.store import open_store
+
+    settings, shard = _settings(chosen), _shard(chosen.shard)
+    total = sum(file.size for file in source_files(chosen.sources, allow_outside=chosen.allow_outside))
+    items = work_items(
+        chosen.sources,
+        allow_outside=chosen.allow_outside,
+        shard=shard,
+        max_atoms=chosen.max_atoms,
+        max_bytes=chosen.max_bytes,
+    )
+    progress = Progress(sys.stderr, total // shard[1])
+    with open_store(chosen.store, create=True) as store:
+        try:
+            result = run_batch(
+                items,
+                store,
+                InProcess(),
+                settings,
+                retry_failed=chosen.retry == "failed",
+                on_progress=(lambda _: None) if chosen.quiet else progress.show,
+            )
+        finally:
+            progress.close()
+        return _closing_words(result, store.name)
+
+
+def _settings(chosen: argparse.Namespace) -> BatchSettings:
+    from ehmo.batch.items import BatchSettings, with_parameters
+    from ehmo.cli.extended import mesh_counts
+
+    return with_parameters(
+        BatchSettings(
+            options=bond.calculation_options(chosen),
+            hydrogens=chosen.hydrogens,
+            cations=chosen.cations,
+            mesh=mesh_counts(chosen.mesh),
+            draws=chosen.spread or 0,
+            max_atoms=chosen.max_atoms,
+            max_bytes=chosen.max_bytes,
+        ),
+        chosen.params,
+    )
+
+
+def _shard(text: str | None) -> tuple[int, int]:
+    if text is None:
+        return 1, 1
+    number, _, count = text.partition("/")
+    plain = all(word.isascii() and word.isdigit() and len(word) < 7 for word in (number, count))
+    if not plain or not 1 <= int(number) <= int(count):
+        raise InputError(f"--shard {text!r} is no part", mend="give for example 3/16")
+    return int(number), int(count)
+
+
+def _closing_words(result: BatchResult, store: str) -> str:
+    from ehmo.batch.progress import duration_words
+
+    rows = result.done + result.failed
+    lines = [
+        f"{rows + result.skipped:,} structures: {result.done:,} calculated, {result.failed:,} failed, "
+        f"{result.skipped:,} were in the store.",
+        f"Store: {store}",
+    ]
+    if rows:
+        rate = rows / max(result.elapsed_s, 1e-9)
+        workers = "" if result.workers == 1 else f", {rate / max(result.workers, 1):.2f} for each worker"
+        lines.append(f"{duration_words(result.elapsed_s)}, {rate:.2f} structures per second{workers}.")
+    if result.failed:
+        lines.append("Failures by reason (each row says more; --retry failed tries them again):")
+        lines += [f"  {count:6,}  {reason}" for reason, count in result.reasons.most_common(10)]
+        if len(result.reasons) > 10:
+            lines.append(f"  and {len(result.reasons) - 10:,} more reasons")
+    return "\n".join(lines) + "\n"
