@@ -14,7 +14,7 @@ from ehmo.errors import InputError
 from ehmo.orbitals.parameters import load_parameters
 from ehmo.records.options import Options
 
-Kind = Literal["xyz", "cif", "file", "fault"]
+Kind = Literal["xyz", "cif", "file", "row", "fault"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,12 +27,13 @@ class WorkItem:
         File as it was given.
     entry : str
         Frame or block within it; empty if there is one.
-    kind : "xyz", "cif", "file" or "fault"
-        Text of frames, text of a data block, a file to read where the work is done, or a source that cannot be used.
+    kind : "xyz", "cif", "file", "row" or "fault"
+        Text of frames, text of a data block, a file or a row of an ASE database to read where the work is done, or a
+        source that cannot be used.
     text : str
-        Bytes of the piece, one character each, or why the source cannot be used.
+        Bytes of the piece, one character each; size and time of a file to read; or why the source cannot be used.
     first_line, number : int
-        Line and frame of the file that the text starts with.
+        Line and frame of the file that the text starts with; row of a database.
     charge, unpaired_electrons : int or None
         As a manifest states them.
     tags : tuple of str

@@ -82,7 +82,7 @@ def unread_key(item: WorkItem, settings: BatchSettings) -> str:
     return _hashed(
         {
             "unread": item.kind,
-            "source": item.place if item.kind in ("file", "fault") else None,
+            "source": item.place if item.kind not in ("xyz", "cif") else None,
             "text": hashlib.sha256(item.text.encode("latin-1", "replace")).hexdigest(),
             "charge": item.charge,
             "unpaired": item.unpaired_electrons,

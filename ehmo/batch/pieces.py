@@ -5,7 +5,6 @@ Only lines are looked at here; what they mean is found out where the work is don
 
 from __future__ import annotations
 
-import os
 import re
 from collections.abc import Callable, Iterator
 from functools import partial
@@ -14,6 +13,8 @@ from typing import Any, Final, TextIO
 
 from ehmo.batch.items import WorkItem
 from ehmo.batch.tree import SourceFile
+from ehmo.errors import EhmoError
+from ehmo.structure import ase_database_numbers, is_ase_database
 from ehmo.structure.files import shown
 from ehmo.structure.readers import CIF_SUFFIXES, XYZ_SUFFIXES
 
@@ -61,8 +62,7 @@ def pieces(file: SourceFile, *, max_atoms: int, max_bytes: int) -> Iterator[Work
         elif suffix in CIF_SUFFIXES:
             yield from _cut(file.path, partial(_blocks, shared), shared, max_bytes)
         else:
-            status = os.stat(file.path)  # noqa: PTH116  null characters must raise here
-            yield WorkItem(**shared, text=f"{status.st_size} {status.st_mtime_ns}", size=status.st_size)
+            yield from _whole(file.path, shared)
     except FileNotFoundError:
         yield WorkItem(**shared, kind="fault", text="no such file\ncheck the path")
     except IsADirectoryError:
@@ -70,6 +70,20 @@ def pieces(file: SourceFile, *, max_atoms: int, max_bytes: int) -> Iterator[Work
     except (OSError, ValueError) as fault:
         reason = fault.strerror if isinstance(fault, OSError) else str(fault)
         yield WorkItem(**shared, kind="fault", text=f"cannot be read ({shown(reason)})\ncheck the path")
+
+
+def _whole(path: str, shared: dict[str, Any]) -> Iterator[WorkItem]:
+    """A file to read where the work is done, or the rows of an ASE database."""
+    status = Path(path).stat()
+    stamp = f"{status.st_size} {status.st_mtime_ns}"
+    if not is_ase_database(Path(path)):
+        yield WorkItem(**shared, text=stamp, size=status.st_size)
+        return
+    try:
+        for number in ase_database_numbers(Path(path)):
+            yield WorkItem(**shared, entry=f"row {number}", kind="row", text=stamp, number=number)
+    except EhmoError as fault:
+        yield WorkItem(**shared, kind="fault", text=f"{fault.fault}\n{fault.mend}", size=status.st_size)
 
 
 def _cut(

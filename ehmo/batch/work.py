@@ -8,7 +8,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from datetime import UTC, datetime
 from pathlib import Path
-from typing import Any, cast
+from typing import Any, NamedTuple, cast
 
 from basis_params import ParameterTable
 from ehmo import __version__
@@ -26,6 +26,14 @@ from ehmo.structure.contents import Cations, Hydrogens
 from ehmo.structure.files import decoded, shown
 
 Structure = Fragment | CrystalContents
+
+
+class Contents(NamedTuple):
+    """What an item holds: structures, and words that their source puts on them."""
+
+    structures: Sequence[Structure]
+    tags: tuple[str, ...] = ()
+
 
 LONGEST_MESSAGE = 2000
 
@@ -91,11 +99,12 @@ class Workplace:
             return
         clock = _Clock()
         try:
-            structures = read_structures(item, self._settings)
+            structures, tags = read_structures(item, self._settings)
         except Exception as fault:  # noqa: BLE001  one bad file must not end the run: its row says what is wrong
             yield self._failure(unread, item, item.entry, fault, clock, _Clock())
             return
         read = clock.stopped()
+        item = replace(item, tags=(*item.tags, *tags))
         for structure in structures:
             yield from self._structure(structure, item, read)
             read = clock.at_rest()
@@ -195,7 +204,7 @@ class _Clock:
         return _Clock(0.0)
 
 
-def read_structures(item: WorkItem, settings: BatchSettings) -> Sequence[Structure]:
+def read_structures(item: WorkItem, settings: BatchSettings) -> Contents:
     """Structures of an item: molecules, or a crystal whose metals are in chains, layers or frameworks.
 
     Raises
@@ -207,19 +216,26 @@ def read_structures(item: WorkItem, settings: BatchSettings) -> Sequence[Structu
     if item.kind == "fault":
         words, _, mend = item.text.partition("\n")
         raise InputError(words, place=place, mend=mend)
+    if item.kind == "row":
+        return _database_row(item, settings)
     if item.kind == "xyz":
-        return _frames(item, settings)
+        return Contents(_frames(item, settings))
     crystals = _crystals(item, settings, place)
     if crystals is None:
         from ehmo.structure import read_frames
 
-        return read_frames(
-            item.source,
-            hydrogens=cast(Hydrogens, settings.hydrogens),
-            max_atoms=settings.max_atoms,
-            max_bytes=settings.max_bytes,
+        hydrogens = cast(Hydrogens, settings.hydrogens)
+        return Contents(
+            read_frames(item.source, hydrogens=hydrogens, max_atoms=settings.max_atoms, max_bytes=settings.max_bytes)
         )
     molecules = [fragment for contents in crystals for fragment in _molecules(contents)]
+    _refuse_one_charge_for_several(molecules, item, settings, place)
+    return Contents(molecules or crystals)
+
+
+def _refuse_one_charge_for_several(
+    molecules: Sequence[Fragment], item: WorkItem, settings: BatchSettings, place: str
+) -> None:
     options = item_options(item, settings.options)
     given = (options.charge, options.unpaired_electrons, options.oxidation_state)
     if len(molecules) > 1 and any(value is not None for value in given):
@@ -228,7 +244,20 @@ def read_structures(item: WorkItem, settings: BatchSettings) -> Sequence[Structu
             place=place,
             mend="leave it out, or give the molecules as XYZ",
         )
-    return molecules or crystals
+
+
+def _database_row(item: WorkItem, settings: BatchSettings) -> Contents:
+    from ehmo.structure import ase_database_row
+    from ehmo.structure.readers import completed
+
+    row = ase_database_row(Path(item.source), item.number, max_atoms=settings.max_atoms)
+    place = shown(item.place, 200)
+    if row.fault:
+        raise InputError(row.fault.removeprefix(f"{place}: "), place=place)
+    _refuse_one_charge_for_several(row.fragments, item, settings, place)
+    if row.fragments:
+        return Contents(completed(row.fragments, cast(Hydrogens, settings.hydrogens)), row.tags)
+    return Contents(() if row.contents is None else (row.contents,), row.tags)
 
 
 def _frames(item: WorkItem, settings: BatchSettings) -> Sequence[Fragment]:

@@ -13,13 +13,15 @@ from ehmo.structure.perceive import perceive
 from ehmo.structure.readers import from_ase, is_crystal, read, read_frames
 
 if TYPE_CHECKING:
-    from ehmo.structure.ase_database import DatabaseRow, ase_database_rows
+    from ehmo.structure.ase_database import DatabaseRow, ase_database_numbers, ase_database_row, ase_database_rows
     from ehmo.structure.crystal import crystal_contents, read_crystals
 
 __all__ = [
     "MAX_ATOMS",
     "MAX_BYTES",
     "DatabaseRow",
+    "ase_database_numbers",
+    "ase_database_row",
     "ase_database_rows",
     "assign_electrons",
     "crystal_contents",
@@ -34,7 +36,7 @@ __all__ = [
 
 
 def __getattr__(name: str) -> Any:
-    if name in ("DatabaseRow", "ase_database_rows"):
+    if name in ("DatabaseRow", "ase_database_numbers", "ase_database_row", "ase_database_rows"):
         from ehmo.structure import ase_database
 
         return getattr(ase_database, name)

@@ -88,14 +88,56 @@ def ase_database_rows(path: Path, *, max_atoms: int = MAX_ATOMS) -> Iterator[Dat
     InputError
         If the file is no ASE database or is damaged.
     """
+    for cells in _selected(path, _row_query(max_atoms)):
+        yield _row(cells, shown(path, 200), max_atoms)
+
+
+def ase_database_numbers(path: Path) -> Iterator[int]:
+    """Ids of the rows of an ASE database in their order; errors as for `ase_database_rows`.
+
+    Yields
+    ------
+    number : int
+    """
+    for cells in _selected(path, "SELECT id FROM systems WHERE id > ? ORDER BY id LIMIT 1000"):
+        yield int(cells[0])
+
+
+def ase_database_row(path: Path, number: int, *, max_atoms: int = MAX_ATOMS) -> DatabaseRow:
+    """One row of an ASE database.
+
+    Parameters
+    ----------
+    path : Path
+    number : int
+        Its id.
+    max_atoms : int
+        Largest number of atoms.
+
+    Returns
+    -------
+    row : DatabaseRow
+
+    Raises
+    ------
+    InputError
+        If the file is no ASE database, is damaged or has no such row.
+    """
+    place = shown(path, 200)
+    cells = next(_selected(path, _row_query(max_atoms), number - 1), None)
+    if cells is None or cells[0] != number:
+        raise InputError(f"no row {number}", place=place, mend="see whether the database was changed")
+    return _row(cells, place, max_atoms)
+
+
+def _selected(path: Path, query: str, last: int = -1) -> Iterator[tuple[Any, ...]]:
+    """Rows with an id above `last`, a page at a time."""
     place = shown(path, 200)
     try:
         with closing(_connection(path)) as connection:
             _check(connection, place)
-            last = -1
-            while page := _page(connection, last, max_atoms):
-                for cells in page:
-                    yield _row(cells, place, max_atoms)
+            while page := connection.execute(query, (last,)).fetchall():
+                yield from page
                 last = page[-1][0]
     except sqlite3.Error as fault:
         raise InputError(
@@ -117,14 +159,12 @@ def _check(connection: sqlite3.Connection, place: str) -> None:
         raise InputError("a SQLite file without ASE structures", place=place, mend="give one that ase.db wrote")
 
 
-def _page(connection: sqlite3.Connection, last: int, max_atoms: int) -> list[tuple[Any, ...]]:
-    """Rows with an id above `last`; cells over a limit are left in the file, with their length beside them."""
+def _row_query(max_atoms: int) -> str:
+    """Query of rows with an id above a value; cells over a limit stay in the file, with their length beside them."""
     limits = {"numbers": 4 * max_atoms, "positions": 24 * max_atoms, "cell": 72, "pbc": 20}
     limits |= {"initial_charges": 8 * max_atoms, "initial_magmoms": 24 * max_atoms, "key_value_pairs": _LONGEST_PAIRS}
     cells = ", ".join(f"CASE WHEN length({name}) <= {limits[name]} THEN {name} END" for name in _COLUMNS)
-    return connection.execute(
-        f"SELECT id, length(numbers), {cells} FROM systems WHERE id > ? ORDER BY id LIMIT {_PAGE}", (last,)
-    ).fetchall()
+    return f"SELECT id, length(numbers), {cells} FROM systems WHERE id > ? ORDER BY id LIMIT {_PAGE}"
 
 
 def _row(cells: tuple[Any, ...], place: str, max_atoms: int) -> DatabaseRow:

@@ -140,14 +140,14 @@ def read_frames(
     path = Path(path)
     place = shown(path, 200)
     if is_ase_database(path):
-        return _with_hydrogens(_database_fragments(path, place, max_atoms, max_bytes), hydrogens)
+        return completed(_database_fragments(path, place, max_atoms, max_bytes), hydrogens)
     text = read_text(path, max_bytes)
     kind = _kind(path, text)
     if kind == "cif":
         return _cif_fragments(text, place, max_atoms, hydrogens, cations)
     if kind == "xyz":
         return frames_of_text(text, place, hydrogens=hydrogens, max_atoms=max_atoms)
-    return _with_hydrogens(_ase_fragments(path, place, max_atoms), hydrogens)
+    return completed(_ase_fragments(path, place, max_atoms), hydrogens)
 
 
 def frames_of_text(
@@ -184,10 +184,11 @@ def frames_of_text(
     """
     frames = split_frames(text, place, max_atoms, first_line=first_line, first_number=first_number)
     found = tuple(fragment for frame in frames for fragment in _frame_fragments(frame, place))
-    return _with_hydrogens(found, hydrogens)
+    return completed(found, hydrogens)
 
 
-def _with_hydrogens(found: tuple[Fragment, ...], hydrogens: Hydrogens) -> tuple[Fragment, ...]:
+def completed(found: tuple[Fragment, ...], hydrogens: Hydrogens) -> tuple[Fragment, ...]:
+    """Fragments with hydrogens as they are asked for; see `read_frames`."""
     if hydrogens == "file":
         return found
     from ehmo.structure.cell_hydrogens import with_hydrogens, with_longer_bonds

@@ -23,7 +23,7 @@ LIMITS = {"max_atoms": 10_000, "max_bytes": 100_000_000}
 def structures(path, **settings):
     found = []
     for item in pieces(SourceFile(str(path)), **LIMITS):
-        found += read_structures(item, BatchSettings(**settings))
+        found += read_structures(item, BatchSettings(**settings)).structures
     return found
 
 
@@ -98,7 +98,7 @@ def test_frames_after_a_faulty_one_are_read(tmp_path):
     path = put(tmp_path, "mixed.xyz", many_frames(1) + "2\n\nV 0 0 0\nO 0 0 x\n" + many_frames(1))
     items = list(pieces(SourceFile(str(path)), **LIMITS))
     assert [item.entry for item in items] == ["frame 1", "frame 2", "frame 3"]
-    assert len(read_structures(items[2], BatchSettings())) == 1
+    assert len(read_structures(items[2], BatchSettings()).structures) == 1
 
 
 def test_frames_over_the_limit_are_passed_over_and_the_rest_is_read(tmp_path):
@@ -106,7 +106,7 @@ def test_frames_over_the_limit_are_passed_over_and_the_rest_is_read(tmp_path):
     items = list(pieces(SourceFile(str(path)), max_atoms=10, max_bytes=10**6))
     with pytest.raises(LimitError, match="17 atoms"):
         read_structures(items[0], BatchSettings(max_atoms=10))
-    assert len(read_structures(items[1], BatchSettings(max_atoms=10))) == 1
+    assert len(read_structures(items[1], BatchSettings(max_atoms=10)).structures) == 1
     assert sum(len(item.text) for item in items) < path.stat().st_size / 2
 
 
@@ -148,7 +148,7 @@ def test_a_fault_in_a_later_block_names_its_line_of_the_file(tmp_path):
     path = put(tmp_path, "two.cif", text)
     line = next(k for k, row in enumerate(text.split("\n"), 1) if "'open" in row)
     good, bad = pieces(SourceFile(str(path)), **LIMITS)
-    assert len(read_structures(good, BatchSettings())) == 1
+    assert len(read_structures(good, BatchSettings()).structures) == 1
     with pytest.raises(EhmoError, match=rf"\b{line}\b"):
         read_structures(bad, BatchSettings())
 

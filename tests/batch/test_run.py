@@ -16,6 +16,7 @@ from ehmo.errors import StoreError
 from ehmo.report.document import bond_document
 from ehmo.store import open_store
 from tests.batch.files import chromate_cif, many_frames, put, rutile_cif, xyz_text
+from tests.geometries import SPECIES
 
 SETTINGS = with_parameters(BatchSettings(), "standard")
 
@@ -59,7 +60,7 @@ FAILURES = {
     "odd.xyz": (xyz_text("CrO4 2-").replace("charge=-2", "charge=-1"), "Cr(VII)"),
     "overlap.xyz": ("3\ncharge=0 unpaired=0\nV 0 0 0\nO 0 0 1.6\nO 0 0 1.6001\n", "O2"),
     "unknown.xyz": ("2\n\nV 0 0 0\nQq 0 0 1.6\n", "unknown element"),
-    "text.mol": ("nothing", "unknown file format"),
+    "text.mol": ("nothing", "cannot be read"),
 }
 
 
@@ -201,6 +202,24 @@ def test_an_oxide_is_stored_as_a_crystal(ehmo, tmp_path):
     (row,) = rows(tmp_path / "r.sqlite")
     assert row.document["schema"] == row.provenance.document_schema == "ehmo crystal report 1"
     assert row.document["mesh"]["counts"] == [2, 2, 2]
+
+
+def test_rows_of_an_ase_database_are_structures_with_tags(ehmo, tmp_path):
+    from ase import Atoms
+    from ase.db import connect
+
+    with connect(tmp_path / "ase.db") as database:
+        for name in ("OsO4", "CrO4 2-"):
+            species = SPECIES[name]
+            atoms = Atoms(species.symbols, species.positions_A)
+            database.write(atoms, total_charge=species.charge, unpaired=species.unpaired_electrons, colour="yellow")
+        database.write(Atoms("H2O", [[0, 0, 0], [0, 0, 0.96], [0.93, 0, -0.24]]), total_charge=0)
+    assert "2 calculated, 1 failed" in ehmo("batch", "ase.db", "--store", "r.sqlite").out
+    found = rows(tmp_path / "r.sqlite")
+    assert [row.provenance.entry for row in found] == ["row 1", "row 2", "row 3"]
+    assert {row.provenance.tags for row in found} == {("colour=yellow",), ()}
+    assert [row.document["fragment"]["charge"] for row in found[:2]] == [0, -2]
+    assert "3 were in the store" in ehmo("batch", "ase.db", "--store", "r.sqlite").out
 
 
 @pytest.mark.parametrize(
