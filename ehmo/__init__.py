@@ -1,7 +1,7 @@
 """Bonding calculator for metal-oxo compounds.
 
-``ehmo.read`` takes a file to a fragment, ``ehmo.bond_report`` takes a fragment to a bond report; both are loaded
-on first use, so that ``import ehmo`` costs nothing.
+``ehmo.read`` takes a file to a fragment, ``ehmo.bond_report`` takes a fragment to a bond report, ``ehmo.open_store``
+opens the results of many; all are loaded on first use, so that ``import ehmo`` costs nothing.
 """
 
 from __future__ import annotations
@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
+    from ehmo.store import open_store
     from ehmo.structure import from_ase, read, read_frames
     from ehmo.studies.ase_calculator import Calculator
     from ehmo.studies.spread import spread_report
@@ -29,6 +30,7 @@ _HOMES = {
     "Options": "ehmo.records.options",
     "bond_report": "ehmo.calculate",
     "from_ase": "ehmo.structure",
+    "open_store": "ehmo.store",
     "read": "ehmo.structure",
     "read_frames": "ehmo.structure",
     "spread_report": "ehmo.studies.spread",
@@ -43,6 +45,7 @@ __all__ = [
     "__version__",
     "bond_report",
     "from_ase",
+    "open_store",
     "read",
     "read_frames",
     "spread_report",

@@ -1,6 +1,7 @@
 """The store: results of many calculations, keyed by their input, in SQLite or PostgreSQL."""
 
 from ehmo.store.location import masked
+from ehmo.store.merging import merge
 from ehmo.store.opening import open_store
 from ehmo.store.packing import PackedRow, pack
 from ehmo.store.records import DONE, FAILED, Provenance, StoredRow
@@ -17,6 +18,7 @@ __all__ = [
     "StoredRow",
     "condition",
     "masked",
+    "merge",
     "open_store",
     "pack",
 ]

@@ -71,19 +71,25 @@ def _count(name: str) -> Callable[[Document], int]:
     return lambda document: len(document.get(name) or ())
 
 
-def _listed_atoms(document: Document) -> Sequence[Document]:
+def listed_atoms(document: Document) -> Sequence[Document]:
     """Atoms with their symbols: those of the fragment, or of the crystal."""
     atoms: Sequence[Document] = _at("fragment", "atoms")(document) or document.get("atoms") or ()
     return atoms
 
 
+def cell_vectors(document: Document) -> Sequence[Sequence[float]] | None:
+    """Cell of a crystal, one vector per row [angstrom]; None for a molecule."""
+    cell: Sequence[Sequence[float]] | None = _at("crystal", "cell_A")(document)
+    return cell
+
+
 def _symbol(end: str) -> Callable[[Document, Document], Any]:
-    return lambda document, bond: _listed_atoms(document)[bond[end]].get("symbol")
+    return lambda document, bond: listed_atoms(document)[bond[end]].get("symbol")
 
 
 def _metals(document: Document) -> str:
     """Symbols of the metals that have bonds, each atom once."""
-    atoms = _listed_atoms(document)
+    atoms = listed_atoms(document)
     places = sorted({bond["metal"] for bond in document.get("bonds") or ()})
     return " ".join(str(atoms[place].get("symbol")) for place in places)
 
@@ -153,7 +159,7 @@ PROVENANCE_COLUMNS = (
 STRUCTURE_COLUMNS = (
     Column("formula", "text", "", "formula", lambda d: _at("fragment", "formula")(d) or _at("crystal", "formula")(d)),
     Column("metals", "text", "", "symbols of the metals", _metals),
-    Column("atoms", "integer", "", "number of atoms", lambda d: len(_listed_atoms(d))),
+    Column("atoms", "integer", "", "number of atoms", lambda d: len(listed_atoms(d))),
     Column("charge", "integer", "e", "total charge", _at("fragment", "charge")),
     Column("unpaired_electrons", "integer", "", "unpaired electrons", _at("fragment", "unpaired_electrons")),
     Column("oxidation_state", "integer", "", "of a single metal, by counting", _at("oxidation_state")),

@@ -127,21 +127,38 @@ def _connection(path: Path, wait_s: float) -> sqlite3.Connection:
     return connection
 
 
+_UNWRITABLE = ("SQLITE_CANTOPEN", "SQLITE_READONLY")
+
+
 def _read_only_connection(path: Path, wait_s: float) -> sqlite3.Connection:
-    """Connection that never writes; where no write-ahead index can be made, it takes it that nobody writes."""
-    address = f"file:{quote(str(path.absolute()))}?mode=ro"
+    """Connection that takes no writing statement.
+
+    A connection that could write takes its files away at the end. Where the folder cannot be written to, one that
+    cannot is used, and where it can make no write-ahead index either, it takes it that nobody writes.
+    """
+    address = f"file:{quote(str(path.absolute()))}"
     waiting = path.with_name(path.name + "-wal")
     try:
-        return _tried(address, wait_s)
-    except sqlite3.OperationalError:
-        if waiting.exists() and waiting.stat().st_size:
+        return _tried(f"{address}?mode=rw", wait_s)
+    except sqlite3.OperationalError as fault:
+        if not _unwritable(fault):
             raise
-        return _tried(address + "&immutable=1", wait_s)
+    try:
+        return _tried(f"{address}?mode=ro", wait_s)
+    except sqlite3.OperationalError as fault:
+        if not _unwritable(fault) or (waiting.exists() and waiting.stat().st_size):
+            raise
+        return _tried(f"{address}?mode=ro&immutable=1", wait_s)
+
+
+def _unwritable(fault: sqlite3.OperationalError) -> bool:
+    return (getattr(fault, "sqlite_errorname", None) or "").startswith(_UNWRITABLE)
 
 
 def _tried(address: str, wait_s: float) -> sqlite3.Connection:
     connection = sqlite3.connect(address, uri=True, timeout=wait_s, isolation_level=None)
     try:
+        connection.execute("PRAGMA query_only = ON")
         connection.execute("SELECT count(*) FROM sqlite_master")
     except BaseException:
         connection.close()

@@ -16,12 +16,11 @@ from ehmo.store.reading import all_names, full_rows, packed_rows, select, table_
 from ehmo.store.records import StoredRow
 from ehmo.store.schema import SCHEMA_VERSION
 from ehmo.store.versions import prepare
-from ehmo.store.writing import KEYS_AT_ONCE, groups, known_rows, write_rows
+from ehmo.store.where import Condition, condition
+from ehmo.store.writing import KEYS_AT_ONCE, Written, groups, known_rows, write_rows
 
 if TYPE_CHECKING:
     from types import TracebackType
-
-    from ehmo.store.where import Condition
 
 
 class Store:
@@ -54,7 +53,7 @@ class Store:
         """Let go of the file or the connection."""
         self._database.close()
 
-    def write(self, rows: Sequence[StoredRow | PackedRow]) -> None:
+    def write(self, rows: Sequence[StoredRow | PackedRow]) -> Written:
         """Keep rows, all or none of them, in one transaction.
 
         A done row replaces a failed one of the same key and is never replaced itself; of two failed rows the one that
@@ -65,6 +64,11 @@ class Store:
         rows : sequence of StoredRow or PackedRow
             Those packed by `pack` where they were made spare the writer the work.
 
+        Returns
+        -------
+        written : Written
+            Number of keys added, of rows replaced and of rows that stayed as they were.
+
         Raises
         ------
         StoreError
@@ -74,8 +78,7 @@ class Store:
         if self._read_only:
             raise StoreError("the store is open for reading only", place=self.name, mend="open it for writing")
         packed = [pack(row) if isinstance(row, StoredRow) else row for row in rows]
-        if packed:
-            self._database.run(partial(_write, packed), write=True)
+        return self._database.run(partial(_write, packed), write=True) if packed else Written(0, 0, 0)
 
     def statuses(self, keys: Iterable[str]) -> dict[str, str]:
         """Status of each key that the store has.
@@ -100,12 +103,12 @@ class Store:
         query = "SELECT status, count(*) FROM structures GROUP BY status ORDER BY status"
         return {str(status): int(count) for status, count in select(self._database, query)}
 
-    def rows(self, where: Condition | None = None, *, status: str | None = None) -> Iterator[StoredRow]:
+    def rows(self, where: Condition | str | None = None, *, status: str | None = None) -> Iterator[StoredRow]:
         """Full rows in the order in which they came.
 
         Parameters
         ----------
-        where : Condition, optional
+        where : Condition or str, optional
             Only structures that meet it; those with at least one bond that meets it, if it speaks of bonds.
         status : str, optional
             Only "done" or only "failed" ones.
@@ -116,17 +119,17 @@ class Store:
         """
         if where is not None:
             self._must_be_current()
-        return full_rows(self._database, where, status)
+        return full_rows(self._database, _condition(where), status)
 
     def cells(
-        self, table: str, where: Condition | None = None, names: Sequence[str] = ()
+        self, table: str, where: Condition | str | None = None, names: Sequence[str] = ()
     ) -> Iterator[tuple[Cell, ...]]:
         """Rows of a table as plain values.
 
         Parameters
         ----------
         table : "structures" or "bonds"
-        where : Condition, optional
+        where : Condition or str, optional
             Only bonds, or structures, that meet it.
         names : sequence of str, optional
             Columns, all of the table by default.
@@ -136,16 +139,16 @@ class Store:
         rows : iterator of tuple
         """
         self._must_be_current()
-        return table_cells(self._database, table, where, names or all_names(table))
+        return table_cells(self._database, table, _condition(where), names or all_names(table))
 
-    def table(self, name: str, where: Condition | None = None) -> dict[str, np.ndarray[Any, Any]]:
+    def table(self, name: str, where: Condition | str | None = None) -> dict[str, np.ndarray[Any, Any]]:
         """Columns of a table, as `pandas.DataFrame` takes them.
 
         Parameters
         ----------
         name : "structures" or "bonds"
             One row per structure, or per bond.
-        where : Condition, optional
+        where : Condition or str, optional
             Only rows that meet it.
 
         Returns
@@ -178,8 +181,12 @@ class Store:
             )
 
 
-def _write(rows: Sequence[PackedRow], session: Session) -> None:
-    write_rows(session, rows)
+def _condition(where: Condition | str | None) -> Condition | None:
+    return condition(where) if isinstance(where, str) else where
+
+
+def _write(rows: Sequence[PackedRow], session: Session) -> Written:
+    return write_rows(session, rows)
 
 
 def _known(keys: Sequence[str], session: Session) -> dict[str, Any]:

@@ -25,6 +25,19 @@ class Known(NamedTuple):
     started_utc: str
 
 
+class Written(NamedTuple):
+    """What became of the rows of one call: number of new keys, of replaced rows, and of rows that stayed."""
+
+    added: int
+    replaced: int
+    kept: int
+
+    def __add__(self, other: object) -> Written:
+        if not isinstance(other, Written):
+            return NotImplemented
+        return Written(self.added + other.added, self.replaced + other.replaced, self.kept + other.kept)
+
+
 def groups(items: Iterable[Item], size: int) -> Iterator[list[Item]]:
     """Items in lists of that size, the last one shorter.
 
@@ -45,10 +58,11 @@ def known_rows(session: Session, keys: Sequence[str]) -> dict[str, Known]:
     return {str(key): Known(int(id_), str(status), str(start)) for key, id_, status, start in found}
 
 
-def write_rows(session: Session, rows: Sequence[PackedRow]) -> None:
+def write_rows(session: Session, rows: Sequence[PackedRow]) -> Written:
     """Write those rows that are new or better than what is there; a replaced row keeps its place."""
     known: dict[str, Known] = {}
-    for some in groups(dict.fromkeys(row.key for row in rows), KEYS_AT_ONCE):
+    keys = dict.fromkeys(row.key for row in rows)
+    for some in groups(keys, KEYS_AT_ONCE):
         known |= known_rows(session, some)
     taken = _better(rows, known)
     stale = [{"id": known[key].id} for key in taken if key in known]
@@ -57,6 +71,7 @@ def write_rows(session: Session, rows: Sequence[PackedRow]) -> None:
     (last,) = session.select("SELECT coalesce(max(id), 0) FROM structures")[0]
     fresh = iter(range(int(last) + 1, int(last) + 1 + len(taken)))
     _insert(session, {known[key].id if key in known else next(fresh): row for key, row in taken.items()})
+    return Written(len(taken) - len(stale), len(stale), len(keys) - len(taken))
 
 
 def _better(rows: Sequence[PackedRow], known: dict[str, Known]) -> dict[str, PackedRow]:
@@ -65,7 +80,7 @@ def _better(rows: Sequence[PackedRow], known: dict[str, Known]) -> dict[str, Pac
     taken: dict[str, PackedRow] = {}
     for row in rows:
         before = best.get(row.key)
-        if before is None or (before[0] != DONE and (row.status == DONE or row.started_utc >= before[1])):
+        if before is None or (before[0] != DONE and (row.status == DONE or row.started_utc > before[1])):
             taken[row.key] = row
             best[row.key] = (row.status, row.started_utc)
     return taken

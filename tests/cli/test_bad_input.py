@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import errno
 import re
-import tempfile
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -215,34 +215,26 @@ def test_places_that_cannot_be_written(refused, put, target):
     assert "writable" in line
 
 
-class _FullDisk:
-    """A temporary file that takes a few bytes and then has no room."""
-
-    def __init__(self, fault: int) -> None:
-        self.fault = fault
-        self.real = tempfile.NamedTemporaryFile
-
-    def __call__(self, *arguments, **settings):
-        if self.fault == errno.EACCES:
-            raise PermissionError(errno.EACCES, "Permission denied")
-        file = self.real(*arguments, **settings)
-        write = file.write
-
-        def some(text: str) -> int:
-            write(text[:100])
-            file.flush()
-            raise OSError(self.fault, "No space left on device")
-
-        file.write = some
-        return file
+def _no_temporary_file(*_, **__):
+    raise PermissionError(errno.EACCES, "Permission denied")
 
 
-@pytest.mark.parametrize("fault", [errno.ENOSPC, errno.EACCES], ids=["disk full", "folder not writable"])
-def test_disk_full_or_folder_locked_leaves_the_old_file_whole(refused, put, monkeypatch, fault):
+def _no_room_after_100_bytes(path: Path, content: bytes) -> int:
+    with path.open("wb") as file:
+        file.write(content[:100])
+    raise OSError(errno.ENOSPC, "No space left on device")
+
+
+@pytest.mark.parametrize(
+    ("name", "instead"),
+    [("pathlib.Path.write_bytes", _no_room_after_100_bytes), ("tempfile.NamedTemporaryFile", _no_temporary_file)],
+    ids=["disk full", "folder not writable"],
+)
+def test_disk_full_or_folder_locked_leaves_the_old_file_whole(refused, put, monkeypatch, name, instead):
     # `refused` compares every file of the folder before and after, hidden ones too.
     put()
     put("the old report", "report.json")
-    monkeypatch.setattr("ehmo.cli.output.tempfile.NamedTemporaryFile", _FullDisk(fault))
+    monkeypatch.setattr(name, instead)
     line = refused("bond", "a.xyz", "--json", "report.json")
     assert "report.json" in line
     assert "has room" in line

@@ -7,7 +7,12 @@ from collections.abc import Iterator
 
 import pytest
 
+from ehmo.store import open_store
+from tests.cli.conftest import ehmo, put, refused
+from tests.store.rows import done, failed
 from tests.store.servers import Server, server_programs
+
+__all__ = ["ehmo", "put", "refused"]
 
 _NUMBERS = itertools.count()
 
@@ -39,3 +44,19 @@ def location(request, tmp_path) -> str:
     if request.param == "sqlite":
         return str(tmp_path / "results.sqlite")
     return request.getfixturevalue("database")
+
+
+@pytest.fixture
+def filled(location) -> str:
+    """A store with four species and a failure."""
+    with open_store(location, create=True) as store:
+        store.write(
+            [
+                done(1, source="folder/aqua vanadyl.xyz", entry="frame 1"),
+                done(2, "MnO4 -", tags=()),
+                done(3, "VOCl3", source="=cmd|' /C calc'!A0", tags=('+"',)),
+                failed(4, "a.xyz: no metal; give a complex"),
+                done(5, "UO2 2+", source="7"),
+            ]
+        )
+    return location
