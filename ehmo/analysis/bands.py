@@ -10,7 +10,7 @@ import numpy as np
 from ehmo.analysis.multiplets import configuration_terms, dipole_polarisations
 from ehmo.conventions import DEGENERACY_TOLERANCE_EV
 from ehmo.records.arrays import FloatArray, IntArray
-from ehmo.records.bands import Band, BandKind
+from ehmo.records.bands import Band, BandKind, TransferDirection
 from ehmo.records.electronic import NO_ELECTRON, ElectronicState
 from ehmo.records.ligand_field import Ladder
 from ehmo.records.multiplets import Term, Terms
@@ -28,6 +28,9 @@ ALLOWED_STRENGTH = 1e-4
 
 SAME_TERM_PER_CM = 1.0
 """Terms closer than this are told apart by rounding alone [cm^-1]."""
+
+MOVED_SHARE = 0.2
+"""Part of an electron that must change between metal and ligands for a band to be called LMCT or MLCT."""
 
 _LOWEST_LISTED = 3
 _NOTHING = 1e-12  # strengths below are rounding
@@ -146,6 +149,7 @@ def charge_transfer_bands(
     ladder_orbitals: Sequence[int],
     dipoles_A: FloatArray,
     axes: FloatArray,
+    metal_shares: FloatArray,
 ) -> tuple[Band, ...]:
     """Bands between orbitals, at least one of which is no level of the ladder.
 
@@ -161,6 +165,8 @@ def charge_transfer_bands(
         Dipole integrals of the basis functions [angstrom].
     axes : (3, 3) ndarray
         Rows x, y, z of the polarisation.
+    metal_shares : (n_mo,) ndarray
+        Share of each orbital on the metals.
 
     Returns
     -------
@@ -198,6 +204,7 @@ def charge_transfer_bands(
             float(gaps[source, target]),
             float(strengths[source, target]),
             by_axis[:, source, target],
+            metal_shares,
         )
         bands.append(_transfer_band(labels, transfer, closed_shell=closed_shell))
     return tuple(bands)
@@ -212,6 +219,35 @@ class _Transfer:
     gap_eV: float
     strength: float
     by_axis: FloatArray
+    metal_shares: FloatArray
+
+    @property
+    def on_metal(self) -> tuple[float, float]:
+        """Metal share of the set that gives and of the one that takes the electron."""
+        return float(self.metal_shares[self.source].mean()), float(self.metal_shares[self.target].mean())
+
+
+def transfer_direction(before: float, after: float) -> TransferDirection:
+    """Name of a transfer by the metal share of the electron before and after it.
+
+    Parameters
+    ----------
+    before, after : float
+        Shares of the orbitals on the metal.
+
+    Returns
+    -------
+    direction : TransferDirection
+        LMCT or MLCT where at least `MOVED_SHARE` of an electron moves, else by where most of it stays.
+
+    Examples
+    --------
+    >>> transfer_direction(0.05, 0.60), transfer_direction(0.70, 0.10), transfer_direction(0.05, 0.10)
+    ('LMCT', 'MLCT', 'intraligand')
+    """
+    if abs(after - before) >= MOVED_SHARE:
+        return "LMCT" if after > before else "MLCT"
+    return "metal-centred" if before + after > 1 else "intraligand"
 
 
 def _movable_orbitals(state: ElectronicState) -> tuple[IntArray, IntArray]:
@@ -247,7 +283,7 @@ def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: 
     return Band(
         "charge transfer",
         transfer.gap_eV * PER_CM_PER_EV,
-        f"{int(source[0]) + 1} {lower} to {int(target[0]) + 1} {upper}",
+        " ".join(f"{int(source[0]) + 1} {lower} to {int(target[0]) + 1} {upper}".split()),
         _singlets(labels.group, (lower, len(source)), (upper, len(target))) if closed_shell else "",
         len(source) * len(target),
         True,
@@ -255,6 +291,8 @@ def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: 
         ", ".join(letters),
         transfer.strength,
         (int(source[0]), int(target[0])),
+        transfer_direction(*transfer.on_metal),
+        transfer.on_metal[1] - transfer.on_metal[0],
     )
 
 

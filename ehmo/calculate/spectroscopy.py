@@ -79,7 +79,9 @@ def spectroscopy(
     )
     labels = OrbitalLabels(site.symmetry.group, irreps.labels if irreps else ("",) * len(bonding.state.energies_eV))
     orbitals = [level.orbital for level in site.ladder.levels if level.orbital is not None]
-    transfer = charge_transfer_bands(bonding.state, labels, orbitals, dipoles, site.symmetry.axes)
+    transfer = charge_transfer_bands(
+        bonding.state, labels, orbitals, dipoles, site.symmetry.axes, bonding.populations.orbital_shares[:, 0]
+    )
     return replace(found, bands=found.bands + transfer)
 
 

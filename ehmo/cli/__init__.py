@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import io
 import os
 import sys
 from collections.abc import Callable, Sequence
@@ -31,8 +32,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
         0, or 2 after an error that was explained on the standard error stream.
     """
     for stream in (sys.stdout, sys.stderr):
-        # A terminal that cannot show a letter gets a question mark instead of a traceback.
-        stream.reconfigure(errors="replace")  # type: ignore[union-attr]
+        # A terminal that cannot show a letter gets a question mark instead of a traceback; a stream put in its place,
+        # as notebooks do, takes any letter.
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(errors="replace")
     try:
         chosen = _parser().parse_args(arguments)
         handler: Handler = chosen.handler

@@ -21,12 +21,17 @@ _EXACT = 1e-9
 
 
 def fill_bands(
-    energies_eV: FloatArray, weights: FloatArray, electrons: CellElectrons, *, smear: bool = False
+    energies_eV: FloatArray,
+    weights: FloatArray,
+    electrons: CellElectrons,
+    *,
+    smear: bool = False,
+    width_eV: float = SMEARING_EV,
 ) -> BandFilling:
     """Occupation of every level of a mesh.
 
     Each spin fills the lowest levels of the mesh if they hold its electrons exactly and the next level lies more than
-    0.1 eV higher; otherwise both spins follow Fermi-Dirac distributions of 0.02 eV.
+    0.1 eV higher; otherwise both spins follow Fermi-Dirac distributions.
 
     Parameters
     ----------
@@ -38,6 +43,8 @@ def fill_bands(
         Electrons per cell.
     smear : bool
         Use the distribution in any case.
+    width_eV : float
+        Its width [eV].
 
     Returns
     -------
@@ -58,8 +65,8 @@ def fill_bands(
         parts = [part for part in whole if part is not None]
         width = 0.0
     else:
-        parts = [_smeared(energies_eV, weights, count) for count in electrons.by_spin]
-        width = SMEARING_EV
+        parts = [_smeared(energies_eV, weights, count, width_eV) for count in electrons.by_spin]
+        width = width_eV
     occupations, levels = zip(*parts, strict=True)
     return BandFilling(np.stack(occupations), np.array(levels), width)
 
@@ -100,12 +107,12 @@ def _whole_levels(energies: FloatArray, weights: FloatArray, count: float) -> tu
     return (energies < level).astype(np.float64), float(level)
 
 
-def _smeared(energies: FloatArray, weights: FloatArray, count: float) -> tuple[FloatArray, float]:
+def _smeared(energies: FloatArray, weights: FloatArray, count: float, width: float) -> tuple[FloatArray, float]:
     """Fermi-Dirac occupations that hold the electrons of one spin, by bisection of the Fermi level."""
-    low, high = float(energies.min()) - 50 * SMEARING_EV, float(energies.max()) + 50 * SMEARING_EV
+    low, high = float(energies.min()) - 50 * width, float(energies.max()) + 50 * width
     for _ in range(100):
         level = (low + high) / 2
-        occupations: FloatArray = 0.5 - 0.5 * np.tanh((energies - level) / (2 * SMEARING_EV))
+        occupations: FloatArray = 0.5 - 0.5 * np.tanh((energies - level) / (2 * width))
         if weights @ occupations.sum(axis=1) < count:
             low = level
         else:

@@ -12,7 +12,7 @@ import numpy as np
 from scipy.linalg import lapack
 
 from ehmo.conventions import atom_label
-from ehmo.electronic.band_filling import fill_bands
+from ehmo.electronic.band_filling import SMEARING_EV, fill_bands
 from ehmo.electronic.hamiltonian import shell_factors
 from ehmo.electronic.mixing import AndersonMixer
 from ehmo.errors import ConvergenceError, OverlapError
@@ -26,6 +26,17 @@ SMALLEST_BLOCH_EIGENVALUE = 1e-6
 
 CHARGE_TOLERANCE = 1e-10
 """Largest change of a charge at convergence: band energies follow charges, and are compared between cells [e]."""
+
+LAST_TOLERANCE = 1e-8
+"""The same after the last pass allowed: as much as in a molecule [e]."""
+
+_FILLING_TURNS = 4
+"""Changes between whole levels and a smeared distribution after which the distribution stays."""
+
+_WIDE_EV = 0.3
+_CALM = 0.02
+"""It starts as wide as this [eV] and narrows once the charges change by less than that [e]: in narrow bands a
+distribution of the final width is as sharp as whole levels."""
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -158,8 +169,9 @@ def self_consistent_bands(
     start_charges : (n_atoms,) ndarray, optional
         First guess, such as the charges of another mesh; zero by default [e].
     max_iterations : int
-        Passes over the mesh allowed. If the first half of them does not settle the charges, the rest is spent with
-        smeared filling.
+        Passes over the mesh allowed. If the filling goes back and forth between whole levels and a smeared
+        distribution, or the first half of the passes does not settle the charges, the rest is spent with smeared
+        filling.
 
     Returns
     -------
@@ -176,19 +188,26 @@ def self_consistent_bands(
     basis = problem.basis
     n_atoms = len(basis.symbols)
     mixer = AndersonMixer(np.zeros(n_atoms) if start_charges is None else start_charges)
-    residual = np.inf
+    residual, turns, smeared, calm = np.inf, 0, False, False
     for iteration in range(1, max_iterations + 1):
         all_charges = np.concatenate([mixer.value, ion_charges])
         potential = -(interaction_eV @ all_charges)[:n_atoms]
         bands = _Bands.solved(problem, mesh, potential)
-        filling = fill_bands(bands.energies, mesh.weights, electrons, smear=iteration > max_iterations // 2)
+        always = turns >= _FILLING_TURNS or iteration > max_iterations // 2
+        calm = calm or residual < _CALM
+        width = SMEARING_EV if calm or not always else _WIDE_EV
+        filling = fill_bands(bands.energies, mesh.weights, electrons, smear=always, width_eV=width)
+        turns += iteration > 1 and smeared is not (filling.smearing_eV > 0)
+        smeared = filling.smearing_eV > 0
         charges = bands.charges(filling)
         residual = float(np.abs(charges - mixer.value).max())
-        if residual < CHARGE_TOLERANCE:
+        if width == SMEARING_EV and residual < (CHARGE_TOLERANCE if iteration < max_iterations else LAST_TOLERANCE):
             settled = np.concatenate([charges, ion_charges])
             gross = basis.core_charges - charges
             energy = bands.energy(filling) - float(gross @ potential) + 0.5 * float(settled @ interaction_eV @ settled)
             return bands.state(filling, energy, charges, "self-consistent", iteration, residual, smallest)
+        if turns >= _FILLING_TURNS and not always:
+            mixer = AndersonMixer(mixer.value)  # steps of the other filling would mislead it
         mixer.update(charges)
     raise ConvergenceError(
         f"the charges still change by {residual:.1e} e after {max_iterations} passes over the mesh",

@@ -9,6 +9,9 @@ from ehmo.records.arrays import FloatArray
 
 BandKind = Literal["d-d", "f-f", "charge transfer"]
 
+TransferDirection = Literal["LMCT", "MLCT", "intraligand", "metal-centred"]
+"""Where an electron goes: ligand to metal, metal to ligand, within the ligands, or within the metal."""
+
 
 @dataclass(frozen=True, slots=True)
 class Band:
@@ -32,6 +35,10 @@ class Band:
         None where nothing but vibrations or spin-orbit coupling lends it intensity.
     orbitals : tuple of (int, int) or None
         For charge transfer: first orbital of the set that gives and of the one that takes the electron.
+    direction : TransferDirection or None
+        For charge transfer: by the metal shares of both sets.
+    to_metal : float or None
+        For charge transfer: part of the electron that moves onto the metal, negative if it leaves it.
     """
 
     kind: BandKind
@@ -44,6 +51,8 @@ class Band:
     polarisation: str
     oscillator_strength: float | None
     orbitals: tuple[int, int] | None = None
+    direction: TransferDirection | None = None
+    to_metal: float | None = None
 
 
 @dataclass(frozen=True, slots=True)

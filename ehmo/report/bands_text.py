@@ -234,7 +234,7 @@ def _blocks(report: CrystalReport) -> list[str]:
                 f"{block.lowest_eV:.2f}",
                 f"{block.highest_eV:.2f}",
                 str(block.bands.stop - block.bands.start),
-                f"{block.electrons:.4g}",
+                f"{round(block.electrons, 3):g}",
                 f"{block.overlap_population:+.2f}",
                 made,
             ]

@@ -115,6 +115,8 @@ def spectroscopy_part(report: BondReport) -> dict[str, Any]:
             {
                 "wavenumber_per_cm": band.wavenumber_per_cm,
                 "kind": band.kind,
+                "direction": band.direction,
+                "to_metal": band.to_metal,
                 "transition": band.transition,
                 "upper_term": band.upper_term or None,
                 "degeneracy": band.degeneracy,

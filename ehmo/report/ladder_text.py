@@ -27,6 +27,9 @@ _FORBIDDEN_STRENGTH = 1e-7  # rounding of a strength that symmetry makes zero
 _VISIBLE_STRENGTH = 0.01
 _AXIAL = 0.005
 
+TRANSFER_HEADING = " (of charge transfer: direction, and the part of the electron that moves onto the metal)"
+"""What the kinds of charge-transfer bands mean."""
+
 LADDER_NUMBERS = tuple(range(2, 8))
 TERM_NUMBERS = (1, 4)
 BAND_NUMBERS = (0, 4, 7)
@@ -133,7 +136,7 @@ def spectrum_in_words(report: BondReport) -> str:
     strong = [band for band in allowed if (band.oscillator_strength or 0.0) >= _VISIBLE_STRENGTH]
     transfer = (strong or allowed)[:2]
     parts = [f"{band.upper_term} {band.wavenumber_per_cm:.0f}{_allowed(band)}" for band in within]
-    parts += [f"charge transfer {band.wavenumber_per_cm:.0f} ({band.transition})" for band in transfer]
+    parts += [f"{band.direction} {band.wavenumber_per_cm:.0f} ({band.transition})" for band in transfer]
     text = said + (f"; bands/cm-1: {', '.join(parts)}" if parts else "")
     if spectrum.magnetism is not None:
         text += f"; moment {spectrum.magnetism.effective_moment:.2f} at {spectrum.magnetism.temperature_K:.0f} K"
@@ -235,7 +238,9 @@ def _band_lines(bands: Sequence[Band], deviations: Sequence[float | None] | None
         return []
     rows, rest = band_rows(bands, deviations)
     more = [f"  and {rest} more, in the JSON"] if rest else []
-    return ["Bands", *aligned(rows, numeric=BAND_NUMBERS, indent="  "), *more]
+    transfer = any(band.kind == "charge transfer" for band in bands)
+    heading = f"Bands{TRANSFER_HEADING if transfer else ''}"
+    return [heading, *aligned(rows, numeric=BAND_NUMBERS, indent="  "), *more]
 
 
 def band_rows(bands: Sequence[Band], deviations: Sequence[float | None] | None) -> tuple[list[list[str]], int]:
@@ -251,7 +256,7 @@ def band_rows(bands: Sequence[Band], deviations: Sequence[float | None] | None) 
     rows += [
         [
             with_deviation(f"{band.wavenumber_per_cm:.0f}", deviation, 0),
-            band.kind,
+            _kind(band),
             band.upper_term or "-",
             band.transition,
             str(band.degeneracy),
@@ -262,6 +267,13 @@ def band_rows(bands: Sequence[Band], deviations: Sequence[float | None] | None) 
         for band, deviation in kept
     ]
     return rows, len(bands) - len(kept)
+
+
+def _kind(band: Band) -> str:
+    """Kind of a band; of charge transfer the direction and how much of the electron reaches the metal."""
+    if band.direction is None or band.to_metal is None:
+        return band.kind
+    return f"{band.direction} {100 * band.to_metal:+z.0f} %"
 
 
 def _strength(band: Band) -> str:

@@ -241,7 +241,7 @@ def _label_note(graph: PeriodicGraph, piece: Piece) -> list[str]:
     if not pairs:
         return []
     few = ", ".join(f"{ours} is {theirs}" for ours, theirs in pairs[:16])
-    return [f"Labels in the file: {few}{' ...' if len(pairs) > 16 else ''}."]
+    return [f"Labels in the file: {few}{f' and {len(pairs) - 16} more' if len(pairs) > 16 else ''}."]
 
 
 def _network(graph: PeriodicGraph, kind: PieceKind, balance: Balance) -> CrystalNetwork:

@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from itertools import combinations
 from typing import Final
+
+import numpy as np
 
 from ehmo.errors import ElectronCountError
 from ehmo.records.coordination import Coordination, DonorKind, ElectronAssignment
@@ -14,6 +18,7 @@ from ehmo.structure.elements import (
     OXIDATION_STATES,
     TRANSITION_METALS,
     atomic_number,
+    covalent_radius_A,
     valence_d_or_f_electrons,
     with_state,
 )
@@ -23,6 +28,9 @@ MAX_CHARGE: Final = 100
 """Charges beyond this are taken for mistakes."""
 
 _HUND_F: Final = (1, 2, 3)
+
+_METAL_CONTACT: Final = 1.25
+"""Metals nearer than this times the sum of their covalent radii may be bonded and pair their spins."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -225,11 +233,7 @@ def _guessed_unpaired(
     if count is None:
         if _all_empty(fragment, coordination, charge):
             return _Choice(parity, "guessed: no metal has d or f electrons left")
-        raise ElectronCountError(
-            "unpaired electrons are not given and the metal's electrons cannot be counted",
-            place=place,
-            mend=f"give their number: {parity}, {parity + 2}, {parity + 4} ...",
-        )
+        return _several_metals(fragment, coordination, charge, parity, place)
     symbol = fragment.symbols[coordination.metals[0]]
     f_block = symbol in F_BLOCK
     shell, size = ("f", 7) if f_block else ("d", 5)
@@ -253,6 +257,41 @@ def _guessed_unpaired(
         f"unpaired electrons are not given for {shell}{count}",
         place=place,
         mend=f"give their number: {' or '.join(str(n) for n in candidates)}",
+    )
+
+
+def _several_metals(fragment: Fragment, coordination: Coordination, charge: int, parity: int, place: str) -> _Choice:
+    """Parallel spins of equal d1 metals far from one another; else refused with what counting gives."""
+    metals, total = coordination.metals, _oxidation_total(coordination, charge)
+    symbols = [fragment.symbols[metal] for metal in metals]
+    valence = [valence_d_or_f_electrons(symbol, 0) for symbol in symbols]
+    counted = None
+    if total is not None and None not in valence and len(metals) > 1:
+        counted = sum(count or 0 for count in valence) - total
+    if counted == len(metals) and len(set(symbols)) == 1 and counted % 2 == parity and _far_apart(fragment, metals):
+        state = with_state(symbols[0], total // len(metals)) if total is not None else symbols[0]
+        shell = "f" if symbols[0] in F_BLOCK else "d"
+        return _Choice(
+            counted,
+            f"guessed: {state} {shell}1 at each of {counted} metals without bonds between them, spins taken as "
+            "parallel; how they couple is not looked for",
+        )
+    known = "the metal's electrons cannot be counted"
+    if counted is not None and counted >= 0:
+        known = f"the {len(metals)} metals hold {counted} d or f electrons in all by counting"
+    raise ElectronCountError(
+        f"unpaired electrons are not given and {known}",
+        place=place,
+        mend=f"give their number: {parity}, {parity + 2}, {parity + 4} ...",
+    )
+
+
+def _far_apart(fragment: Fragment, metals: Sequence[int]) -> bool:
+    """Whether no two metals are near enough for a bond between them."""
+    return all(
+        float(np.linalg.norm(fragment.positions_A[one] - fragment.positions_A[other]))
+        > _METAL_CONTACT * (covalent_radius_A(fragment.symbols[one]) + covalent_radius_A(fragment.symbols[other]))
+        for one, other in combinations(metals, 2)
     )
 
 

@@ -24,7 +24,8 @@ def test_charge_transfer_strengths_by_plain_loops_mulliken_1939(name, standard):
     dipoles = dipole_integrals(plan, standard, case.fragment.positions_A, case.bonding.overlap.matrix)
     labels = OrbitalLabels(None, tuple(f"o{k}" for k in range(len(plan.basis))))  # nothing taken together
     ladder = [level.orbital for level in case.ladder.levels]
-    bands = charge_transfer_bands(state, labels, ladder, dipoles, np.eye(3))
+    shares = case.bonding.populations.orbital_shares[:, 0]
+    bands = charge_transfer_bands(state, labels, ladder, dipoles, np.eye(3), shares)
     assert bands
     C, E, filled = state.coefficients, state.energies_eV, state.occupations
     for band in bands:
@@ -35,6 +36,9 @@ def test_charge_transfer_strengths_by_plain_loops_mulliken_1939(name, standard):
         expected = 2 / 3 * (E[k] - E[i]) / HARTREE_EV * squared * electrons
         assert band.oscillator_strength == pytest.approx(expected, rel=1e-9, abs=1e-12)
         assert not (i in ladder and k in ladder)
+        on_metal = plan.basis.atom_of == case.coordination.metals[0]
+        gross = (C * (case.bonding.overlap.matrix @ C))[on_metal].sum(axis=0)
+        assert band.to_metal == pytest.approx(gross[k] - gross[i], abs=1e-9)
 
 
 def test_strengths_do_not_depend_on_the_origin(standard):
@@ -44,7 +48,9 @@ def test_strengths_do_not_depend_on_the_origin(standard):
     for shift in (0.0, 25.0):
         positions = case.fragment.positions_A + shift
         dipoles = dipole_integrals(case.bonding.plan, standard, positions, case.bonding.overlap.matrix)
-        bands = charge_transfer_bands(case.bonding.state, labels, [], dipoles, np.eye(3))
+        bands = charge_transfer_bands(
+            case.bonding.state, labels, [], dipoles, np.eye(3), case.bonding.populations.orbital_shares[:, 0]
+        )
         found.append({band.transition: band.oscillator_strength for band in bands if band.oscillator_strength > 1e-3})
     assert found[0] == pytest.approx(found[1], rel=1e-6)
 

@@ -213,3 +213,28 @@ def test_more_bands_than_the_shell_has_are_refused_and_the_rest_stands():
     assert report.spectroscopy.fit is None
     assert any("4 observed bands" in reason for reason in report.spectroscopy.withheld)
     assert report.spectroscopy.terms is not None
+
+
+@pytest.mark.parametrize(
+    ("name", "direction"),
+    [
+        ("MnO4 -", "LMCT"),  # t1 to e: Wolfsberg & Helmholz 1952, Ballhausen & Liehr 1958 (memory)
+        ("CrO4 2-", "LMCT"),
+        ("[UO2(OH2)5]2+", "LMCT"),  # Denning 1992 (memory)
+        ("[VO(OH2)5]2+", "LMCT"),  # Ballhausen & Gray 1962 (memory)
+        ("Cr(CO)6", "MLCT"),  # t2g to pi* of CO: Beach & Gray 1968 (memory)
+    ],
+)
+def test_direction_of_the_first_strong_charge_transfer_band(name, direction):
+    bands = [band for band in report_on(name).spectroscopy.bands if band.kind == "charge transfer"]
+    first = next(band for band in bands if band.oscillator_strength > 0.01)
+    assert first.direction == direction
+    assert (first.to_metal > 0) is (direction == "LMCT")
+
+
+def test_bands_within_a_ligand_have_no_direction_to_the_metal():
+    # Phenyl pi to pi* of the imido ligand.
+    bands = report_on("V(NC6H5)Cl3").spectroscopy.bands
+    inside = [band for band in bands if band.direction == "intraligand"]
+    assert inside
+    assert all(abs(band.to_metal) < 0.2 for band in inside)

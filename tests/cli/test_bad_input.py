@@ -287,16 +287,17 @@ def test_hostile_element_label_and_set_name(refused, put):
 
 
 def test_spin_of_several_open_metals_is_refused(refused, put):
-    # Two vanadium(IV) far apart: nothing tells how their electrons are coupled.
+    # Two vanadium(III) far apart: nothing tells which spin each has.
     species = SPECIES["[VOCl4]2-"]
     rows = [f"{s} {x:.4f} {y:.4f} {z:.4f}" for s, (x, y, z) in zip(species.symbols, species.positions_A, strict=True)]
     rows += [
         f"{s} {x + 20:.4f} {y:.4f} {z:.4f}" for s, (x, y, z) in zip(species.symbols, species.positions_A, strict=True)
     ]
-    put("\n".join((str(len(rows)), "charge=-4", *rows)) + "\n")
+    put("\n".join((str(len(rows)), "charge=-6", *rows)) + "\n")
     line = refused("bond", "a.xyz")
     assert "a.xyz" in line
     assert "unpaired" in line
+    assert "2 metals hold 4 d or f electrons" in line
     assert "0, 2, 4" in line
 
 

@@ -145,8 +145,21 @@ def test_several_d0_metals():
 
 
 def test_several_metals_with_electrons_are_refused():
-    with pytest.raises(ElectronCountError, match="cannot be counted; give their number: 0, 2, 4"):
+    # Two chromium(V) 3.0 A apart may pair their electrons in a bond.
+    with pytest.raises(ElectronCountError, match=r"2 metals hold 2 d or f electrons .*; give their number: 0, 2, 4"):
         _assign(dichromate(), charge=-4)
+
+
+def test_d1_metals_far_from_one_another_have_parallel_spins():
+    vanadyl = SPECIES["[VO(OH2)5]2+"]
+    pair = Fragment(
+        vanadyl.symbols * 2, np.vstack([vanadyl.positions_A, vanadyl.positions_A + np.array([9.0, 0.0, 0.0])])
+    )
+    found = _assign(pair, charge=4)
+    assert found.unpaired_electrons == 2
+    assert "V(IV) d1 at each of 2 metals" in found.unpaired_reason
+    with pytest.raises(ElectronCountError, match="2 metals hold 4 d or f electrons"):
+        _assign(pair, charge=2)  # V(III) d2 each: low or high spin is not told
 
 
 def test_organometallic_and_macrocycle():
