@@ -122,6 +122,8 @@ FIELDS = {
         "wavenumber_per_cm",
         "kind",
         "transition",
+        "direction",
+        "to_metal",
         "upper_term",
         "degeneracy",
         "spin_allowed",
