@@ -66,5 +66,9 @@ class MultipletError(EhmoError):
     """Terms or magnetism asked of a shell that has none to give, or more than are computed here."""
 
 
+class BatchError(EhmoError):
+    """A batch that cannot go on: its worker processes, or the cluster, are not to be had."""
+
+
 class StoreError(EhmoError):
     """A store of results that cannot be opened, read or written."""

@@ -3,6 +3,7 @@
 from ehmo.batch.engine import Engine, InProcess
 from ehmo.batch.items import BatchSettings, WorkItem
 from ehmo.batch.keys import RESULTS_EDITION
+from ehmo.batch.pool import LocalPool
 from ehmo.batch.run import BatchResult, run_batch
 from ehmo.batch.sources import work_items
 
@@ -12,6 +13,7 @@ __all__ = [
     "BatchSettings",
     "Engine",
     "InProcess",
+    "LocalPool",
     "WorkItem",
     "run_batch",
     "work_items",

@@ -45,6 +45,9 @@ class Engine(Protocol):
         event : Finished, Skipped, ItemDone or None
         """
 
+    def close(self) -> None:
+        """Let go of processes and connections."""
+
 
 class InProcess:
     """Work in this process, one structure after another: no limits of time and memory are kept."""
@@ -60,3 +63,6 @@ class InProcess:
                 if not isinstance(outcome, Begun):
                     yield outcome
             yield ItemDone(item.size)
+
+    def close(self) -> None:
+        """Nothing to let go of."""

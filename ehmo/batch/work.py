@@ -119,6 +119,7 @@ class Workplace:
             None if it was still being read.
         entry : str
         message : str
+            What happened, and after a semicolon the mend.
         duration_s : float
 
         Returns
@@ -126,7 +127,8 @@ class Workplace:
         outcome : Finished
         """
         clock = _Clock(duration_s)
-        fault = InputError(message, place=item.place)
+        words, _, mend = message.partition("; ")
+        fault = InputError(words, place=shown(item.place, 200), mend=mend)
         return self._failure(key or unread_key(item, self._settings), item, entry, fault, _Clock(0.0), clock)
 
     def _has(self, key: str, item: WorkItem) -> bool:

@@ -3,7 +3,11 @@
 from __future__ import annotations
 
 import argparse
+import signal
 import sys
+import threading
+from collections.abc import Iterator
+from contextlib import closing, contextmanager
 from typing import TYPE_CHECKING, Any
 
 from ehmo.cli import bond
@@ -11,7 +15,7 @@ from ehmo.cli.structures import add_reading_options
 from ehmo.errors import InputError
 
 if TYPE_CHECKING:
-    from ehmo.batch import BatchResult, BatchSettings
+    from ehmo.batch import BatchResult, BatchSettings, Engine
 
 
 def add_command(commands: Any) -> None:
@@ -36,6 +40,22 @@ def add_command(commands: Any) -> None:
         "--allow-outside", action="store_true", help="follow links and manifest paths that lead out of the folder"
     )
     parser.add_argument("--quiet", action="store_true", help="no progress on the error stream")
+    work = parser.add_argument_group("work")
+    work.add_argument(
+        "--workers",
+        type=int,
+        metavar="N",
+        help="worker processes (default: one for each processor); 0 works in this process, without limits",
+    )
+    work.add_argument(
+        "--time-limit", type=float, default=600.0, metavar="S", help="time allowed for a structure [s] (600)"
+    )
+    work.add_argument(
+        "--memory-limit",
+        type=float,
+        metavar="GB",
+        help="memory allowed to a worker (default: its part of 80 %% of this machine's, at least 2 GB)",
+    )
     add_reading_options(parser.add_argument_group("structures"))
     parser.add_argument("--mesh", metavar="A,B,C", help="k-points for extended structures (default: by the cell)")
     bond.add_calculation_options(parser)
@@ -45,12 +65,12 @@ def add_command(commands: Any) -> None:
 
 def run(chosen: argparse.Namespace) -> str:
     """Closing words; progress goes to the error stream."""
-    from ehmo.batch import InProcess, run_batch, work_items
+    from ehmo.batch import run_batch, work_items
     from ehmo.batch.progress import Progress
     from ehmo.batch.sources import source_files
     from ehmo.store import open_store
 
-    settings, shard = _settings(chosen), _shard(chosen.shard)
+    settings, shard, engine = _settings(chosen), _shard(chosen.shard), _engine(chosen)
     total = sum(file.size for file in source_files(chosen.sources, allow_outside=chosen.allow_outside))
     items = work_items(
         chosen.sources,
@@ -60,16 +80,20 @@ def run(chosen: argparse.Namespace) -> str:
         max_bytes=chosen.max_bytes,
     )
     progress = Progress(sys.stderr, total // shard[1])
-    with open_store(chosen.store, create=True) as store:
+    with closing(engine), _stopped_like_by_keyboard(), open_store(chosen.store, create=True) as store:
         try:
             result = run_batch(
                 items,
                 store,
-                InProcess(),
+                engine,
                 settings,
                 retry_failed=chosen.retry == "failed",
                 on_progress=(lambda _: None) if chosen.quiet else progress.show,
             )
+        except KeyboardInterrupt:
+            progress.close()
+            sys.stderr.write("ehmo: stopped; what was finished is in the store, the same command goes on from there\n")
+            raise
         finally:
             progress.close()
         return _closing_words(result, store.name)
@@ -101,6 +125,40 @@ def _shard(text: str | None) -> tuple[int, int]:
     if not plain or not 1 <= int(number) <= int(count):
         raise InputError(f"--shard {text!r} is no part", mend="give for example 3/16")
     return int(number), int(count)
+
+
+def _engine(chosen: argparse.Namespace) -> Engine:
+    from ehmo.batch import InProcess, LocalPool
+    from ehmo.batch.machine import memory_share, processors
+
+    workers = processors() if chosen.workers is None else chosen.workers
+    if not 0 <= workers <= 1000:
+        raise InputError(f"--workers {workers}", mend="give a number from 0 to 1000")
+    if not chosen.time_limit > 0:
+        raise InputError(f"--time-limit {chosen.time_limit:g}", mend="give a positive number of seconds")
+    if chosen.memory_limit is not None and not 0.5 <= chosen.memory_limit < 1e6:
+        raise InputError(f"--memory-limit {chosen.memory_limit:g}", mend="give gigabytes, at least 0.5")
+    if workers == 0:
+        return InProcess()
+    limit = memory_share(workers) if chosen.memory_limit is None else int(chosen.memory_limit * 1e9)
+    return LocalPool(workers, time_limit_s=chosen.time_limit, memory_limit=limit)
+
+
+@contextmanager
+def _stopped_like_by_keyboard() -> Iterator[None]:
+    """A polite request to end, as queueing systems send it before they kill, keeps what is finished."""
+
+    def stop(*_: object) -> None:
+        raise KeyboardInterrupt
+
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGTERM, stop)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGTERM, before)
 
 
 def _closing_words(result: BatchResult, store: str) -> str:
