@@ -180,8 +180,8 @@ def environment() -> dict[str, str]:
 
 
 def children_of(pid: int) -> list[int]:
-    found = subprocess.run(["ps", "--ppid", str(pid), "-o", "pid="], capture_output=True, text=True, check=False)
-    return [int(word) for word in found.stdout.split()]
+    tasks = Path(f"/proc/{pid}/task").iterdir()
+    return [int(word) for task in tasks for word in (task / "children").read_text().split()]
 
 
 def count(location: Path) -> int:

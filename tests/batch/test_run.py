@@ -215,7 +215,7 @@ def test_rows_of_an_ase_database_are_structures_with_tags(ehmo, tmp_path):
             database.write(atoms, total_charge=species.charge, unpaired=species.unpaired_electrons, colour="yellow")
         database.write(Atoms("H2O", [[0, 0, 0], [0, 0, 0.96], [0.93, 0, -0.24]]), total_charge=0)
     assert "2 calculated, 1 failed" in ehmo("batch", "ase.db", "--store", "r.sqlite").out
-    found = rows(tmp_path / "r.sqlite")
+    found = sorted(rows(tmp_path / "r.sqlite"), key=lambda row: row.provenance.entry)
     assert [row.provenance.entry for row in found] == ["row 1", "row 2", "row 3"]
     assert {row.provenance.tags for row in found} == {("colour=yellow",), ()}
     assert [row.document["fragment"]["charge"] for row in found[:2]] == [0, -2]
