@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from ehmo.cli.extended import add_crystal_options, clusters, extended_report, refuse_crystal_options
 from ehmo.cli.output import same_file, write_whole
+from ehmo.cli.pages import add_page_option, check_page, write_page
 from ehmo.cli.structures import add_structure_options, chosen_fragments, extended_crystals, listing
 from ehmo.errors import EhmoError, InputError
 
@@ -36,6 +37,7 @@ def add_command(commands: Any) -> None:
     add_calculation_options(parser)
     add_spread_option(parser)
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
+    add_page_option(parser)
     parser.set_defaults(handler=run)
 
 
@@ -120,6 +122,12 @@ def run(chosen: argparse.Namespace) -> str:
     if extended and chosen.cluster is not None:
         return report_on(clusters(extended, chosen), chosen)
     if extended:
+        if chosen.page is not None:
+            raise InputError(
+                "a page shows a molecule, and the crystal is calculated as a whole",
+                place=chosen.file,
+                mend="leave --page out, or cut a cluster with --cluster",
+            )
         return extended_report(extended, chosen, calculation_options(chosen))
     refuse_crystal_options(chosen)
     return report_on(chosen_fragments(chosen), chosen)
@@ -139,6 +147,9 @@ def report_on(
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
     if chosen.json not in (None, "-") and same_file(chosen.json, getattr(chosen, "file", None)):
         raise InputError("--json would overwrite the structure file", place=chosen.json, mend="give another file name")
+    page = getattr(chosen, "page", None) is not None
+    if page:
+        check_page(chosen, len(fragments))
     options, table = options or calculation_options(chosen), load_parameters(chosen.params)
     make: Callable[..., BondReport] = bond_report
     if chosen.spread is not None:
@@ -157,6 +168,8 @@ def report_on(
             refused[fragment.source] = error
     if not reports:
         raise next(iter(refused.values()))
+    if page:
+        write_page(chosen, reports[0], table)
     if chosen.json is not None:
         from ehmo.report.document import json_text
 

@@ -226,7 +226,8 @@ def _draw_sets(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> N
         level = found.sets[k]
         colour = look.origins[int(np.argmax(_shares(level)))]
         left = middle + centre - set_width(len(level.orbitals)) / 2
-        draw_set(axes, len(level.orbitals), left, y, colour)
+        names = [f"orbital {orbital}" for orbital in level.orbitals]
+        draw_set(axes, len(level.orbitals), left, y, colour, names)
         draw_electrons(axes, level.alpha, level.beta, left, y, look)
         right = left + set_width(len(level.orbitals))
         axes.plot([right + 0.03, label_x - 0.06], [y, label_y], color=look.grid, lw=0.5, zorder=0)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Final
 
 from ehmo.records.electronic import NO_ELECTRON
@@ -28,7 +29,9 @@ def set_width(degeneracy: int) -> float:
     return degeneracy * (DASH_CM + GAP_CM) - GAP_CM
 
 
-def draw_set(axes: Axes, degeneracy: int, left: float, y: float, colour: str) -> None:
+def draw_set(
+    axes: Axes, degeneracy: int, left: float, y: float, colour: str, names: Sequence[str | None] | None = None
+) -> None:
     """Dashes of one set of degenerate levels, side by side.
 
     Parameters
@@ -39,10 +42,12 @@ def draw_set(axes: Axes, degeneracy: int, left: float, y: float, colour: str) ->
     left, y : float
         Left end and height [cm].
     colour : str
+    names : sequence of str, optional
+        Name of each dash in the file, for a page whose reader can choose it.
     """
-    for n in range(degeneracy):
+    for n, name in enumerate(names or [None] * degeneracy):
         x = left + n * (DASH_CM + GAP_CM)
-        axes.plot([x, x + DASH_CM], [y, y], color=colour, lw=1.8, solid_capstyle="butt", zorder=4)
+        axes.plot([x, x + DASH_CM], [y, y], color=colour, lw=1.8, solid_capstyle="butt", zorder=4, gid=name)
 
 
 def draw_electrons(axes: Axes, alpha: float, beta: float, left: float, y: float, look: Look) -> None:

@@ -71,8 +71,9 @@ def element(tag: str, *content: Content, **attributes: object) -> Markup:
         if not _NAME.fullmatch(written):
             raise ValueError(f"{written!r} names no attribute")
         words.append(written if value is True else f'{written}="{escape(visible(str(value)), quote=True)}"')
-    opened = f"<{' '.join(words)}>"
-    return Markup(opened if tag in _VOID else f"{opened}{markup(content)}</{tag}>")
+    opened = " ".join(words)
+    # The slash ends elements of SVG, and does nothing to those of HTML.
+    return Markup(f"<{opened}/>" if tag in _VOID else f"<{opened}>{markup(content)}</{tag}>")
 
 
 def table(

@@ -18,6 +18,7 @@ STICK_A = 0.07
 
 _BALL_SHARE = 0.22  # radius of a ball in covalent radii
 _REACH = 1.25
+_PER_BODY = 200  # corners of a packed surface are 16-bit numbers
 
 
 def drawn_bonds(report: BondReport) -> list[tuple[int, int]]:
@@ -37,7 +38,7 @@ def drawn_bonds(report: BondReport) -> list[tuple[int, int]]:
 
 
 def molecule_bodies(report: BondReport) -> list[Body]:
-    """One body for each colour: all balls and half sticks of an element."""
+    """One body for each colour, or a few where it has many atoms: all balls and half sticks of an element."""
     fragment = report.fragment
     parts: dict[str, list[Surface]] = {}
     for symbol, position in zip(fragment.symbols, fragment.positions_A, strict=True):
@@ -49,7 +50,11 @@ def molecule_bodies(report: BondReport) -> list[Body]:
         for atom in (one, other):
             stick = _stick(fragment.positions_A[atom], middle)
             parts.setdefault(element_colour(fragment.symbols[atom]), []).append(stick)
-    return [Body(joined(surfaces), colour) for colour, surfaces in parts.items()]
+    return [
+        Body(joined(surfaces[start : start + _PER_BODY]), colour)
+        for colour, surfaces in parts.items()
+        for start in range(0, len(surfaces), _PER_BODY)
+    ]
 
 
 def joined(surfaces: list[Surface]) -> Surface:

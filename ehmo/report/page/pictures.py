@@ -17,7 +17,7 @@ from ehmo.report.page.surfaces import Surface
 _SAMPLES = 2  # per pixel along each side, for smooth edges
 _SHADES = 14  # steps of brightness: fewer make smaller files
 _LIGHT = np.array([-0.45, 0.55, 0.70])
-_PX_PER_POINT = 0.85
+_PX_PER_POINT = 0.95
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -75,7 +75,7 @@ class Scene:
         Width and height in pixels.
     image : (n, 4) ndarray of uint8
         Colours of the fine pixels, row by row.
-    depth : (n,) ndarray
+    depth : (n,) ndarray of float32
         Height of the nearest point in each, -inf where there is none.
     """
 
@@ -84,13 +84,15 @@ class Scene:
     half_width_A: float
     size: int
     image: NDArray[np.uint8]
-    depth: FloatArray
+    depth: NDArray[np.float32]
 
     @classmethod
     def empty(cls, view: FloatArray, centre_A: FloatArray, half_width_A: float, size: int) -> Scene:
         """Scene without bodies."""
         n = (size * _SAMPLES) ** 2
-        return cls(view, centre_A, half_width_A, size, np.zeros((n, 4), dtype=np.uint8), np.full(n, -np.inf))
+        return cls(
+            view, centre_A, half_width_A, size, np.zeros((n, 4), dtype=np.uint8), np.full(n, -np.inf, dtype=np.float32)
+        )
 
     def with_bodies(self, bodies: Sequence[Body]) -> Scene:
         """Scene with more bodies in it; the old one stays as it is."""
@@ -101,7 +103,7 @@ class Scene:
             points[:, :2] *= fine / 2 / self.half_width_A
             normals = body.surface.normals() @ self.view.T
             where, heights, tilts = _samples(points, normals, body.surface.faces, fine)
-            nearest = np.full(len(depth), -np.inf)
+            nearest = np.full(len(depth), -np.inf, dtype=np.float32)
             np.maximum.at(nearest, where, heights)
             seen = (heights >= nearest[where]) & (heights > depth[where])
             image[where[seen]] = _shaded(body.colour, _brightness(tilts[seen]))
@@ -117,18 +119,19 @@ class Scene:
 
 def _samples(
     points: FloatArray, normals: FloatArray, faces: NDArray[np.intp], fine: int
-) -> tuple[NDArray[np.intp], FloatArray, FloatArray]:
+) -> tuple[NDArray[np.intp], NDArray[np.float32], NDArray[np.float32]]:
     """Pixel, height and normal of points strewn over the triangles that face the eye."""
-    both = np.concatenate([points, normals], axis=1)[faces]
+    # Single precision is a hundred times finer than a pixel, and half the work.
+    both = np.concatenate([points, normals], axis=1).astype(np.float32)[faces]
     first, second = both[:, 1, :2] - both[:, 0, :2], both[:, 2, :2] - both[:, 0, :2]
     front = first[:, 0] * second[:, 1] - first[:, 1] * second[:, 0] > 0
     both, first, second = both[front], first[front], second[front]
     longest = np.sqrt(np.max([(edge * edge).sum(axis=1) for edge in (first, second, first - second)], axis=0))
     steps = np.maximum(np.ceil(longest / _PX_PER_POINT).astype(int), 1)
-    parts = [np.zeros((0, 6))]
+    parts = [np.zeros((0, 6), dtype=np.float32)]
     for n in np.unique(steps):
         a, b = (grid.ravel() for grid in np.meshgrid(np.arange(n + 1), np.arange(n + 1)))
-        weights = np.stack([n - a - b, a, b], axis=1)[a + b <= n] / n
+        weights = (np.stack([n - a - b, a, b], axis=1)[a + b <= n] / n).astype(np.float32)
         parts.append((weights @ both[steps == n]).reshape(-1, 6))
     strewn = np.concatenate(parts)
     columns = np.floor(strewn[:, 0] + fine / 2).astype(np.intp)
@@ -137,7 +140,7 @@ def _samples(
     return (rows * fine + columns)[kept], strewn[kept, 2], strewn[kept, 3:]
 
 
-def _brightness(normals: FloatArray) -> FloatArray:
+def _brightness(normals: NDArray[np.float32]) -> FloatArray:
     """0 to 1 in the shade, above 1 where the light is mirrored."""
     light = _LIGHT / np.linalg.norm(_LIGHT)
     normals = normals / np.maximum(np.linalg.norm(normals, axis=1, keepdims=True), 1e-12)
@@ -161,7 +164,7 @@ def _shaded(colour: str, brightness: FloatArray) -> NDArray[np.uint8]:
 
 def _averaged(image: NDArray[np.uint8], size: int) -> NDArray[np.uint8]:
     """Image at its final size; the colour of a part-covered pixel is that of its covered part."""
-    blocks = image.reshape(size, _SAMPLES, size, _SAMPLES, 4).astype(float)
+    blocks = image.reshape(size, _SAMPLES, size, _SAMPLES, 4).astype(np.float32)
     alpha = blocks[..., 3].sum(axis=(1, 3))
     colour = (blocks[..., :3] * blocks[..., 3:]).sum(axis=(1, 3)) / np.maximum(alpha, 1)[..., None]
     return np.concatenate([colour, alpha[..., None] / _SAMPLES**2], axis=2).round().astype(np.uint8)
@@ -170,7 +173,7 @@ def _averaged(image: NDArray[np.uint8], size: int) -> NDArray[np.uint8]:
 def _png(image: NDArray[np.uint8]) -> bytes:
     """RGBA image in the PNG format (ISO/IEC 15948), with a palette of at most 256 colours."""
     height, width = image.shape[:2]
-    for bits in range(3, 7):
+    for bits in range(4, 7):
         # Coarser colours until the palette holds them all; clear pixels are all alike.
         step = 1 << bits
         coarse = np.minimum(image.astype(int) // step * step + step // 2, 255)
@@ -187,7 +190,7 @@ def _png(image: NDArray[np.uint8]) -> bytes:
         (b"IHDR", struct.pack(">IIBBBBB", width, height, 8, 3, 0, 0, 0)),
         (b"PLTE", palette[:, :3].tobytes()),
         (b"tRNS", palette[:, 3].tobytes()),
-        (b"IDAT", zlib.compress(lines.tobytes(), 9)),
+        (b"IDAT", zlib.compress(lines.tobytes(), 6)),
         (b"IEND", b""),
     )
     chunks = [

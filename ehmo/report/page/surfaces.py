@@ -112,7 +112,7 @@ def packed(surfaces: Sequence[Surface | None], axes: FloatArray, origin_A: Float
         backwards = highest + 1 - corners
         parts.append(np.array([len(surface.vertices_A), len(surface.faces)], dtype="<u4").tobytes())
         parts += [_split_bytes(changes), _split_bytes(backwards)]
-    return base64.b64encode(zlib.compress(b"".join(parts), 9)).decode("ascii")
+    return base64.b64encode(zlib.compress(b"".join(parts), 6)).decode("ascii")
 
 
 def _split_bytes(numbers: IntArray) -> bytes:

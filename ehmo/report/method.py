@@ -1,0 +1,162 @@
+"""The method of one calculation as a paragraph for a paper, with the works it rests on."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+
+import basis_params
+from basis_params import ParameterTable
+from ehmo import __version__
+from ehmo.errors import visible
+from ehmo.records.report import BondReport
+
+
+@dataclass(frozen=True, slots=True)
+class MethodParagraph:
+    """What was done, in sentences with numbered citations.
+
+    Attributes
+    ----------
+    text : str
+        Citations stand as ``[1]``, in the order in which they occur.
+    citations : tuple of str
+        One line each, without its number.
+    """
+
+    text: str
+    citations: tuple[str, ...]
+
+    def __str__(self) -> str:
+        listed = [f"[{number}] {line}" for number, line in enumerate(self.citations, 1)]
+        return "\n".join([self.text, "", *listed])
+
+
+class _Numbers:
+    """Numbers of the works cited so far."""
+
+    def __init__(self) -> None:
+        self.keys: list[str] = []
+
+    def cite(self, *keys: str) -> str:
+        """Numbers of some works in brackets; empty for none."""
+        wanted = dict.fromkeys(key for key in keys if key)
+        self.keys += [key for key in wanted if key not in self.keys]
+        numbers = sorted(self.keys.index(key) + 1 for key in wanted)
+        return f" [{', '.join(_runs(numbers))}]" if numbers else ""
+
+
+def _runs(numbers: list[int]) -> Iterable[str]:
+    """Numbers with three or more in a row as a range."""
+    start = 0
+    while start < len(numbers):
+        stop = start
+        while stop + 1 < len(numbers) and numbers[stop + 1] == numbers[stop] + 1:
+            stop += 1
+        if stop - start >= 2:
+            yield f"{numbers[start]}\N{EN DASH}{numbers[stop]}"
+        else:
+            yield from (str(number) for number in numbers[start : stop + 1])
+        start = stop + 1
+
+
+def method_paragraph(report: BondReport, table: ParameterTable) -> MethodParagraph:
+    """Paragraph on the method of a report.
+
+    Parameters
+    ----------
+    report : BondReport
+    table : ParameterTable
+        Its parameter set.
+
+    Returns
+    -------
+    paragraph : MethodParagraph
+        Only what this calculation used is named and cited.
+    """
+    numbers = _Numbers()
+    sentences = [
+        *_hamiltonian(report, table, numbers),
+        *_analysis(report, numbers),
+        *_ligand_field(report, numbers),
+    ]
+    if report.spread is not None:
+        sentences.append(
+            f"Standard deviations are over {report.spread.used} draws of the parameters from their uncertainties."
+        )
+    known = basis_params.references()
+    lines = [known[key].text if key in known else visible(key) for key in numbers.keys]
+    return MethodParagraph(" ".join(sentences), tuple(lines))
+
+
+def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -> list[str]:
+    method = report.method
+    weighted = f", weighted{numbers.cite('ammeter-1978')}" if method.weighting else ""
+    constants = {method.K_sigma, method.K_pi, method.K_delta}
+    value = (
+        f"K = {method.K:g}"
+        if constants == {method.K}
+        else f"K = {method.K_sigma:g} (sigma), {method.K_pi:g} (pi), {method.K_delta:g} (delta)"
+    )
+    cited = numbers.cite("wolfsberg-1952", "hoffmann-1963")
+    sentences = [f"Extended-Hückel calculations{cited} were done with ehmo {__version__} ({value}{weighted})."]
+    if method.K_decay_per_A:
+        sentences.append(
+            f"K falls with distance at a rate of {method.K_decay_per_A:g} Å⁻¹{numbers.cite('calzaferri-1989')}."
+        )
+    if method.charge_model != "fixed":
+        sentences.append(
+            "Orbital energies follow the atomic charges to self-consistency by softened Coulomb interactions"
+            f"{numbers.cite('klopman-1964', 'ohno-1964')} with weight lambda = {method.lambda_:g}."
+        )
+    if method.smearing_eV:
+        sentences.append(f"Levels were filled with a Fermi-Dirac width of {method.smearing_eV:g} eV.")
+    symbols = dict.fromkeys(report.fragment.symbols)
+    sources = [shell.source_key for symbol in symbols for shell in table.elements[symbol].shells]
+    sentences.append(
+        f"Slater functions{numbers.cite('slater-1930')} and ionisation energies are those of the parameter set "
+        f"{visible(method.parameter_set)}, edition {visible(method.edition)} (SHA-256 {method.parameter_sha256[:12]}), "
+        f"for {', '.join(symbols)}{numbers.cite(*sources)}."
+    )
+    return sentences
+
+
+def _analysis(report: BondReport, numbers: _Numbers) -> list[str]:
+    sentences = [
+        f"Bonds are described by Mulliken overlap populations and charges{numbers.cite('mulliken-1955')}, Mayer bond "
+        f"orders{numbers.cite('mayer-1983')}, and Wiberg orders{numbers.cite('wiberg-1968')} over "
+        f"Löwdin-orthonormalised functions{numbers.cite('lowdin-1950')}, resolved into sigma, pi and delta channels by "
+        "singular values of the metal-donor block of the density matrix."
+    ]
+    if report.sites:
+        shapes = f", shapes{numbers.cite('pinsky-1998')}" if any(site.shapes for site in report.sites) else ""
+        sentences.append(
+            "Symmetry was judged by continuous symmetry measures"
+            f"{numbers.cite('zabrodsky-1992')}{shapes} of the coordination sphere."
+        )
+    if any(bond.bond_valence is not None for bond in report.coordination.bonds):
+        sentences.append(f"Bond valences follow Brown and Altermatt{numbers.cite('brown-1985')}.")
+    return sentences
+
+
+def _ligand_field(report: BondReport, numbers: _Numbers) -> list[str]:
+    sentences = []
+    if any(site.ladder is not None for site in report.sites):
+        text = (
+            "Ligand-field levels are those of an effective Hamiltonian on the valence shell of the metal"
+            f"{numbers.cite('des-cloizeaux-1960')}"
+        )
+        parameters = [site.parameters for site in report.sites if site.parameters is not None]
+        if any(found.crystal_field_per_cm for found in parameters):
+            text += f", read as crystal-field parameters{numbers.cite('ballhausen-1962')}"
+        if any(found.angular_overlap for found in parameters):
+            text += f", and in the angular overlap model{numbers.cite('schaffer-1965')}"
+        sentences.append(f"{text}.")
+    spectrum = report.spectroscopy
+    if spectrum.terms is not None:
+        sources = spectrum.constants.sources if spectrum.constants is not None else ()
+        sentences.append(
+            f"Terms come from configuration interaction within the shell{numbers.cite('racah-1942', 'tanabe-1954')} "
+            f"with free-ion constants{numbers.cite(*sources)} reduced by the metal shares of the levels."
+        )
+    return sentences

@@ -1,0 +1,77 @@
+"""The interaction diagram of a page: a figure whose levels can be chosen."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Collection
+from typing import Final
+
+from ehmo.analysis.interaction import bond_interaction
+from ehmo.records.report import BondReport
+from ehmo.report.figures.canvas import figure_bytes
+from ehmo.report.figures.interaction import default_bond, interaction_diagram
+from ehmo.report.look import LIGHT
+from ehmo.report.page.bonds import level_in_words
+from ehmo.report.page.markup import Markup, element, markup
+
+WIDTH_CM: Final = 13.0
+
+_LEVEL = re.compile(r'<g id="orbital (\d+)">\s*<path d="M ([\d.]+) ([\d.]+)\s+L ([\d.]+) ([\d.]+)\s*"[^>]*/>\s*</g>')
+_ROLES = tuple(
+    (role, getattr(LIGHT, role))
+    for role in (
+        *("paper", "ink", "muted", "grid", "sigma", "pi", "delta", "phi"),
+        *("metal", "donor", "other", "alpha", "beta"),
+    )
+)
+
+
+def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
+    """Interaction diagram of the shortest multiple bond, its colours those of the page.
+
+    Parameters
+    ----------
+    report : BondReport
+    shown : collection of int
+        Orbitals that can be shown: their levels are buttons.
+
+    Returns
+    -------
+    html : Markup
+    """
+    bond = default_bond(report)
+    drawing = figure_bytes(interaction_diagram(report, bond, width_cm=WIDTH_CM), "svg").decode("utf-8")
+    drawing = drawing[drawing.index("<svg") :]
+    drawing = re.sub(r"<metadata>.*?</metadata>", "", drawing, flags=re.DOTALL)
+    for role, colour in _ROLES:
+        drawing = drawing.replace(colour, f"var(--{role})")
+    words = {k: level_in_words(level) for level in bond_interaction(report, bond).sets for k in level.orbitals}
+
+    def button(found: re.Match[str]) -> str:
+        orbital, (x, y, end, _) = int(found[1]), (float(found[k]) for k in range(2, 6))
+        if orbital not in shown:
+            return found[0]
+        room = element("rect", x=f"{x - 1:g}", y=f"{y - 9:g}", width=f"{end - x + 2:g}", height="18", class_="room")
+        return (
+            f'<g class="level" data-orbital="{orbital}" tabindex="0" role="button" aria-pressed="false" '
+            f'aria-label="Orbital {orbital + 1}: {markup(words[orbital])}">{room}{found[0]}</g>'
+        )
+
+    label = report.bond_label(report.coordination.bonds[bond])
+    caption = (
+        f"How the orbitals arise from the metal (left) and the ligands of {label} (right). Levels that carry the "
+        "chosen channel are marked; choose a level to see it in the view above."
+    )
+    return element(
+        "figure",
+        element(
+            "div",
+            Markup(_LEVEL.sub(button, drawing)),
+            class_="drawing",
+            role="group",
+            aria_label=f"Interaction diagram of {label}",
+        ),
+        element("figcaption", caption),
+        class_="diagram",
+        id="diagram-figure",
+    )

@@ -1,0 +1,63 @@
+"""Formulas, irreps and terms as markup with their indices."""
+
+from __future__ import annotations
+
+import re
+from typing import Final
+
+from ehmo.records.report import BondReport
+from ehmo.report.formula import complex_formula
+from ehmo.report.page.markup import Markup, element, markup
+
+PART_LETTERS: Final = {"sigma": "σ", "pi": "π", "delta": "δ", "phi": "φ"}
+"""Greek letter of each bond part."""
+
+_PIECE = re.compile(r"([A-Z][a-z]?|[()])(\d*)")
+_IRREP = re.compile(r"(\d*)([abetgABETGσπδφγΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
+_MINUS = "\N{MINUS SIGN}"
+
+
+def formula_markup(report: BondReport) -> Markup:
+    """Formula with subscripts and charge, such as ``[VO(H2O)5]2+``."""
+    charge = report.fragment.charge
+    body = markup(
+        [
+            [symbol, element("sub", count) if count else None]
+            for symbol, count in _PIECE.findall(complex_formula(report))
+        ]
+    )
+    if not charge:
+        return body
+    size = "" if abs(charge) == 1 else str(abs(charge))
+    raised = element("sup", f"{size}{'+' if charge > 0 else _MINUS}")
+    return markup(["[", body, "]", raised])
+
+
+def formula_plain(report: BondReport) -> str:
+    """The same as plain text, for the title of the window."""
+    charge = report.fragment.charge
+    text = complex_formula(report)
+    return f"[{text}] {abs(charge) if abs(charge) > 1 else ''}{'+' if charge > 0 else _MINUS}" if charge else text
+
+
+def irrep_markup(label: str) -> Markup:
+    """Orbital label such as ``2t2g`` with its index; other text as it is."""
+    found = _IRREP.fullmatch(label)
+    if not found:
+        return markup(label)
+    number, letter, below, primes, sign = found.groups()
+    return markup(
+        [
+            number,
+            letter,
+            element("sub", below) if below else None,
+            "\N{PRIME}" * len(primes),
+            element("sup", sign.replace("-", _MINUS)) if sign else None,
+        ]
+    )
+
+
+def part_letter(name: str) -> str:
+    """Bond part such as ``pi*`` with its Greek letter."""
+    bare = name.rstrip("*")
+    return PART_LETTERS.get(bare, bare) + name[len(bare) :]
