@@ -28,7 +28,7 @@ TOP_LEVEL = {
     "tests",
     "benchmarks",
 }
-DATA_SUFFIXES = {".csv", ".json", ".xyz", ".typed"}
+DATA_SUFFIXES = {".csv", ".json", ".xyz", ".typed", ".css", ".js"}
 
 
 def loaded_after(statement: str) -> set[str]:

@@ -91,6 +91,7 @@ def method_paragraph(report: BondReport, table: ParameterTable) -> MethodParagra
 
 def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -> list[str]:
     method = report.method
+    cited = numbers.cite("wolfsberg-1952", "hoffmann-1963")
     weighted = f", weighted{numbers.cite('ammeter-1978')}" if method.weighting else ""
     constants = {method.K_sigma, method.K_pi, method.K_delta}
     value = (
@@ -98,7 +99,6 @@ def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -
         if constants == {method.K}
         else f"K = {method.K_sigma:g} (sigma), {method.K_pi:g} (pi), {method.K_delta:g} (delta)"
     )
-    cited = numbers.cite("wolfsberg-1952", "hoffmann-1963")
     sentences = [f"Extended-Hückel calculations{cited} were done with ehmo {__version__} ({value}{weighted})."]
     if method.K_decay_per_A:
         sentences.append(
@@ -129,10 +129,12 @@ def _analysis(report: BondReport, numbers: _Numbers) -> list[str]:
         "singular values of the metal-donor block of the density matrix."
     ]
     if report.sites:
-        shapes = f", shapes{numbers.cite('pinsky-1998')}" if any(site.shapes for site in report.sites) else ""
+        measured = numbers.cite("zabrodsky-1992")
+        shapes = (
+            f" and shape measures{numbers.cite('pinsky-1998')}" if any(site.shapes for site in report.sites) else ""
+        )
         sentences.append(
-            "Symmetry was judged by continuous symmetry measures"
-            f"{numbers.cite('zabrodsky-1992')}{shapes} of the coordination sphere."
+            f"Symmetry was judged by continuous symmetry measures{measured}{shapes} of the coordination sphere."
         )
     if any(bond.bond_valence is not None for bond in report.coordination.bonds):
         sentences.append(f"Bond valences follow Brown and Altermatt{numbers.cite('brown-1985')}.")
