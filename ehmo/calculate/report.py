@@ -16,6 +16,7 @@ from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
 from ehmo.records.report import BondReport, Method
+from ehmo.records.symmetry import Symmetry
 from ehmo.structure import assign_electrons, perceive
 
 
@@ -147,6 +148,62 @@ def known_report(
             *site_warnings(fragment, coordination, sites),
             *spectrum_warnings(spectrum),
         ),
+    )
+
+
+def brief_report(
+    fragment: Fragment,
+    coordination: Coordination,
+    electrons: ElectronAssignment,
+    table: ParameterTable,
+    settings: ModelSettings,
+    options: Options,
+    symmetries: tuple[Symmetry, ...],
+) -> BondReport:
+    """Report with orders, ladders, terms and bands only, for studies that repeat one geometry many times.
+
+    Symmetry of the whole molecule, formal orders, reactivity and magnetism are left out.
+
+    Parameters
+    ----------
+    fragment, coordination, electrons, table, settings, options
+        As in `known_report`.
+    symmetries : tuple of Symmetry
+        Of the spheres, see `sphere_symmetries`.
+
+    Returns
+    -------
+    report : BondReport
+
+    Raises
+    ------
+    EhmoError
+        See `bond_report`.
+    """
+    bonding = calculate_bonding(fragment, coordination, table, settings, options)
+    sites = metal_sites(fragment, coordination, electrons, bonding, symmetries)
+    irreps = sphere_irreps(sites, bonding)
+    return BondReport(
+        fragment=fragment,
+        coordination=coordination,
+        electrons=electrons,
+        method=_method(table, settings, bonding),
+        basis=bonding.plan.basis,
+        overlap=bonding.overlap.matrix,
+        state=bonding.state,
+        populations=bonding.populations,
+        orders=bonding.orders,
+        molecule_symmetry=None,
+        sites=sites,
+        irreps=irreps,
+        formal_orders=(None,) * len(coordination.bonds),
+        reactivity=(),
+        spectroscopy=spectroscopy(
+            fragment, coordination, sites, irreps, bonding, table, options, magnetism=False
+        ),
+        health=health_of(coordination, bonding),
+        assumptions=(),
+        warnings=(),
     )
 
 

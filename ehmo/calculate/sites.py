@@ -98,7 +98,11 @@ def shell_spans(symmetry: Symmetry, frame: LocalFrame, l: int) -> tuple[FloatArr
 
 
 def metal_sites(
-    fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, bonding: Bonding
+    fragment: Fragment,
+    coordination: Coordination,
+    electrons: ElectronAssignment,
+    bonding: Bonding,
+    symmetries: tuple[Symmetry, ...] | None = None,
 ) -> tuple[MetalSite, ...]:
     """Symmetry, oxidation state and ladder of each metal.
 
@@ -110,12 +114,15 @@ def metal_sites(
         Charge, oxidation state and d count.
     bonding : Bonding
         Orbitals and overlap populations.
+    symmetries : tuple of Symmetry, optional
+        Of the spheres, where they are known already; their shapes are then not measured again.
 
     Returns
     -------
     sites : tuple of MetalSite
     """
-    symmetries = sphere_symmetries(fragment, coordination)
+    known = symmetries is not None
+    symmetries = symmetries or sphere_symmetries(fragment, coordination)
     found, withheld = site_ladders(coordination, electrons, bonding, symmetries)
     sites = []
     for place, (frame, symmetry) in enumerate(zip(coordination.frames, symmetries, strict=True)):
@@ -129,7 +136,7 @@ def metal_sites(
                 shapes=shape_measures(
                     fragment.positions_A[frame.metal], fragment.positions_A[[bond.donor for bond in bonds]]
                 )
-                if bonds
+                if bonds and not known
                 else (),
                 oxidation_state=state,
                 d_count=electrons.d_electrons,

@@ -1,0 +1,1 @@
+"""Calibration of a parameter set: least squares of chosen parameters against chosen observables."""
