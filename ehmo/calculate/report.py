@@ -159,6 +159,8 @@ def brief_report(
     settings: ModelSettings,
     options: Options,
     symmetries: tuple[Symmetry, ...],
+    *,
+    charge_transfer: bool = True,
 ) -> BondReport:
     """Report with orders, ladders, terms and bands only, for studies that repeat one geometry many times.
 
@@ -170,6 +172,8 @@ def brief_report(
         As in `known_report`.
     symmetries : tuple of Symmetry
         Of the spheres, see `sphere_symmetries`.
+    charge_transfer : bool
+        Whether charge-transfer bands are wanted.
 
     Returns
     -------
@@ -199,7 +203,15 @@ def brief_report(
         formal_orders=(None,) * len(coordination.bonds),
         reactivity=(),
         spectroscopy=spectroscopy(
-            fragment, coordination, sites, irreps, bonding, table, options, magnetism=False
+            fragment,
+            coordination,
+            sites,
+            irreps,
+            bonding,
+            table,
+            options,
+            magnetism=False,
+            charge_transfer=charge_transfer,
         ),
         health=health_of(coordination, bonding),
         assumptions=(),

@@ -45,6 +45,7 @@ def spectroscopy(
     options: Options,
     *,
     magnetism: bool = True,
+    charge_transfer: bool = True,
 ) -> Spectroscopy:
     """Terms, bands and magnetism; what cannot be had is withheld with the reason.
 
@@ -62,6 +63,9 @@ def spectroscopy(
         Racah B, oxidation state and observed bands, if given.
     magnetism : bool
         Whether spin-orbit levels, moment, D, E and g are wanted.
+    charge_transfer : bool
+        Whether charge-transfer bands and oscillator strengths are wanted; they take most of the time where the
+        exponents are new.
 
     Returns
     -------
@@ -73,10 +77,17 @@ def spectroscopy(
     if site.ladder is None:
         return _nothing(f"terms, bands and magnetism: {site.ladder_withheld}")
     shell = _Shell(site, site.ladder, group_axes_in_frame(site.symmetry, frame), fragment.unpaired_electrons or 0)
-    dipoles = dipole_integrals(bonding.plan, table, fragment.positions_A, bonding.overlap.matrix)
+    n = len(bonding.plan.basis)
+    dipoles = (
+        dipole_integrals(bonding.plan, table, fragment.positions_A, bonding.overlap.matrix)
+        if charge_transfer
+        else np.zeros((3, n, n))
+    )
     found = _shell_results(
         fragment, shell, _ladder_dipoles(site.ladder, bonding, dipoles), options, with_magnetism=magnetism
     )
+    if not charge_transfer:
+        return replace(found, bands=tuple(replace(band, oscillator_strength=None) for band in found.bands))
     labels = OrbitalLabels(site.symmetry.group, irreps.labels if irreps else ("",) * len(bonding.state.energies_eV))
     orbitals = [level.orbital for level in site.ladder.levels if level.orbital is not None]
     transfer = charge_transfer_bands(

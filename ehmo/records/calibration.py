@@ -152,6 +152,10 @@ class CalibrationSpec:
         Set that it starts from, by name or path.
     notes : tuple of str
         Remarks for the head of the table.
+    elements : tuple of str
+        Elements of the set; all of the base where empty.
+    source_key : str
+        Where fitted numbers say that they come from.
     parameters : tuple of FreeParameter
     pairs : tuple of FreePair
     observables : tuple of Observable
@@ -173,6 +177,8 @@ class CalibrationSpec:
     edition: str
     base: str
     notes: tuple[str, ...]
+    elements: tuple[str, ...]
+    source_key: str
     parameters: tuple[FreeParameter, ...]
     pairs: tuple[FreePair, ...]
     observables: tuple[Observable, ...]
@@ -279,7 +285,5 @@ class Calibration:
 
 
 def _mean_difference(rows: list[Fitted], name: str) -> float | None:
-    differences = [
-        abs(getattr(row, name) - row.observable.value) for row in rows if getattr(row, name) is not None
-    ]
+    differences = [abs(getattr(row, name) - row.observable.value) for row in rows if getattr(row, name) is not None]
     return sum(differences) / len(differences) if differences else None

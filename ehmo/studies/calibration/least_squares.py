@@ -12,7 +12,7 @@ from ehmo.records.calibration import ElectronicFit
 from ehmo.studies.calibration.residuals import Residuals
 
 MOST_EVALUATIONS = 60
-SETTLED = 1e-4
+SETTLED = 1e-3
 """Relative change of the cost at which the fit counts as done."""
 
 _LEFT_OUT_STEPS = 8
@@ -106,8 +106,7 @@ def covariance(residuals: FloatArray, jacobian: FloatArray) -> FloatArray:
     inverse = np.linalg.inv((jacobian * weights[:, None]).T @ jacobian)
     observed, seen = residuals[:-n], weights[:-n]
     misfit = float((seen * observed**2).sum() / max(len(observed), 1))
-    scaled: FloatArray = inverse * max(1.0, misfit)
-    return scaled
+    return np.asarray(inverse * max(1.0, misfit), dtype=np.float64)
 
 
 def without_species(
@@ -115,7 +114,8 @@ def without_species(
 ) -> tuple[FloatArray, bool]:
     """Parameters fitted without the observables of one species, from the solution for all.
 
-    Gauss-Newton steps with the derivatives of that solution, halved where they raise the cost.
+    Gauss-Newton steps with the derivatives of that solution, halved where they raise the cost; see `Residuals.near`
+    for what is calculated at each step.
 
     Parameters
     ----------
@@ -137,15 +137,15 @@ def without_species(
     bounds = np.array([[p.lowest, p.highest] for p in residuals.parameters]).T
     scale = np.array([p.sd for p in residuals.parameters])
     x, slopes = fit.values.copy(), jacobian[kept]
-    current = residuals.all(x)[kept]
+    origin = residuals.all(x)
+    current = origin[kept]
     cost = robust_cost(current)
     for _ in range(_LEFT_OUT_STEPS):
-        weights = 1 / np.sqrt(1 + current**2)
-        weighted = slopes * weights[:, None]
+        weighted = slopes / np.sqrt(1 + current**2)[:, None]
         step = -np.linalg.solve(weighted.T @ slopes, weighted.T @ current)
         for _ in range(_HALVINGS):
             trial = np.clip(x + step, *bounds)
-            there = residuals.all(trial)[kept]
+            there = residuals.near(trial, fit.values, origin, jacobian, species)[kept]
             new = robust_cost(there)
             if new <= cost:
                 break

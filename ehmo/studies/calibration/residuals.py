@@ -102,5 +102,36 @@ class Residuals:
             found[n + column, column] = 1 / self._prior_sds[column]
         return found
 
+    def near(
+        self, x: FloatArray, origin: FloatArray, there: FloatArray, slopes: FloatArray, species: str
+    ) -> FloatArray:
+        """Residuals near a solution, for a fit without one species.
+
+        Parameters
+        ----------
+        x : (n_parameters,) ndarray
+        origin : (n_parameters,) ndarray
+            The solution.
+        there, slopes : (n,) and (n, n_parameters) ndarray
+            Residuals and derivatives at the solution.
+        species : str
+
+        Returns
+        -------
+        residuals : (n,) ndarray
+            Calculated for the structures that share a metal with the species, whose parameters move most; by the
+            derivatives for all others.
+        """
+        found = there + slopes @ (x - origin)
+        own = {o.structure for o in self.observables if o.species == species}
+        metals = frozenset().union(*(self.structures[name].metals for name in own))
+        table = self.table(x)
+        for name, places in self._places.items():
+            if name not in own and self.structures[name].metals & metals:
+                values = self.structures[name].values(table, self._of(places))
+                differences = (values - self._targets[places]) / self._sds[places]
+                found[places] = np.nan_to_num(differences, nan=self.unsettled)
+        return found
+
     def _of(self, places: IntArray) -> Sequence[Observable]:
         return [self.observables[place] for place in places.tolist()]

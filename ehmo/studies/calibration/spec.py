@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import math
 import tomllib
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
@@ -13,13 +13,17 @@ from basis_params import ParameterTable
 from ehmo.errors import InputError
 from ehmo.orbitals.parameters import element_parameters, load_parameters
 from ehmo.records.calibration import QUANTITIES, CalibrationSpec, FreePair, FreeParameter, Quantity
+from ehmo.studies.calibration.keys import Keys
 from ehmo.studies.calibration.observables import read_observables
 
 MAX_BYTES = 1_000_000
 CONSTANTS = ("K", "K_sigma", "K_pi", "K_delta", "K_decay_per_A", "lambda")
 KINDS = ("h_ii", "zeta", *CONSTANTS)
 
-_TOP = ("name", "edition", "base", "notes", "observables", "structures", "margin_A", "unsettled")
+_TOP = (
+    *("name", "edition", "base", "notes", "elements", "source_key"),
+    *("observables", "structures", "margin_A", "unsettled"),
+)
 _TABLES = ("sd", "oxidation_states", "fit", "repulsion")
 _FIT = ("parameter", "of", "together", "start", "sd", "lowest", "highest")
 _REPULSION = ("pairs", "decay_per_A", "decay_sd")
@@ -51,8 +55,9 @@ def read_spec(path: str | Path) -> CalibrationSpec:
         content = tomllib.loads(text)
     except tomllib.TOMLDecodeError as fault:
         raise InputError(f"not valid TOML: {fault}", place=str(path), mend="correct that line") from None
-    keys = _Keys(str(path), content)
+    keys = Keys(str(path), content)
     keys.only((*_TOP, *_TABLES))
+    name = keys.text("name")
     base_name = keys.text("base", "standard")
     base = load_parameters(base_name if not _is_file(path, base_name) else str(path.parent / base_name))
     sds = _scales(keys)
@@ -68,10 +73,12 @@ def read_spec(path: str | Path) -> CalibrationSpec:
     _distinct([parameter.name for parameter in parameters], keys, "fit")
     _distinct([pair.label for pair in pairs], keys, "repulsion")
     return CalibrationSpec(
-        name=keys.text("name"),
+        name=name,
         edition=keys.text("edition", "1"),
         base=base_name,
-        notes=tuple(keys.texts("notes", ())),
+        notes=keys.texts("notes", ()),
+        elements=_elements(keys, base),
+        source_key=keys.text("source_key", f"{name}-calibration"),
         parameters=parameters,
         pairs=pairs,
         observables=observables,
@@ -82,86 +89,6 @@ def read_spec(path: str | Path) -> CalibrationSpec:
         place=str(path),
         sha256=hashlib.sha256("\0".join(hashed).encode()).hexdigest(),
     )
-
-
-class _Keys:
-    """Values of one TOML table, checked as they are taken; faults name the key."""
-
-    def __init__(self, place: str, content: Mapping[str, Any], where: str = "") -> None:
-        self._place, self._content, self.where = place, content, where
-
-    def fault(self, key: str, fault: str, mend: str) -> InputError:
-        """Error that names the key."""
-        return InputError(f"{self.where}{key}: {fault}", place=self._place, mend=mend)
-
-    def only(self, known: tuple[str, ...]) -> None:
-        """Refuse keys that mean nothing."""
-        for key in self._content:
-            if key not in known:
-                raise self.fault(key, "unknown key", f"known keys are {', '.join(known)}")
-
-    def has(self, key: str) -> bool:
-        """Whether the key is given."""
-        return key in self._content
-
-    def text(self, key: str, default: str | None = None) -> str:
-        """One line of text."""
-        value = self._content.get(key, default)
-        if not isinstance(value, str) or not value.strip() or not value.isprintable():
-            raise self.fault(key, "missing, or no line of text", f'write {key} = "..."')
-        return value
-
-    def texts(self, key: str, default: tuple[str, ...] | None = None) -> tuple[str, ...]:
-        """List of texts; one text counts as a list of one."""
-        value = self._content.get(key, default)
-        listed = [value] if isinstance(value, str) else list(value) if isinstance(value, list | tuple) else None
-        if listed is None or (not listed and default is None) or not all(_is_line(text) for text in listed):
-            raise self.fault(key, "missing, or no list of texts", f'write {key} = ["...", "..."]')
-        return tuple(listed)
-
-    def number(
-        self, key: str, default: float | None = None, *, lowest: float = -math.inf, above: float = -math.inf
-    ) -> float:
-        """Finite number within bounds."""
-        value = self._content.get(key, default)
-        if isinstance(value, bool) or not isinstance(value, int | float) or not math.isfinite(value):
-            raise self.fault(key, "missing, or no finite number", f"write {key} = 1.0 or the like")
-        if value < lowest or value <= above:
-            limit = f"at least {lowest:g}" if value < lowest else f"above {above:g}"
-            raise self.fault(key, f"{value:g} is out of range", f"it must be {limit}")
-        return float(value)
-
-    def flag(self, key: str) -> bool:
-        """Whether a choice is on."""
-        value = self._content.get(key, False)
-        if not isinstance(value, bool):
-            raise self.fault(key, "neither true nor false", f"write {key} = true")
-        return value
-
-    def table(self, key: str) -> _Keys:
-        """Table within."""
-        value = self._content.get(key, {})
-        if not isinstance(value, dict):
-            raise self.fault(key, "no table", f"write [{key}] and keys below it")
-        return _Keys(self._place, value, f"{key}.")
-
-    def items(self) -> Iterator[tuple[str, Any]]:
-        """Keys and raw values."""
-        return iter(self._content.items())
-
-    def entries(self, key: str, known: tuple[str, ...]) -> Iterator[_Keys]:
-        """Entries of an array of tables, counted from 1 in messages."""
-        value = self._content.get(key, [])
-        if not isinstance(value, list) or not all(isinstance(entry, dict) for entry in value):
-            raise self.fault(key, "no list of tables", f"write [[{key}]] and keys below it")
-        for count, entry in enumerate(value, start=1):
-            keys = _Keys(self._place, entry, f"{key} {count}, ")
-            keys.only(known)
-            yield keys
-
-
-def _is_line(text: object) -> bool:
-    return isinstance(text, str) and bool(text.strip()) and text.isprintable()
 
 
 def _text(path: Path) -> str:
@@ -178,14 +105,21 @@ def _is_file(path: Path, name: str) -> bool:
     return name.endswith(".csv") and (path.parent / name).is_file()
 
 
-def _scales(keys: _Keys) -> dict[Quantity, float]:
+def _scales(keys: Keys) -> dict[Quantity, float]:
     """What counts as one standard deviation, by quantity."""
     table = keys.table("sd")
     table.only(QUANTITIES)
     return {quantity: table.number(quantity, above=0.0) for quantity in QUANTITIES if table.has(quantity)}
 
 
-def _oxidation_states(keys: _Keys) -> dict[str, int]:
+def _elements(keys: Keys, base: ParameterTable) -> tuple[str, ...]:
+    elements = keys.texts("elements", ())
+    for symbol in elements:
+        element_parameters(base, symbol)
+    return elements
+
+
+def _oxidation_states(keys: Keys) -> dict[str, int]:
     table = keys.table("oxidation_states")
     for name, state in table.items():
         if isinstance(state, bool) or not isinstance(state, int):
@@ -193,7 +127,7 @@ def _oxidation_states(keys: _Keys) -> dict[str, int]:
     return dict(table.items())
 
 
-def _parameters(entry: _Keys, base: ParameterTable) -> Iterator[FreeParameter]:
+def _parameters(entry: Keys, base: ParameterTable) -> Iterator[FreeParameter]:
     kind = entry.text("parameter")
     if kind not in KINDS:
         raise entry.fault("parameter", f"{kind!r} cannot be fitted", f"choose from {', '.join(KINDS)}")
@@ -210,7 +144,7 @@ def _parameters(entry: _Keys, base: ParameterTable) -> Iterator[FreeParameter]:
 
 
 def _parameter(
-    entry: _Keys, key: str, kind: Any, shells: tuple[tuple[str, int, int], ...], default: float, *, floor: float
+    entry: Keys, key: str, kind: Any, shells: tuple[tuple[str, int, int], ...], default: float, *, floor: float
 ) -> FreeParameter:
     start, sd = entry.number("start", default), entry.number("sd", above=0.0)
     lowest = entry.number("lowest", max(start - _SPREAD * sd, floor))
@@ -227,7 +161,7 @@ def _constant(base: ParameterTable, key: str) -> float:
     return float(base.settings.K if value is None else value)
 
 
-def _shell(entry: _Keys, base: ParameterTable, words: str) -> tuple[str, int, int]:
+def _shell(entry: Keys, base: ParameterTable, words: str) -> tuple[str, int, int]:
     symbol, _, label = words.partition(" ")
     for shell in element_parameters(base, symbol).shells:
         if shell.label == label:
@@ -235,17 +169,15 @@ def _shell(entry: _Keys, base: ParameterTable, words: str) -> tuple[str, int, in
     raise entry.fault("of", f"the base has no shell {words!r}", "write element and shell, as in V 3d")
 
 
-def _pairs(entry: _Keys) -> Iterator[FreePair]:
+def _pairs(entry: Keys) -> Iterator[FreePair]:
     for words in entry.texts("pairs"):
         first, _, second = words.partition("-")
         if not first or not second:
             raise entry.fault("pairs", f"{words!r} is no pair of elements", "write them as in V-O")
-        yield FreePair(
-            first, second, entry.number("decay_per_A", above=0.0), entry.number("decay_sd", 0.0, lowest=0.0)
-        )
+        yield FreePair(first, second, entry.number("decay_per_A", above=0.0), entry.number("decay_sd", 0.0, lowest=0.0))
 
 
-def _distinct(names: list[str], keys: _Keys, key: str) -> None:
+def _distinct(names: list[str], keys: Keys, key: str) -> None:
     for name in names:
         if names.count(name) > 1:
             raise keys.fault(key, f"{name} is listed twice", "keep one entry")

@@ -47,15 +47,26 @@ class TrainingStructure:
     symmetries: tuple[Symmetry, ...]
     elements: frozenset[str]
 
-    def report(self, table: ParameterTable) -> BondReport:
+    @property
+    def metals(self) -> frozenset[str]:
+        """Elements of the metals."""
+        return frozenset(self.fragment.symbols[metal] for metal in self.coordination.metals)
+
+    def report(self, table: ParameterTable, *, charge_transfer: bool = True) -> BondReport:
         """Orders, charges, ladder and bands with one set of parameters; see `brief_report`."""
         options = Options()
         part = ParameterTable(
             table.name, table.edition, table.settings, {symbol: table.elements[symbol] for symbol in self.elements}
         )
-        settings = effective_settings(part.settings, options)
         return brief_report(
-            self.fragment, self.coordination, self.electrons, part, settings, options, self.symmetries
+            self.fragment,
+            self.coordination,
+            self.electrons,
+            part,
+            effective_settings(part.settings, options),
+            options,
+            self.symmetries,
+            charge_transfer=charge_transfer,
         )
 
     def values(self, table: ParameterTable, observables: Sequence[Observable]) -> FloatArray:
@@ -73,7 +84,8 @@ class TrainingStructure:
             In the units of the observables.
         """
         try:
-            report = self.report(table)
+            transfer = any(observable.quantity == "charge-transfer band" for observable in observables)
+            report = self.report(table, charge_transfer=transfer)
         except EhmoError:
             return np.full(len(observables), np.nan)
         return np.array([observed(report, observable) for observable in observables], dtype=float)
