@@ -6,8 +6,9 @@ from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.health import health_of, health_warnings
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
+from ehmo.calculate.parted import parted_orbitals
 from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings, spectrum_warnings
-from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders, sphere_irreps
+from ehmo.calculate.sites import metal_sites, molecule_irreps, molecule_symmetry, site_formal_orders, sphere_irreps
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError, InputError
@@ -113,6 +114,14 @@ def known_report(
         bonding = calculate_bonding(fragment, coordination, table, settings, options)
     sites = metal_sites(fragment, coordination, electrons, bonding)
     irreps = sphere_irreps(sites, bonding)
+    parted = None
+    if irreps is not None:
+        parted = parted_orbitals(fragment, coordination, sites[0].symmetry, irreps, bonding)
+    if parted is not None:
+        bonding = parted
+        sites = metal_sites(fragment, coordination, electrons, bonding)
+        irreps = sphere_irreps(sites, bonding)
+    whole = molecule_symmetry(fragment)
     spectrum = spectroscopy(fragment, coordination, sites, irreps, bonding, table, options)
     health = health_of(coordination, bonding)
     return BondReport(
@@ -125,9 +134,10 @@ def known_report(
         state=bonding.state,
         populations=bonding.populations,
         orders=bonding.orders,
-        molecule_symmetry=molecule_symmetry(fragment),
+        molecule_symmetry=whole,
         sites=sites,
         irreps=irreps,
+        molecule_irreps=molecule_irreps(whole, bonding) if irreps is None else None,
         formal_orders=site_formal_orders(fragment, coordination, sites),
         reactivity=donor_reactivity(
             coordination.bonds,

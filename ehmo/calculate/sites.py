@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from ehmo.analysis.angular_overlap import angular_overlap, crystal_field_parameters
@@ -9,7 +11,7 @@ from ehmo.analysis.formal_order import formal_orders
 from ehmo.analysis.ladder import LadderError, ladders
 from ehmo.analysis.pi_planes import pi_normals
 from ehmo.analysis.symmetry import find_symmetry, functions_of_atoms, lowdin_rows, orbital_irreps, shape_measures
-from ehmo.analysis.symmetry.parts import shell_parts
+from ehmo.analysis.symmetry.parts import shell_part_irreps, shell_parts
 from ehmo.calculate.numbers import Bonding
 from ehmo.conventions import ELEMENT_SYMBOLS
 from ehmo.harmonics import harmonic_rotations
@@ -141,7 +143,7 @@ def metal_sites(
                 oxidation_state=state,
                 d_count=electrons.d_electrons,
                 bond_valence_sum=bond_valence_sum(fragment, coordination, frame.metal, state),
-                ladder=ladder,
+                ladder=None if ladder is None else _with_irreps(ladder, symmetry, frame),
                 ladder_withheld="" if ladder is not None else withheld,
                 parameters=None if ladder is None else _parameters(fragment, coordination, frame, symmetry, ladder),
             )
@@ -190,6 +192,21 @@ def site_ladders(
     return tuple(by_metal.get(frame.metal) for frame in coordination.frames), "no donors" if lonely else ""
 
 
+def _with_irreps(ladder: Ladder, symmetry: Symmetry, frame: LocalFrame) -> Ladder:
+    """Ladder whose levels carry the irrep that their functions have at the metal in the group of its sphere."""
+    l = ladder.angular_momentum
+    turn = harmonic_rotations(group_axes_in_frame(symmetry, frame).T[None], l)[0]
+    names = shell_part_irreps(symmetry.group, l)
+    shares = np.array(
+        [(((turn @ part).T @ ladder.vectors) ** 2).sum(axis=0) for part in shell_parts(symmetry.group, l)]
+    )
+    levels = tuple(
+        replace(level, irrep=names[int(share.argmax())], irrep_share=float(share.max()))
+        for level, share in zip(ladder.levels, shares.T, strict=True)
+    )
+    return replace(ladder, levels=levels)
+
+
 def _shell_momentum(bonding: Bonding, frame: LocalFrame) -> int:
     """Angular momentum of the shell whose ladder is asked for: f where the metal has f functions."""
     return 3 if 3 in bonding.plan.basis.layouts[frame.metal] else 2
@@ -205,6 +222,15 @@ def sphere_irreps(sites: tuple[MetalSite, ...], bonding: Bonding) -> OrbitalIrre
     lowdin = bonding.bonded.lowdin_orbitals
     if len(lowdin) != len(rows):
         lowdin = lowdin_rows(bonding.overlap, rows, bonding.state.coefficients)
+    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
+
+
+def molecule_irreps(symmetry: Symmetry | None, bonding: Bonding) -> OrbitalIrreps | None:
+    """Irreps of all orbitals in the group of the whole molecule; None in C1 or without its symmetry."""
+    if symmetry is None or symmetry.group.name == "C1":
+        return None
+    basis = bonding.plan.basis
+    lowdin = lowdin_rows(bonding.overlap, functions_of_atoms(basis, symmetry.atoms), bonding.state.coefficients)
     return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
 
 

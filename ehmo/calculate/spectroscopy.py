@@ -11,6 +11,7 @@ from basis_params import ParameterTable
 from ehmo.analysis.band_fit import FieldModel, fit_bands
 from ehmo.analysis.bands import SAME_TERM_PER_CM, OrbitalLabels, charge_transfer_bands, shell_bands
 from ehmo.analysis.multiplets import (
+    configuration_terms,
     d1_square_pyramid_g,
     magnetic_properties,
     multiplet_terms,
@@ -31,6 +32,9 @@ from ehmo.records.site import MetalSite, ShellConstants, Spectroscopy
 from ehmo.records.symmetry import OrbitalIrreps
 from ehmo.structure.elements import F_BLOCK
 from ehmo.units import PER_CM_PER_EV
+
+_WHOLE = 0.01
+"""Electrons of a level farther than this from a whole number make no configuration."""
 
 _TETRAGONAL = ("C4v", "D4h", "D4", "C4")
 
@@ -112,7 +116,9 @@ def _shell_results(
         constants, repulsion = _constants(fragment, shell.site, shell.ladder, shell.n_electrons, options)
         terms = multiplet_terms(shell.ladder.field_eV, shell.n_electrons, repulsion, group, shell.group_axes)
     except EhmoError as error:
-        return _nothing(f"terms, bands within the shell and magnetism: {error}")
+        return replace(
+            _nothing(f"terms, bands within the shell and magnetism: {error}"), ground_term=_term_by_symmetry(shell)
+        )
     ground = terms.lowest(shell.unpaired + 1)
     if ground is None:
         return replace(
@@ -149,6 +155,30 @@ def _shell_results(
         fit=fit,
         withheld=tuple(withheld),
     )
+
+
+def _term_by_symmetry(shell: _Shell) -> str:
+    """Ground term that the filling of the ladder alone allows, with as many unpaired electrons; empty if not one."""
+    group = shell.site.symmetry.group
+    sizes = dict(zip(group.irreps, group.dimensions.tolist(), strict=True))
+    configuration, left = [], list(shell.ladder.levels)
+    while left:
+        irrep = left[0].irrep
+        members, left = left[: sizes.get(irrep, 1)], left[sizes.get(irrep, 1) :]
+        held = sum(level.electrons for level in members)
+        if {level.irrep for level in members} != {irrep} or len(members) != sizes.get(irrep):
+            return ""
+        if abs(held - round(held)) > _WHOLE:
+            return ""
+        configuration.append((irrep, round(held)))
+    if sum(count for _, count in configuration) != shell.n_electrons:
+        return ""
+    found = {
+        f"{multiplicity}{irrep}"
+        for multiplicity, irrep, _ in configuration_terms(group, configuration)
+        if multiplicity == shell.unpaired + 1
+    }
+    return found.pop() if len(found) == 1 else ""
 
 
 def _ground_labels(terms: Terms, ground: Term) -> str:

@@ -31,6 +31,10 @@ class LadderLevel:
         Whether its bonding partner has more of the metal's shell.
     partner_share : float
         Largest part of the metal's shell in a bonding partner.
+    irrep : str
+        Irrep of the level's functions at the metal in the group of its idealised sphere; empty if not asked for.
+    irrep_share : float
+        Its part of them.
     """
 
     function: str
@@ -43,6 +47,8 @@ class LadderLevel:
     overlap_population: float
     inverted: bool
     partner_share: float
+    irrep: str = ""
+    irrep_share: float = 1.0
 
 
 @dataclass(frozen=True, slots=True, eq=False)

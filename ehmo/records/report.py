@@ -104,6 +104,8 @@ class BondReport:
         Symmetry, oxidation state and ladder of each metal.
     irreps : OrbitalIrreps or None
         Labels of the orbitals in the group of the idealised sphere; None for several metals.
+    molecule_irreps : OrbitalIrreps or None
+        For several metals the labels in the group of the whole molecule; None where that is C1 or not known.
     formal_orders : tuple of FormalOrder or None
         Textbook order of each bond, None where no ladder tells it.
     reactivity : tuple of DonorReactivity
@@ -139,6 +141,12 @@ class BondReport:
     assumptions: tuple[str, ...]
     warnings: tuple[str, ...]
     spread: Spread | None = None
+    molecule_irreps: OrbitalIrreps | None = None
+
+    @property
+    def orbital_irreps(self) -> OrbitalIrreps | None:
+        """Labels of the orbitals in the group of the sphere or, with several metals, of the whole molecule."""
+        return self.molecule_irreps if self.irreps is None else self.irreps
 
     def bonds(self) -> Iterator[tuple[MetalDonorBond, BondOrders]]:
         """Each metal-donor bond with its orders."""

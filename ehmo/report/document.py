@@ -149,7 +149,7 @@ def _method(report: BondReport) -> dict[str, Any]:
 def _orbitals(report: BondReport) -> list[dict[str, Any]]:
     composition = report.populations.orbital_shares
     overlap = report.orbital_overlap()
-    occupations, irreps = report.state.occupations, report.irreps
+    occupations, irreps = report.state.occupations, report.orbital_irreps
     return [
         {
             "energy_eV": report.state.energies_eV[k],

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from ehmo.records.bands import BandFit
+from ehmo.records.ligand_field import LadderLevel
 from ehmo.records.multiplets import GTensor, Magnetism, Terms
 from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite, ShellConstants
@@ -61,7 +62,6 @@ def ladder_part(report: BondReport, site: MetalSite) -> dict[str, Any]:
     if ladder is None:
         return part
     lowest = ladder.levels[0].energy_eV
-    irreps = report.irreps
     part |= {
         "shell": ladder.shell,
         "selection": ladder.selection,
@@ -69,7 +69,7 @@ def ladder_part(report: BondReport, site: MetalSite) -> dict[str, Any]:
         "reference_eV": ladder.reference_eV,
         "levels": [
             {
-                "irrep": None if irreps is None or level.orbital is None else irreps.labels[level.orbital],
+                "irrep": _level_irrep(report, level),
                 "function": level.function,
                 "function_share": level.function_share,
                 "energy_eV": level.energy_eV,
@@ -101,6 +101,13 @@ def ladder_part(report: BondReport, site: MetalSite) -> dict[str, Any]:
             "misfit_per_cm": parameters.rms_per_cm,
         }
     return part
+
+
+def _level_irrep(report: BondReport, level: LadderLevel) -> str | None:
+    """Irrep of the orbital; where several metals share the orbitals, of the level's functions at the metal."""
+    if report.irreps is None or level.orbital is None:
+        return level.irrep or None
+    return report.irreps.labels[level.orbital]
 
 
 def spectroscopy_part(report: BondReport) -> dict[str, Any]:

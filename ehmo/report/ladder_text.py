@@ -38,10 +38,14 @@ BAND_NUMBERS = (0, 4, 7)
 
 def orbital_irrep(report: BondReport, orbital: int) -> str:
     """Irrep of an orbital, with its share where the structure is distorted."""
-    if report.irreps is None or not report.irreps.labels[orbital]:
+    irreps = report.orbital_irreps
+    if irreps is None or not irreps.labels[orbital]:
         return "-"
-    share = float(report.irreps.label_shares[orbital])
-    return report.irreps.labels[orbital] + ("" if share >= PURE else f" {100 * share:.0f} %")
+    return _with_share(irreps.labels[orbital], float(irreps.label_shares[orbital]))
+
+
+def _with_share(irrep: str, share: float) -> str:
+    return irrep + ("" if share >= PURE else f" {100 * share:.0f} %")
 
 
 def ladder_lines(report: BondReport, site: MetalSite) -> list[str]:
@@ -79,7 +83,9 @@ def ladder_rows(report: BondReport, site: MetalSite) -> list[list[str]]:
     spreads = report.level_spreads(site)
     for place, level in reversed(list(enumerate(ladder.levels))):
         own = spreads[place] if spreads else None
-        label = "-" if level.orbital is None else orbital_irrep(report, level.orbital)
+        # Levels that several metals share are no orbitals: their functions tell the irrep.
+        own_label = _with_share(level.irrep, level.irrep_share) or "-"
+        label = own_label if level.orbital is None else orbital_irrep(report, level.orbital)
         rows.append(
             [
                 label,

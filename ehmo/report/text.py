@@ -270,9 +270,8 @@ def _frontier(report: BondReport) -> list[str]:
     """Orbitals round the highest one that holds electrons, topmost first."""
     state = report.state
     top, bottom = min(state.homo + _FRONTIER, len(state.energies_eV) - 1), max(state.homo - _FRONTIER, -1)
-    heading = (
-        "Frontier orbitals (overlap population for two electrons, positive = bonding; irreps of the idealised sphere)"
-    )
+    judged = "the idealised sphere" if report.molecule_irreps is None else "the whole molecule"
+    heading = f"Frontier orbitals (overlap population for two electrons, positive = bonding; irreps of {judged})"
     rows = orbital_rows(report, range(top, bottom, -1))
     return [heading, *axes_in_words(report), *aligned(rows, numeric=ORBITAL_NUMBERS, indent="  ")]
 

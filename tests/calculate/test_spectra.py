@@ -46,6 +46,7 @@ GROUND_TERMS = {
     "[Co(NH3)6]3+": "1A1g",
     "[CoCl4]2-": "4A2",
     "UO2 2+": "1Σg+",
+    "Cr(CO)6": "1A1g",  # no Racah constants of Cr(0): by the filled t2g alone
 }
 
 

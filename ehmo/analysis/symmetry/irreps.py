@@ -72,7 +72,7 @@ def orbital_irreps(
     -------
     irreps : OrbitalIrreps
         Where a degenerate set holds several irreps, as f delta and f phi of a linear ion do, its labels stand in
-        the order of the table and belong to combinations within the set.
+        the order of the table and belong to the combinations that `parting_turns` makes.
 
     Raises
     ------
@@ -96,6 +96,42 @@ def orbital_irreps(
         names[k] if part >= SMALLEST_PART else "" for k, part in zip(shares.argmax(axis=1), parts, strict=True)
     )
     return OrbitalIrreps(labels, shares, parts)
+
+
+def parting_turns(
+    symmetry: Symmetry,
+    basis: Basis,
+    lowdin_orbitals: FloatArray,
+    energies_eV: FloatArray,
+    degeneracy_tolerance_eV: float = DEGENERACY_TOLERANCE_EV,
+) -> tuple[tuple[slice, FloatArray], ...]:
+    """Turns of the orbitals within degenerate sets of several irreps, after which each orbital has one of them.
+
+    Parameters
+    ----------
+    symmetry, basis, lowdin_orbitals, energies_eV, degeneracy_tolerance_eV
+        As in `orbital_irreps`.
+
+    Returns
+    -------
+    turns : tuple of (slice, ndarray)
+        Orbitals of each such set, and the orthogonal matrix that their columns are multiplied with from the right.
+    """
+    rows = functions_of_atoms(basis, symmetry.atoms)
+    chosen = lowdin_orbitals[rows] if len(lowdin_orbitals) == len(basis) else lowdin_orbitals
+    adapted = adapted_functions(symmetry, basis)
+    starts = np.flatnonzero(np.diff(energies_eV, prepend=-np.inf) > degeneracy_tolerance_eV)
+    turns = []
+    for first, stop in zip(starts, np.append(starts[1:], len(energies_eV)), strict=True):
+        if stop - first == 1:
+            continue
+        components = adapted.combinations.T @ _in_group_axes(chosen[:, first:stop], basis, symmetry)
+        turn = _parting(components, adapted)
+        if turn is None or len(np.unique((adapted.membership @ (components @ turn) ** 2).argmax(axis=0))) == 1:
+            continue
+        left, _, right = np.linalg.svd(turn)
+        turns.append((slice(int(first), int(stop)), left @ right))
+    return tuple(turns)
 
 
 def _in_group_axes(orbitals: FloatArray, basis: Basis, symmetry: Symmetry) -> FloatArray:
@@ -132,12 +168,20 @@ def _part_mixed_sets(shares: FloatArray, components: FloatArray, adapted: Adapte
     several = (shares[starts] > _MIXED).sum(axis=1) > 1
     for first, stop in zip(starts[several], stops[several], strict=True):
         held = components[:, first:stop]
-        metric = held.T @ held
-        if stop - first == 1 or np.linalg.eigvalsh(metric)[0] < SMALLEST_PART:
+        turn = _parting(held, adapted)
+        if turn is None:
             continue
-        # Eigenvectors of the numbered projectors are combinations of one irrep each, as far as that is possible.
-        _, turn = eigh(held.T @ (adapted.irrep_of[:, None] * held), metric)
         parted = (adapted.membership @ (held @ turn) ** 2).T
         labels = parted.argmax(axis=1)
         for label in np.unique(labels):
             shares[first:stop][labels == label] = parted[labels == label].mean(axis=0)
+
+
+def _parting(held: FloatArray, adapted: AdaptedFunctions) -> FloatArray | None:
+    """Combinations of a degenerate set with one irrep each; None if some of it is not on the atoms judged."""
+    metric = held.T @ held
+    if held.shape[1] == 1 or np.linalg.eigvalsh(metric)[0] < SMALLEST_PART:
+        return None
+    # Eigenvectors of the numbered projectors are combinations of one irrep each, as far as that is possible.
+    turn: FloatArray = eigh(held.T @ (adapted.irrep_of[:, None] * held), metric)[1]
+    return turn

@@ -29,14 +29,33 @@ def shell_parts(group: PointGroup, l: int) -> tuple[FloatArray, ...]:
     return _parts(group.name, l)
 
 
-@lru_cache(maxsize=256)
+def shell_part_irreps(group: PointGroup, l: int) -> tuple[str, ...]:
+    """Irreps of the parts of `shell_parts`, in their order.
+
+    Parameters
+    ----------
+    group : PointGroup
+    l : int
+
+    Returns
+    -------
+    irreps : tuple of str
+    """
+    return tuple(irrep for irrep, part in zip(group.irreps, _spaces(group.name, l), strict=True) if part.shape[1])
+
+
 def _parts(name: str, l: int) -> tuple[FloatArray, ...]:
+    return tuple(part for part in _spaces(name, l) if part.shape[1])
+
+
+@lru_cache(maxsize=256)
+def _spaces(name: str, l: int) -> tuple[FloatArray, ...]:
+    """The part of each irrep of the table, empty ones included."""
     projectors = np.tensordot(point_group(name).projection_weights, shell_operations(name, l), axes=1)
     parts = []
     for projector in projectors:
         eigenvalues, vectors = np.linalg.eigh((projector + projector.T) / 2)
-        if (eigenvalues > 0.5).any():
-            part = vectors[:, eigenvalues > 0.5]
-            part.setflags(write=False)
-            parts.append(part)
+        part = vectors[:, eigenvalues > 0.5]
+        part.setflags(write=False)
+        parts.append(part)
     return tuple(parts)
