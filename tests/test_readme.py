@@ -37,7 +37,16 @@ def test_commands_parse(command):
     assert callable(_parser().parse_args(shlex.split(command)[1:]).handler)
 
 
-FREE_KEYS = {"metal_hybrid", "donor_hybrid", "configuration", "crystal_field_per_cm", "doublet_g_tensor", "constants"}
+FREE_KEYS = {
+    "metal_hybrid",
+    "donor_hybrid",
+    "configuration",
+    "crystal_field_per_cm",
+    "doublet_g_tensor",
+    "constants",
+} | {
+    *("shell_shares", "shell_populations", "functions", "overlap_by_shells", "overlap_by_irrep"),
+}
 """Fields whose keys are names of shells, levels or parameters, or are described elsewhere."""
 
 
@@ -69,7 +78,18 @@ def test_every_part_of_the_document_is_described(document):
 @pytest.mark.parametrize(
     "key",
     [
-        *("fragment", "method", "symmetry", "orbitals", "atoms", "ligands", "bonds", "ladder", "shell_constants"),
+        *(
+            "fragment",
+            "method",
+            "symmetry",
+            "orbitals",
+            "atoms",
+            "populations_by_irrep",
+            "ligands",
+            "bonds",
+            "ladder",
+            "shell_constants",
+        ),
         *("terms", "bands", "g_tensor", "magnetism", "band_fit", "local_frames", "health", "assumptions"),
         "spread",
     ],

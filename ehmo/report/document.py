@@ -13,6 +13,7 @@ from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.report import BondReport
 from ehmo.report.cautions import CAUTIONS
 from ehmo.report.ladder_document import ladder_part, spectroscopy_part, symmetry_part
+from ehmo.report.population_document import irrep_populations, orbital_shells, overlap_parts, shell_parts
 from ehmo.report.spread_document import atom_spread, bond_spread, health_part, orbital_spread, spread_part
 
 SCHEMA = "ehmo bond report 1"
@@ -43,6 +44,7 @@ def bond_document(report: BondReport) -> dict[str, Any]:
             "d_count": report.electrons.d_electrons,
             "orbitals": _orbitals(report),
             "atoms": _atoms(report),
+            "populations_by_irrep": irrep_populations(report),
             "ligands": _ligands(report),
             "bonds": [_bond(report, place) for place in report.distinct_bonds()],
             "ladder": [ladder_part(report, site) for site in report.sites],
@@ -149,7 +151,7 @@ def _method(report: BondReport) -> dict[str, Any]:
 def _orbitals(report: BondReport) -> list[dict[str, Any]]:
     composition = report.populations.orbital_shares
     overlap = report.orbital_overlap()
-    occupations, irreps = report.state.occupations, report.orbital_irreps
+    occupations, irreps, shells = report.state.occupations, report.orbital_irreps, orbital_shells(report)
     return [
         {
             "energy_eV": report.state.energies_eV[k],
@@ -160,6 +162,7 @@ def _orbitals(report: BondReport) -> list[dict[str, Any]]:
             "donor_share": composition[k, 1],
             "other_share": composition[k, 2],
             "metal_donor_overlap_population_per_two_electrons": overlap[k],
+            "shell_shares": shells[k],
             "spread": orbital_spread(report, k),
         }
         for k in range(len(composition))
@@ -176,6 +179,7 @@ def _atoms(report: BondReport) -> list[dict[str, Any]]:
             "gross_population": report.basis.core_charges[k] - populations.charges[k],
             "net_population": net[k],
             "spin_population": populations.spin[k],
+            "shells": shell_parts(report, k),
             "spread": atom_spread(report, k),
         }
         for k, label in enumerate(report.fragment.labels)
@@ -209,6 +213,7 @@ def _bond(report: BondReport, place: int) -> dict[str, Any]:
         "multiplicity": None if crystal is None else crystal.bond_multiplicity(bond.metal, bond.donor),
         "bond_valence": bond.bond_valence,
         "overlap_population": orders.overlap_population,
+        **overlap_parts(report, place),
         "mayer": orders.mayer,
         "wiberg": orders.wiberg,
         "formal_order": None if formal is None else float(formal.order),
