@@ -34,3 +34,9 @@ ATOMIC_MASS_KG = 1.66053906892e-27
 
 PER_CM_PER_ROOT_EV_A2_U = (NEWTON_PER_M_PER_EV_A2 / ATOMIC_MASS_KG) ** 0.5 / (2 * pi * 2.99792458e10)
 """Wavenumber of a mass of 1 u on a force constant of 1 eV/angstrom^2 [cm^-1]."""
+
+STRENGTH_PER_ABSORPTIVITY = 4.318999188e-9
+"""Oscillator strength of a band whose molar absorptivity, integrated over wavenumbers, is 1 L mol^-1 cm^-2.
+
+4 epsilon_0 m_e c^2 ln 10 / (N_A e^2): classical oscillators that follow the law of Lambert and Beer.
+"""

@@ -147,7 +147,7 @@ def points_done(text: str, place: str, scan: Scan) -> tuple[ScanPoint, ...]:
     try:
         document = json.loads(text)
         same = {key: document[key] for key in _IDENTITY}
-        points = tuple(_point_back(point) for point in document["points"])
+        points = tuple(point_from_document(point) for point in document["points"])
     except (ValueError, KeyError, TypeError, IndexError) as error:
         raise InputError(
             f"no scan to continue ({type(error).__name__})", place=place, mend="give another --json file"
@@ -179,7 +179,14 @@ _IDENTITY = (
 )
 
 
-def _point_back(point: dict[str, Any]) -> ScanPoint:
+def point_from_document(point: dict[str, Any]) -> ScanPoint:
+    """Point of a scan from its part of the document.
+
+    Raises
+    ------
+    ValueError, KeyError, TypeError
+        If it is none.
+    """
     return ScanPoint(
         value=float(point["value"]),
         fault=point["fault"] or "",

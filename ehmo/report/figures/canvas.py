@@ -140,6 +140,12 @@ def paper_axes(figure: Figure) -> Axes:
     return axes
 
 
+def axes_at(figure: Figure, left: float, bottom: float, width: float, height: float) -> Axes:
+    """Axes at a place on paper, from the lower left corner [cm]."""
+    whole_width, whole_height = figure.get_size_inches() * CM_PER_INCH
+    return figure.add_axes((left / whole_width, bottom / whole_height, width / whole_width, height / whole_height))
+
+
 def dashes(symmetry: str) -> Any:
     """Line style of a bond part, as the plotting library takes it."""
     pattern = LINE_STYLES[symmetry]

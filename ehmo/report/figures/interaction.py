@@ -96,7 +96,7 @@ def interaction_diagram(
     if not 0 <= place < len(report.orders):
         raise InputError(f"there is no bond number {place}", mend=f"give 0 to {len(report.orders) - 1}")
     found = bond_interaction(report, place)
-    layout = _laid_out(found, _top_of_interest(report), width_cm)
+    layout = _laid_out(found, top_of_interest(report), width_cm)
     figure = new_figure(width_cm, layout.height, layout=None)
     axes = paper_axes(figure)
     _draw_axis(axes, layout, look)
@@ -113,7 +113,7 @@ def default_bond(report: BondReport) -> int:
     return min(range(len(bonds)), key=lambda k: (not bonds[k].may_be_multiple, bonds[k].length_A))
 
 
-def _top_of_interest(report: BondReport) -> float:
+def top_of_interest(report: BondReport) -> float:
     """Energy up to which levels matter: the ladder, or a few levels above the filled ones [eV]."""
     state = report.state
     tops = [level.energy_eV for site in report.sites if site.ladder is not None for level in site.ladder.levels]
