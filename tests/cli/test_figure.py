@@ -6,7 +6,10 @@ import xml.etree.ElementTree as ET
 
 import pytest
 
+from ehmo.report.figures.canvas import COLUMN_CM, DOUBLE_COLUMN_CM
+from ehmo.report.figures.catalogue import FIGURE_KINDS
 from tests.cli.conftest import VOCL3
+from tests.crystal.test_report import RUTILE
 
 STARTS = {"svg": b"<?xml", "pdf": b"%PDF", "png": b"\x89PNG"}
 TWO = VOCL3 + VOCL3
@@ -22,7 +25,7 @@ def test_format_by_the_end_of_the_name(ehmo, put, tmp_path, form):
     assert "84 x" in ran.out
 
 
-@pytest.mark.parametrize("kind", ["interaction", "ladder", "channels"])
+@pytest.mark.parametrize("kind", [kind.name for kind in FIGURE_KINDS.values() if kind.source == "molecule"])
 def test_kinds_of_a_molecule(ehmo, put, tmp_path, kind):
     put()
     sizes = []
@@ -53,6 +56,44 @@ def test_one_of_several_frames(ehmo, put, refused):
     assert ehmo("figure", "channels", "a.xyz", "-o", "out.svg", "--pick", "2").status == 0
 
 
+def test_a_scan_from_its_file(ehmo, put, tmp_path):
+    put()
+    words = ("--from", "1.5", "--to", "1.7", "--steps", "3", "--json", "s.json", "--quiet")
+    assert ehmo("scan", "a.xyz", "--bond", "V1-O2", *words).status == 0
+    for name, more in (("one.svg", ()), ("other.svg", ("--bond", "V1-Cl3"))):
+        ran = ehmo("figure", "scan", "s.json", "-o", name, *more)
+        assert (ran.status, ran.err) == (0, "")
+    assert (tmp_path / "one.svg").read_bytes() != (tmp_path / "other.svg").read_bytes()
+
+
+def test_a_crystal(ehmo, put, tmp_path, refused):
+    put(RUTILE, "r.cif")
+    put()
+    ran = ehmo("figure", "crystal", "r.cif", "-o", "r.svg", "--mesh", "2,2,2", "--path", "GXM", "--window=-6,4")
+    assert (ran.status, ran.err) == (0, "")
+    assert (tmp_path / "r.svg").read_bytes().startswith(b"<?xml")
+    assert "no extended structure" in refused("figure", "crystal", "a.xyz", "-o", "x.svg")
+    assert "--list" in refused("figure", "ladder", "r.cif", "-o", "x.svg")
+    assert "no window" in refused("figure", "crystal", "r.cif", "-o", "x.svg", "--window", "4,1", "--mesh", "1,1,1")
+
+
+def test_an_overview_of_a_store(ehmo, put, tmp_path, refused):
+    put()
+    assert ehmo("batch", "a.xyz", "--store", "s.db", "--quiet").status == 0
+    ran = ehmo("figure", "overview", "s.db", "-o", "s.svg")
+    assert (ran.status, ran.err) == (0, "")
+    assert "174 x" in ran.out
+    assert ehmo("figure", "overview", "s.db", "-o", "o.svg", "--where", "kind = 'oxo'").status == 0
+    assert (tmp_path / "s.svg").read_bytes() != (tmp_path / "o.svg").read_bytes()
+    assert "no bonds" in refused("figure", "overview", "s.db", "-o", "n.svg", "--where", "kind = 'nitrido'")
+    assert "no store" in refused("figure", "overview", "a.xyz", "-o", "n.svg")
+
+
+def test_usual_widths_are_those_of_the_columns():
+    widths = {kind.width_mm for kind in FIGURE_KINDS.values()}
+    assert widths == {10 * COLUMN_CM, 10 * DOUBLE_COLUMN_CM}
+
+
 @pytest.mark.parametrize(
     ("words", "said"),
     [
@@ -65,6 +106,11 @@ def test_one_of_several_frames(ehmo, put, refused):
         (("channels", "a.xyz", "-o", "out.svg", "--bond", "V1-O2"), "--bond"),
         (("interaction", "a.xyz", "-o", "out.svg", "--width", "5"), "60 to 400"),
         (("interaction", "a.xyz", "-o", "out.svg", "--width", "nan"), "60 to 400"),
+        (("interaction", "a.xyz", "-o", "out.svg", "--spread", "3"), "it is for ladder, channels"),
+        (("ladder", "a.xyz", "-o", "out.svg", "--where", "kind = 'oxo'"), "it is for overview"),
+        (("scan", "a.xyz", "-o", "out.svg"), "no scan"),
+        (("scan", "none.json", "-o", "out.svg"), "cannot be read"),
+        (("overview", "none.db", "-o", "out.svg"), "none.db"),
         (("portrait", "a.xyz", "-o", "out.svg"), "choose from"),
         (("ladder", "a.xyz", "-o", "out.svg", "--bands", "blue"), "no bands"),
     ],

@@ -1,4 +1,7 @@
-"""Every kind of figure by its name, and what it is drawn from."""
+"""Every kind of figure by its name, and what it is drawn from.
+
+The command line reads this before it knows what is asked for, so nothing heavy is imported here.
+"""
 
 from __future__ import annotations
 
@@ -10,7 +13,7 @@ from typing import TYPE_CHECKING, Final, Literal
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-Source = Literal["molecule", "crystal"]
+Source = Literal["molecule", "crystal", "scan", "store"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -21,12 +24,16 @@ class FigureKind:
     ----------
     name : str
         As the command line has it.
-    source : {"molecule", "crystal"}
-        Record that it is drawn from: a bond report or a crystal report.
+    source : {"molecule", "crystal", "scan", "store"}
+        What it is drawn from: a bond report, a crystal report, a scan, or the bonds of a store.
     words : str
         What it shows.
     home, function : str
         Module below ``ehmo.report.figures`` and function that draws it.
+    options : tuple of str
+        Options of the command line that bear on it, besides those of every figure of its source.
+    width_mm : float
+        Usual width [mm].
     """
 
     name: str
@@ -34,6 +41,8 @@ class FigureKind:
     words: str
     home: str
     function: str
+    options: tuple[str, ...] = ()
+    width_mm: float = 84.0
 
     @property
     def draw(self) -> Callable[..., Figure]:
@@ -44,10 +53,53 @@ class FigureKind:
 
 _KINDS = (
     FigureKind(
-        "interaction", "molecule", "how metal and ligand levels make the orbitals", "interaction", "interaction_diagram"
+        "interaction",
+        "molecule",
+        "how metal and ligand levels make the orbitals",
+        "interaction",
+        "interaction_diagram",
+        ("bond",),
     ),
-    FigureKind("ladder", "molecule", "d or f levels, terms and observed bands", "ladder", "ladder_figure"),
-    FigureKind("channels", "molecule", "sigma and pi channels of every bond as bars", "channels", "channel_bars"),
+    FigureKind(
+        "ladder", "molecule", "d or f levels, terms and observed bands", "ladder", "ladder_figure", ("bands", "spread")
+    ),
+    FigureKind(
+        "channels", "molecule", "sigma and pi channels of every bond as bars", "channels", "channel_bars", ("spread",)
+    ),
+    FigureKind(
+        "population",
+        "molecule",
+        "overlap population of a bond against energy",
+        "population",
+        "overlap_population",
+        ("bond",),
+    ),
+    FigureKind(
+        "spectrum",
+        "molecule",
+        "computed bands with their envelope, observed ones",
+        "spectrum",
+        "spectrum_figure",
+        ("bands",),
+    ),
+    FigureKind(
+        "crystal",
+        "crystal",
+        "bands, density of states and overlap population",
+        "crystal",
+        "band_figure",
+        ("mesh", "path", "window"),
+    ),
+    FigureKind("scan", "scan", "channels, levels and energy along a scan", "scan", "scan_figure", ("bond",)),
+    FigureKind(
+        "overview",
+        "store",
+        "order against length by metal and kind",
+        "overview",
+        "overview_figure",
+        ("where",),
+        174.0,
+    ),
 )
 
 FIGURE_KINDS: Final = {kind.name: kind for kind in _KINDS}

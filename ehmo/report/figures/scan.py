@@ -20,6 +20,7 @@ from ehmo.report.figures.canvas import (
     drawn,
     new_figure,
     paper_axes,
+    plain,
 )
 from ehmo.report.figures.levels import LABEL_CM
 from ehmo.report.figures.markup import function, irrep, joined, part, write
@@ -114,7 +115,7 @@ def scan_figure(scan: Scan, bond: int | None = None, *, look: Look = LIGHT, widt
             _draw_minimum(axes, scan, look)
         _draw_labels(paper, axes, lines, (bottom, _PANEL_CM[name], width_cm - right), look)
         bottom -= _BETWEEN_CM
-    axes.set_xlabel(_coordinate(scan), labelpad=2)
+    axes.set_xlabel(plain(_coordinate(scan)), labelpad=2)
     head = scan.bond_labels[place].replace("-", "\N{EN DASH}")
     write(
         paper, _LEFT_CM, height - 0.35, f"channels of {head}; {scan.parameter_set}, {scan.charge_model} charges",

@@ -111,8 +111,12 @@ def absorptivity(strength: float, width_per_cm: float) -> float:
         Oscillator strength.
     width_per_cm : float
         Full width at half height [cm^-1].
+
+    Returns
+    -------
+    peak : float
     """
-    return strength / (STRENGTH_PER_ABSORPTIVITY * width_per_cm * _AREA)
+    return float(strength / (STRENGTH_PER_ABSORPTIVITY * width_per_cm * _AREA))
 
 
 def _peaks(bands: Sequence[Band], width: float) -> FloatArray:
@@ -141,7 +145,7 @@ def _name(band: Band) -> str:
 def _last(bands: Sequence[Band], named: Sequence[Band], observed: Sequence[float]) -> float:
     """End of the axis [10^3 cm^-1]."""
     highest = max([*(band.wavenumber_per_cm for band in (named or bands)), *observed]) / THOUSAND
-    return min(LAST_PER_CM / THOUSAND, 5 * np.ceil(1.06 * highest / 5))
+    return float(min(LAST_PER_CM / THOUSAND, 5 * np.ceil(1.06 * highest / 5)))
 
 
 def _draw_bands(axes: Axes, bands: Sequence[Band], peaks: FloatArray, last: float, width: float, look: Look) -> None:
