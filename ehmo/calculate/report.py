@@ -6,9 +6,9 @@ from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.health import health_of, health_warnings
 from ehmo.calculate.numbers import Bonding, calculate_bonding, channel_constants, effective_settings
-from ehmo.calculate.parted import parted_orbitals
+from ehmo.calculate.orbital_labels import molecule_irreps, parted_orbitals, sphere_irreps
 from ehmo.calculate.remarks import assumptions, electronic_warnings, site_warnings, spectrum_warnings
-from ehmo.calculate.sites import metal_sites, molecule_irreps, molecule_symmetry, site_formal_orders, sphere_irreps
+from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_orders
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError, InputError

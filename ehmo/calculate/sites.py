@@ -10,7 +10,7 @@ from ehmo.analysis.angular_overlap import angular_overlap, crystal_field_paramet
 from ehmo.analysis.formal_order import formal_orders
 from ehmo.analysis.ladder import LadderError, ladders
 from ehmo.analysis.pi_planes import pi_normals
-from ehmo.analysis.symmetry import find_symmetry, functions_of_atoms, lowdin_rows, orbital_irreps, shape_measures
+from ehmo.analysis.symmetry import find_symmetry, shape_measures
 from ehmo.analysis.symmetry.parts import shell_part_irreps, shell_parts
 from ehmo.calculate.numbers import Bonding
 from ehmo.conventions import ELEMENT_SYMBOLS
@@ -21,9 +21,9 @@ from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
 from ehmo.records.ligand_field import Ladder, LigandFieldParameters
 from ehmo.records.site import MetalSite
-from ehmo.records.symmetry import OrbitalIrreps, Symmetry
+from ehmo.records.symmetry import Symmetry
 from ehmo.structure.elements import ACTINIDES
-from ehmo.structure.oxidation import bond_valence_sum
+from ehmo.structure.oxidation import bond_valence_sum, oxidation_guess
 
 MOST_ATOMS = 120
 """Largest fragment whose whole symmetry is searched."""
@@ -142,13 +142,23 @@ def metal_sites(
                 else (),
                 oxidation_state=state,
                 d_count=electrons.d_electrons,
-                bond_valence_sum=bond_valence_sum(fragment, coordination, frame.metal, state),
+                bond_valence_sum=bond_valence_sum(
+                    fragment, coordination, frame.metal, _state_of(fragment, coordination, electrons, frame.metal)
+                ),
                 ladder=None if ladder is None else _with_irreps(ladder, symmetry, frame),
                 ladder_withheld="" if ladder is not None else withheld,
                 parameters=None if ladder is None else _parameters(fragment, coordination, frame, symmetry, ladder),
             )
         )
     return tuple(sites)
+
+
+def _state_of(fragment: Fragment, coordination: Coordination, electrons: ElectronAssignment, metal: int) -> int | None:
+    """Oxidation state for the bond-valence parameters: by counting where all metals are alike, else by their bonds."""
+    metals, total = coordination.metals, electrons.metal_oxidation_total
+    if total is not None and total % len(metals) == 0 and len({fragment.symbols[m] for m in metals}) == 1:
+        return total // len(metals)
+    return oxidation_guess(fragment, coordination, metal).state
 
 
 def site_ladders(
@@ -210,28 +220,6 @@ def _with_irreps(ladder: Ladder, symmetry: Symmetry, frame: LocalFrame) -> Ladde
 def _shell_momentum(bonding: Bonding, frame: LocalFrame) -> int:
     """Angular momentum of the shell whose ladder is asked for: f where the metal has f functions."""
     return 3 if 3 in bonding.plan.basis.layouts[frame.metal] else 2
-
-
-def sphere_irreps(sites: tuple[MetalSite, ...], bonding: Bonding) -> OrbitalIrreps | None:
-    """Irreps of all orbitals in the group of the idealised sphere; None for several metals."""
-    if len(sites) > 1:
-        return None
-    symmetry, basis = sites[0].symmetry, bonding.plan.basis
-    rows = functions_of_atoms(basis, symmetry.atoms)
-    # The bonded rows are those of metal and donors in the order of the atoms.
-    lowdin = bonding.bonded.lowdin_orbitals
-    if len(lowdin) != len(rows):
-        lowdin = lowdin_rows(bonding.overlap, rows, bonding.state.coefficients)
-    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
-
-
-def molecule_irreps(symmetry: Symmetry | None, bonding: Bonding) -> OrbitalIrreps | None:
-    """Irreps of all orbitals in the group of the whole molecule; None in C1 or without its symmetry."""
-    if symmetry is None or symmetry.group.name == "C1":
-        return None
-    basis = bonding.plan.basis
-    lowdin = lowdin_rows(bonding.overlap, functions_of_atoms(basis, symmetry.atoms), bonding.state.coefficients)
-    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
 
 
 def site_formal_orders(

@@ -51,7 +51,8 @@ def contents_text(contents: CrystalContents, first: int = 1) -> str:
     for network in contents.networks:
         copies = f", {network.formula_units} formula unit{'s' * (network.formula_units > 1)} in a cell"
         copies += "" if network.multiplicity == 1 else f", {network.multiplicity} such {network.word}s"
-        known = "" if network.charge is None else f"; charge {signed(network.charge)}, {network.charge_reason}"
+        of_what = f" of one {network.word} in a cell" if network.charge else ""
+        known = "" if network.charge is None else f"; charge {signed(network.charge)}{of_what}, {network.charge_reason}"
         runs = "1 direction" if network.dimension == 1 else f"{network.dimension} directions"
         lines += [
             "",

@@ -173,7 +173,7 @@ def _words(report: BondReport) -> list[str]:
 
 
 def multiple_bonds_in_words(report: BondReport) -> tuple[list[str], list[str]]:
-    """One sentence for each bond that may be multiple, and notes on how to read them.
+    """One sentence for each bond that may be multiple, or for several with the same, and notes on how to read them.
 
     Parameters
     ----------
@@ -184,20 +184,22 @@ def multiple_bonds_in_words(report: BondReport) -> tuple[list[str], list[str]]:
     said, notes : list of str
     """
     readings = {reading.bond: reading for reading in report.reactivity}
-    said, rules = [], []
+    said: dict[str, list[str]] = {}
+    rules = []
     for place in report.distinct_bonds():
         bond, orders, formal = report.coordination.bonds[place], report.orders[place], report.formal_orders[place]
         if not bond.may_be_multiple and (formal is None or formal.order == 1):
             continue
         counted = "no order by counting without a ladder" if formal is None else f"{formal.words} by counting"
-        sentence = f"{report.bond_label(bond)}: {counted}; {channels_in_words(orders.channels)} by calculation"
+        sentence = f"{counted}; {channels_in_words(orders.channels)} by calculation"
         if place in readings:
             sentence += f"; {_leaning(readings[place])}"
-        said.append(sentence)
+        said.setdefault(sentence, []).append(report.bond_label(bond))
         if formal is not None and formal.rule:
             rules.append(formal.rule)
     notes = [f"Counting: {rule}." for rule in dict.fromkeys(rules)]
-    return said, [*notes, REACTIVITY_LIMITS] if readings and said else notes
+    sentences = [f"{', '.join(labels)}: {sentence}" for sentence, labels in said.items()]
+    return sentences, [*notes, REACTIVITY_LIMITS] if readings and said else notes
 
 
 def _leaning(reading: DonorReactivity) -> str:
@@ -214,21 +216,21 @@ def _leaning(reading: DonorReactivity) -> str:
 
 
 def _hybrids(report: BondReport) -> list[str]:
-    """Make-up of the channels of the bonds that may be multiple."""
-    rows = [["bond", "channel", "weight", "metal hybrid", "donor hybrid"]]
+    """Make-up of the channels of the bonds that may be multiple; those of equal bonds stand once."""
+    made: dict[tuple[tuple[str, ...], ...], list[str]] = {}
     for place in report.distinct_bonds():
         bond, orders = report.coordination.bonds[place], report.orders[place]
         if bond.may_be_multiple:
-            rows += [
-                [
-                    report.bond_label(bond),
-                    channel.type,
-                    f"{channel.weight:.2f}",
-                    *hybrid_cells(report, bond, channel),
-                ]
+            cells = tuple(
+                (channel.type, f"{channel.weight:.2f}", *hybrid_cells(report, bond, channel))
                 for channel in orders.channels
                 if channel.weight >= PARTIAL_CHANNEL
-            ]
+            )
+            made.setdefault(cells, []).append(report.bond_label(bond))
+    rows = [["bond", "channel", "weight", "metal hybrid", "donor hybrid"]]
+    for cells, labels in made.items():
+        alike = f" and {len(labels) - 1} alike" if len(labels) > 1 else ""
+        rows += [[labels[0] + alike, *row] for row in cells]
     return ["What the channels are made of", *aligned(rows, numeric=(2,), indent="  ")] if len(rows) > 1 else []
 
 

@@ -1,4 +1,4 @@
-"""Orbitals of accidentally degenerate sets, turned so that each belongs to one irrep."""
+"""Irreps of the orbitals; accidentally degenerate ones are turned so that each belongs to one."""
 
 from __future__ import annotations
 
@@ -8,14 +8,37 @@ import numpy as np
 
 from ehmo.analysis import analyse_bonding
 from ehmo.analysis.bonded import bonded_functions
-from ehmo.analysis.symmetry import functions_of_atoms, lowdin_rows, parting_turns
+from ehmo.analysis.symmetry import functions_of_atoms, lowdin_rows, orbital_irreps, parting_turns
 from ehmo.calculate.numbers import Bonding
 from ehmo.conventions import DEGENERACY_TOLERANCE_EV
 from ehmo.records.coordination import Coordination
 from ehmo.records.fragment import Fragment
+from ehmo.records.site import MetalSite
 from ehmo.records.symmetry import OrbitalIrreps, Symmetry
 
 _SAME_FILLING = 1e-6
+
+
+def sphere_irreps(sites: tuple[MetalSite, ...], bonding: Bonding) -> OrbitalIrreps | None:
+    """Irreps of all orbitals in the group of the idealised sphere; None for several metals."""
+    if len(sites) > 1:
+        return None
+    symmetry, basis = sites[0].symmetry, bonding.plan.basis
+    rows = functions_of_atoms(basis, symmetry.atoms)
+    # The bonded rows are those of metal and donors in the order of the atoms.
+    lowdin = bonding.bonded.lowdin_orbitals
+    if len(lowdin) != len(rows):
+        lowdin = lowdin_rows(bonding.overlap, rows, bonding.state.coefficients)
+    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
+
+
+def molecule_irreps(symmetry: Symmetry | None, bonding: Bonding) -> OrbitalIrreps | None:
+    """Irreps of all orbitals in the group of the whole molecule; None in C1 or without its symmetry."""
+    if symmetry is None or symmetry.group.name == "C1":
+        return None
+    basis = bonding.plan.basis
+    lowdin = lowdin_rows(bonding.overlap, functions_of_atoms(basis, symmetry.atoms), bonding.state.coefficients)
+    return orbital_irreps(symmetry, basis, lowdin, bonding.state.energies_eV)
 
 
 def parted_orbitals(
