@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import base64
 import json
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from ehmo.batch.items import BatchSettings, WorkItem, item_of, plain_item, settings_of
@@ -44,6 +44,18 @@ def start_message(
         "memory_limit": memory_limit,
         "time_limit_s": time_limit_s,
     }
+
+
+def settings_message(settings: BatchSettings, known: KnownKeys, limits: Mapping[str, Any]) -> bytes:
+    """What every chunk of a cluster shares: settings, known keys and limits, as a line."""
+    known_text = base64.b64encode(known.packed).decode("ascii")
+    return line_of({"settings": settings.plain(), "known": known_text, "limits": dict(limits)})
+
+
+def settings_of_message(message: Message) -> tuple[BatchSettings, KnownKeys, dict[str, Any]]:
+    """Settings, known keys and limits of such a message."""
+    known = KnownKeys(base64.b64decode(message["known"]))
+    return settings_of(message["settings"]), known, dict(message["limits"])
 
 
 def started(message: Message) -> tuple[BatchSettings, KnownKeys, int | None, float | None]:

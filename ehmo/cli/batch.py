@@ -28,12 +28,10 @@ def add_command(commands: Any) -> None:
     parser.add_argument(
         "sources",
         metavar="SOURCE",
-        nargs="+",
+        nargs="*",
         help="XYZ or CIF file, folder, pattern such as 'set/**/*.cif', or manifest (.csv: path,charge,unpaired,tags)",
     )
-    parser.add_argument(
-        "--store", required=True, metavar="PATH|URL", help="SQLite file, or postgresql://USER@HOST/DATABASE"
-    )
+    parser.add_argument("--store", metavar="PATH|URL", help="SQLite file, or postgresql://USER@HOST/DATABASE")
     parser.add_argument("--retry", choices=("failed",), help="calculate those again that failed")
     parser.add_argument("--shard", metavar="I/N", help="only the I-th of N parts, for job arrays with one store each")
     parser.add_argument(
@@ -56,6 +54,14 @@ def add_command(commands: Any) -> None:
         metavar="GB",
         help="memory allowed to a worker (default: its part of 80 %% of this machine's, at least 2 GB)",
     )
+    cluster = parser.add_argument_group("cluster", "with the extra: pip install 'ehmo[cluster]'")
+    cluster.add_argument(
+        "--scheduler", metavar="ADDRESS", help="work on a dask scheduler: tls://HOST:PORT, or tcp://127.0.0.1:PORT"
+    )
+    for name, what in (("ca", "certificate of the authority"), ("cert", "own certificate"), ("key", "own key")):
+        cluster.add_argument(f"--tls-{name}", metavar="FILE", help=f"{what}, for tls://")
+    cluster.add_argument("--slurm", metavar="PROFILE", help="start jobs of Slurm as a TOML file describes them")
+    cluster.add_argument("--print-job", action="store_true", help="print the script of such a job, and start nothing")
     add_reading_options(parser.add_argument_group("structures"))
     parser.add_argument("--mesh", metavar="A,B,C", help="k-points for extended structures (default: by the cell)")
     bond.add_calculation_options(parser)
@@ -70,7 +76,13 @@ def run(chosen: argparse.Namespace) -> str:
     from ehmo.batch.sources import source_files
     from ehmo.store import open_store
 
-    settings, shard, engine = _settings(chosen), _shard(chosen.shard), _engine(chosen)
+    if chosen.print_job:
+        return _job(chosen)
+    if not chosen.sources:
+        raise InputError("there is nothing to calculate", place="ehmo batch", mend="name files or folders")
+    if not chosen.store:
+        raise InputError("there is no place for the results", place="ehmo batch", mend="give --store FILE.sqlite")
+    settings, shard = _settings(chosen), _shard(chosen.shard)
     total = sum(file.size for file in source_files(chosen.sources, allow_outside=chosen.allow_outside))
     items = work_items(
         chosen.sources,
@@ -80,7 +92,11 @@ def run(chosen: argparse.Namespace) -> str:
         max_bytes=chosen.max_bytes,
     )
     progress = Progress(sys.stderr, total // shard[1])
-    with closing(engine), _stopped_like_by_keyboard(), open_store(chosen.store, create=True) as store:
+    with (
+        closing(_engine(chosen)) as engine,
+        _stopped_like_by_keyboard(),
+        open_store(chosen.store, create=True) as store,
+    ):
         try:
             result = run_batch(
                 items,
@@ -127,10 +143,24 @@ def _shard(text: str | None) -> tuple[int, int]:
     return int(number), int(count)
 
 
+def _job(chosen: argparse.Namespace) -> str:
+    from ehmo.batch.slurm import job_script, read_profile
+
+    if chosen.slurm is None:
+        raise InputError("--print-job shows a job of --slurm", mend="give the profile with --slurm PROFILE.toml")
+    return job_script(read_profile(chosen.slurm))
+
+
 def _engine(chosen: argparse.Namespace) -> Engine:
     from ehmo.batch import InProcess, LocalPool
     from ehmo.batch.machine import memory_share, processors
 
+    tls = (chosen.tls_ca, chosen.tls_cert, chosen.tls_key)
+    if any(tls) and not (all(tls) and chosen.scheduler):
+        raise InputError("--tls-ca, --tls-cert and --tls-key go together, with --scheduler", mend="give all or none")
+    elsewhere = [name for name in ("scheduler", "slurm", "workers") if getattr(chosen, name) is not None]
+    if len(elsewhere) > 1:
+        raise InputError(f"--{elsewhere[0]} and --{elsewhere[1]} exclude each other", mend="give one of them")
     workers = processors() if chosen.workers is None else chosen.workers
     if not 0 <= workers <= 1000:
         raise InputError(f"--workers {workers}", mend="give a number from 0 to 1000")
@@ -138,9 +168,23 @@ def _engine(chosen: argparse.Namespace) -> Engine:
         raise InputError(f"--time-limit {chosen.time_limit:g}", mend="give a positive number of seconds")
     if chosen.memory_limit is not None and not 0.5 <= chosen.memory_limit < 1e6:
         raise InputError(f"--memory-limit {chosen.memory_limit:g}", mend="give gigabytes, at least 0.5")
+    given = None if chosen.memory_limit is None else int(chosen.memory_limit * 1e9)
+    if chosen.scheduler is not None:
+        from ehmo.batch.connecting import TlsFiles, connected_engine, quiet_logs
+
+        quiet_logs()
+        files = TlsFiles(*tls) if all(tls) else None
+        return connected_engine(chosen.scheduler, files, time_limit_s=chosen.time_limit, memory_limit=given)
+    if chosen.slurm is not None:
+        from ehmo.batch.connecting import quiet_logs
+        from ehmo.batch.slurm import read_profile, slurm_engine
+
+        profile = read_profile(chosen.slurm)
+        quiet_logs()
+        return slurm_engine(profile, time_limit_s=chosen.time_limit)
     if workers == 0:
         return InProcess()
-    limit = memory_share(workers) if chosen.memory_limit is None else int(chosen.memory_limit * 1e9)
+    limit = memory_share(workers) if given is None else given
     return LocalPool(workers, time_limit_s=chosen.time_limit, memory_limit=limit)
 
 
