@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import shlex
 import subprocess
 import sys
@@ -186,6 +187,7 @@ def test_the_profile_in_readme_is_usable(tmp_path):
     readme = ROOT / "README.md"
     if not readme.exists():
         pytest.skip("the tests run without a checkout: no README.md")
-    text = readme.read_text(encoding="utf-8").split("```toml\n")[1].split("```")[0]
+    blocks = re.findall(r"```toml\n(.*?)```", readme.read_text(encoding="utf-8"), re.DOTALL)
+    (text,) = (block for block in blocks if "walltime" in block)
     found = profile(tmp_path, text)
     assert (found.cores, found.jobs, found.prologue) == (8, 20, ("module load python",))
