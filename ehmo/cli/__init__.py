@@ -9,7 +9,7 @@ import sys
 from collections.abc import Callable, Sequence
 
 from ehmo import __version__
-from ehmo.cli import batch, bond, calibrate, crosscheck, demo, export, figure, ladder, merge, params, scan
+from ehmo.cli import batch, bond, calibrate, crosscheck, demo, export, figure, ladder, merge, params, scan, summary
 from ehmo.errors import EhmoError, visible
 
 Handler = Callable[[argparse.Namespace], str]
@@ -81,6 +81,6 @@ def _parser() -> argparse.ArgumentParser:
     )
     parser.add_argument("--version", action="version", version=f"ehmo {__version__}")
     commands = parser.add_subparsers(metavar="COMMAND", required=True)
-    for module in (bond, ladder, crosscheck, scan, batch, export, merge, figure, demo, params, calibrate):
+    for module in (bond, ladder, crosscheck, scan, batch, summary, export, merge, figure, demo, params, calibrate):
         module.add_command(commands)
     return parser

@@ -6,6 +6,7 @@ from ehmo.store.opening import open_store
 from ehmo.store.packing import PackedRow, pack
 from ehmo.store.records import DONE, FAILED, Provenance, StoredRow
 from ehmo.store.store import Store
+from ehmo.store.summary import summarise
 from ehmo.store.where import Condition, condition
 
 __all__ = [
@@ -21,4 +22,5 @@ __all__ = [
     "merge",
     "open_store",
     "pack",
+    "summarise",
 ]

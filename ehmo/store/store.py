@@ -12,7 +12,17 @@ from ehmo.errors import StoreError
 from ehmo.store.columns import TABLES, Cell, Column
 from ehmo.store.database import Database, Session
 from ehmo.store.packing import PackedRow, pack
-from ehmo.store.reading import all_names, full_rows, packed_rows, select, table_cells
+from ehmo.store.reading import (
+    all_names,
+    bond_names,
+    bond_pages,
+    failures,
+    full_rows,
+    made_by,
+    packed_rows,
+    select,
+    table_cells,
+)
 from ehmo.store.records import StoredRow
 from ehmo.store.schema import SCHEMA_VERSION
 from ehmo.store.versions import prepare
@@ -140,6 +150,38 @@ class Store:
         """
         self._must_be_current()
         return table_cells(self._database, table, _condition(where), names or all_names(table))
+
+    def bond_pages(self, names: Sequence[str], where: Condition | str | None = None) -> Iterator[list[tuple[Any, ...]]]:
+        """Bonds, many at a time, for statistics over all of them.
+
+        Parameters
+        ----------
+        names : sequence of str
+            Columns.
+        where : Condition or str, optional
+            Only bonds that meet it.
+
+        Returns
+        -------
+        pages : iterator of list of tuple
+            Id of the structure in this store, number of the bond in it, and cells.
+        """
+        self._must_be_current()
+        return bond_pages(self._database, _condition(where), names)
+
+    def made_by(self, where: Condition | str | None = None) -> list[tuple[Any, ...]]:
+        """Structures by what made them and what came of it; see `reading.made_by`."""
+        self._must_be_current()
+        return made_by(self._database, _condition(where))
+
+    def failures(self, where: Condition | str | None = None) -> Iterator[tuple[Any, ...]]:
+        """Source, entry and message of failed structures."""
+        self._must_be_current()
+        return failures(self._database, _condition(where))
+
+    def bond_names(self, places: Sequence[tuple[int, int]]) -> list[tuple[str, str, str, str]]:
+        """Key, source and entry of the structure, and label, of bonds as `bond_pages` numbers them."""
+        return bond_names(self._database, places)
 
     def table(self, name: str, where: Condition | str | None = None) -> dict[str, np.ndarray[Any, Any]]:
         """Columns of a table, as `pandas.DataFrame` takes them.

@@ -12,7 +12,7 @@ from ehmo.store import open_store
 from tests.store.rows import done
 from tests.store.servers import QUOTED
 
-COMMANDS = [("export", "STORE", "--to", "a.csv")]
+COMMANDS = [("export", "STORE", "--to", "a.csv"), ("summary", "STORE")]
 
 
 def words(command: tuple[str, ...], store: str) -> list[str]:
@@ -121,6 +121,18 @@ def test_times_to_wait(refused, command, store, wait):
 )
 def test_exports_that_cannot_be(refused, store, more, fault):
     assert fault in refused("export", store, *more)
+
+
+@pytest.mark.parametrize(
+    ("more", "fault"),
+    [
+        (["--json", ""], "--json needs a path"),
+        (["--json", "absent/a.json"], "cannot write the file"),
+        (["--json", "./a.sqlite"], "that is the store itself"),
+    ],
+)
+def test_summaries_that_cannot_be(refused, store, more, fault):
+    assert fault in refused("summary", "a.sqlite", *more)
 
 
 @pytest.mark.parametrize("target", ["a.csv", "a.parquet", "a.json", "a.xyz", "a.db"])
