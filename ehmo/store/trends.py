@@ -30,7 +30,7 @@ def resistant_line(lengths_A: FloatArray, orders: FloatArray) -> Trend:
 
     References
     ----------
-    Tukey, Exploratory Data Analysis (1977), chapter 5; memory.
+    tukey-1977
 
     Examples
     --------

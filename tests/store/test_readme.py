@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import copy
+import json
 import re
 from pathlib import Path
 
 import pytest
 
-from ehmo.report.summary_document import summary_document
+from ehmo.report.summary_document import summary_json
 from ehmo.store import StoredRow, open_store, summarise
 from ehmo.store.columns import BOND_COLUMNS, CONTEXT_COLUMNS, TABLES
 from tests.store.rows import document, done, failed, key, provenance
@@ -49,7 +50,7 @@ def test_fields_of_the_summary_are_those_in_the_table(tmp_path):
         rows = [done(number, "VOCl3") for number in range(20)] + [failed(30)]
         rows.append(StoredRow(key(40), "done", "", off_the_line(), provenance()))
         store.write(rows)
-        written = summary_document(summarise(store))
+        written = json.loads(summary_json(summarise(store)))
     assert written["outliers"]
     table = SECTION.split("### JSON of a summary")[1].split("An export has")[0]
     described = {
