@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 from ehmo.cli.extended import add_crystal_options, clusters, extended_report, refuse_crystal_options
 from ehmo.cli.output import same_file, write_whole
 from ehmo.cli.pages import add_page_option, check_page, write_page
+from ehmo.cli.papers import add_paper_options, check_paper_options, paper_text
 from ehmo.cli.structures import add_structure_options, chosen_fragments, extended_crystals, listing
 from ehmo.errors import EhmoError, InputError
 
@@ -38,6 +39,7 @@ def add_command(commands: Any) -> None:
     add_spread_option(parser)
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
     add_page_option(parser)
+    add_paper_options(parser)
     parser.set_defaults(handler=run)
 
 
@@ -147,6 +149,7 @@ def report_on(
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
     if chosen.json not in (None, "-") and same_file(chosen.json, getattr(chosen, "file", None)):
         raise InputError("--json would overwrite the structure file", place=chosen.json, mend="give another file name")
+    check_paper_options(chosen)
     page = getattr(chosen, "page", None) is not None
     if page:
         check_page(chosen, len(fragments))
@@ -177,6 +180,9 @@ def report_on(
         if chosen.json == "-":
             return document
         write_whole(chosen.json, document)
+    for_paper = paper_text(reports, table, chosen)
+    if for_paper is not None and not refused:
+        return for_paper
     from ehmo.report.text import bond_text
 
     rule = "\n" + "=" * 100 + "\n\n"

@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from ehmo.cli.output import write_whole
+from ehmo.cli.papers import check_paper_options, paper_text
 from ehmo.errors import InputError
 
 if TYPE_CHECKING:
@@ -64,6 +65,7 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
     from ehmo.calculate.crystal_report import crystal_report
 
     _refuse_molecular_options(chosen)
+    check_paper_options(chosen)
     from ehmo.orbitals.parameters import load_parameters
 
     table, crystal = load_parameters(chosen.params), crystal_options(chosen)
@@ -75,6 +77,9 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
         if chosen.json == "-":
             return document
         write_whole(chosen.json, document)
+    for_paper = paper_text(reports, table, chosen)
+    if for_paper is not None:
+        return for_paper
     from ehmo.report.bands_text import crystal_text
 
     rule = "\n" + "=" * 100 + "\n\n"

@@ -9,7 +9,8 @@ import basis_params
 from basis_params import ParameterTable
 from ehmo import __version__
 from ehmo.errors import visible
-from ehmo.records.report import BondReport
+from ehmo.records.crystal_report import CrystalReport
+from ehmo.records.report import BondReport, Method
 
 
 @dataclass(frozen=True, slots=True)
@@ -22,10 +23,13 @@ class MethodParagraph:
         Citations stand as ``[1]``, in the order in which they occur.
     citations : tuple of str
         One line each, without its number.
+    keys : tuple of str
+        Key of each in the bibliography of `basis_params`; free in a user's parameter table.
     """
 
     text: str
     citations: tuple[str, ...]
+    keys: tuple[str, ...]
 
     def __str__(self) -> str:
         listed = [f"[{number}] {line}" for number, line in enumerate(self.citations, 1)]
@@ -76,7 +80,7 @@ def method_paragraph(report: BondReport, table: ParameterTable) -> MethodParagra
     """
     numbers = _Numbers()
     sentences = [
-        *_hamiltonian(report, table, numbers),
+        *_hamiltonian(report.method, report.fragment.symbols, table, numbers),
         *_analysis(report, numbers),
         *_ligand_field(report, numbers),
     ]
@@ -84,13 +88,50 @@ def method_paragraph(report: BondReport, table: ParameterTable) -> MethodParagra
         sentences.append(
             f"Standard deviations are over {report.spread.used} draws of the parameters from their uncertainties."
         )
+    return _paragraph(sentences, numbers)
+
+
+def crystal_paragraph(report: CrystalReport, table: ParameterTable) -> MethodParagraph:
+    """Paragraph on the method of a report on an extended structure.
+
+    Parameters
+    ----------
+    report : CrystalReport
+    table : ParameterTable
+        Its parameter set.
+
+    Returns
+    -------
+    paragraph : MethodParagraph
+        Only what this calculation used is named and cited.
+    """
+    numbers, bonding = _Numbers(), report.bonding
+    symbols = tuple(report.symbols[int(atom)] for atom in bonding.atoms)
+    sentences = _hamiltonian(report.method, symbols, table, numbers)
+    if report.method.charge_model != "fixed":
+        sentences.append(f"Their lattice sum is Ewald's{numbers.cite('ewald-1921')}.")
+    sentences.append(f"The Brillouin zone was sampled on a {bonding.state.mesh} mesh{numbers.cite('monkhorst-1976')}.")
+    if bonding.path is not None:
+        sentences.append(
+            f"Bands were followed along {visible(bonding.path.path)}, points named as usual"
+            f"{numbers.cite('setyawan-2010')}."
+        )
+    sentences.append(_orders(numbers))
+    sentences.append(f"Overlap populations are also given against energy{numbers.cite('hughbanks-1983')}.")
+    found = [(unit.metal_symbol, unit.donor_symbol, None) for unit in report.units if unit.bond_valence is not None]
+    if found:
+        sentences.append(_bond_valences(found, numbers))
+    return _paragraph(sentences, numbers)
+
+
+def _paragraph(sentences: list[str], numbers: _Numbers) -> MethodParagraph:
     known = basis_params.references()
     lines = [known[key].text if key in known else visible(key) for key in numbers.keys]
-    return MethodParagraph(" ".join(sentences), tuple(lines))
+    return MethodParagraph(" ".join(sentences), tuple(lines), tuple(numbers.keys))
 
 
-def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -> list[str]:
-    method = report.method
+def _hamiltonian(method: Method, symbols: tuple[str, ...], table: ParameterTable, numbers: _Numbers) -> list[str]:
+    symbols = tuple(dict.fromkeys(symbols))
     cited = numbers.cite("wolfsberg-1952", "hoffmann-1963")
     weighted = f", weighted{numbers.cite('ammeter-1978')}" if method.weighting else ""
     constants = {method.K_sigma, method.K_pi, method.K_delta}
@@ -107,11 +148,14 @@ def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -
     if method.charge_model != "fixed":
         sentences.append(
             "Orbital energies follow the atomic charges to self-consistency by softened Coulomb interactions"
-            f"{numbers.cite('klopman-1964', 'ohno-1964')} with weight lambda = {method.lambda_:g}."
+            f"{numbers.cite('klopman-1964', 'ohno-1964')} with weight lambda = {method.lambda_:g}, their strength by "
+            "ionisation energies and electron affinities of the atoms"
+            f"{numbers.cite(*(basis_params.atom(symbol).source_key for symbol in symbols))}."
         )
     if method.smearing_eV:
-        sentences.append(f"Levels were filled with a Fermi-Dirac width of {method.smearing_eV:g} eV.")
-    symbols = dict.fromkeys(report.fragment.symbols)
+        sentences.append(
+            f"Levels were filled with a Fermi-Dirac width of {method.smearing_eV:g} eV{numbers.cite('mermin-1965')}."
+        )
     sources = [shell.source_key for symbol in symbols for shell in table.elements[symbol].shells]
     sentences.append(
         f"Slater functions{numbers.cite('slater-1930')} and ionisation energies are those of the parameter set "
@@ -122,12 +166,7 @@ def _hamiltonian(report: BondReport, table: ParameterTable, numbers: _Numbers) -
 
 
 def _analysis(report: BondReport, numbers: _Numbers) -> list[str]:
-    sentences = [
-        f"Bonds are described by Mulliken overlap populations and charges{numbers.cite('mulliken-1955')}, Mayer bond "
-        f"orders{numbers.cite('mayer-1983')}, and Wiberg orders{numbers.cite('wiberg-1968')} over "
-        f"Löwdin-orthonormalised functions{numbers.cite('lowdin-1950')}, resolved into sigma, pi and delta channels by "
-        "singular values of the metal-donor block of the density matrix."
-    ]
+    sentences = [_orders(numbers)]
     if report.sites:
         measured = numbers.cite("zabrodsky-1992")
         shapes = (
@@ -136,9 +175,31 @@ def _analysis(report: BondReport, numbers: _Numbers) -> list[str]:
         sentences.append(
             f"Symmetry was judged by continuous symmetry measures{measured}{shapes} of the coordination sphere."
         )
-    if any(bond.bond_valence is not None for bond in report.coordination.bonds):
-        sentences.append(f"Bond valences follow Brown and Altermatt{numbers.cite('brown-1985')}.")
+    symbols, states = report.fragment.symbols, {site.metal: site.oxidation_state for site in report.sites}
+    found = [
+        (symbols[bond.metal], symbols[bond.donor], state)
+        for bond in report.coordination.bonds
+        for state in (None, states.get(bond.metal))
+        if bond.bond_valence is not None
+    ]
+    if found:
+        sentences.append(_bond_valences(found, numbers))
     return sentences
+
+
+def _orders(numbers: _Numbers) -> str:
+    return (
+        f"Bonds are described by Mulliken overlap populations and charges{numbers.cite('mulliken-1955')}, Mayer bond "
+        f"orders{numbers.cite('mayer-1983')}, and Wiberg orders{numbers.cite('wiberg-1968')} over "
+        f"Löwdin-orthonormalised functions{numbers.cite('lowdin-1950')}, resolved into sigma, pi and delta channels by "
+        "singular values of the metal-donor block of the density matrix."
+    )
+
+
+def _bond_valences(pairs: Iterable[tuple[str, str, int | None]], numbers: _Numbers) -> str:
+    """Sentence on bond valences, with the sources of their parameters: metal, donor and oxidation state if known."""
+    sources = [basis_params.bond_valence_R0(*pair).source_key for pair in dict.fromkeys(pairs)]
+    return f"Bond valences follow Brown and Altermatt{numbers.cite('brown-1985', *sources)}."
 
 
 def _ligand_field(report: BondReport, numbers: _Numbers) -> list[str]:
@@ -161,4 +222,11 @@ def _ligand_field(report: BondReport, numbers: _Numbers) -> list[str]:
             f"Terms come from configuration interaction within the shell{numbers.cite('racah-1942', 'tanabe-1954')} "
             f"with free-ion constants{numbers.cite(*sources)} reduced by the metal shares of the levels."
         )
+    if spectrum.magnetism is not None:
+        sentences.append(
+            f"Magnetism is that of the terms with spin-orbit coupling{numbers.cite('griffith-1961')} and reduced "
+            f"orbital momentum{numbers.cite('stevens-1953')}; moments follow Van Vleck{numbers.cite('van-vleck-1932')}."
+        )
+    if any(band.oscillator_strength for band in spectrum.bands):
+        sentences.append(f"Oscillator strengths come from dipole integrals{numbers.cite('mulliken-1939')}.")
     return sentences

@@ -293,3 +293,35 @@ def test_full_disk_behind_the_standard_output_is_one_line(tmp_path):
     assert ran.returncode == 2
     assert ran.stderr.startswith("ehmo: cannot write the output")
     assert ran.stderr.count("\n") == 1
+
+
+def test_tables_and_citations_take_the_place_of_the_report(ehmo, put, refused):
+    put()
+    for form, start in (("latex", "% needs"), ("markdown", "| bond |"), ("csv", "structure,bond,kind")):
+        ran = ehmo("bond", "a.xyz", "--table", form, "--json", "r.json")
+        assert (ran.status, ran.err) == (0, "")
+        assert ran.out.startswith(start)
+        assert "Cautions" not in ran.out
+    assert "[1] M. Wolfsberg" in ehmo("bond", "a.xyz", "--cite").out
+    assert "@article{wolfsberg-1952," in ehmo("bond", "a.xyz", "--cite", "bibtex").out
+    assert "--json" in refused("bond", "a.xyz", "--table", "csv", "--json", "-")
+    assert "not allowed with" in refused("bond", "a.xyz", "--table", "csv", "--cite")
+    assert "choose from" in refused("bond", "a.xyz", "--table", "word")
+
+
+def test_tables_and_citations_of_an_extended_structure(ehmo, put):
+    from tests.crystal.test_report import RUTILE
+
+    put(RUTILE.replace("Ti1 Ti", "=Ti|1$ Ti"), "r.cif")
+    ran = ehmo("bond", "r.cif", "--mesh", "2,2,2", "--table", "csv")
+    assert (ran.status, ran.err) == (0, "")
+    assert all(line.split(",")[1].startswith("'=Ti|1$-O1") for line in ran.out.splitlines()[1:])
+    assert r"=Ti\textbar{}1\$-O1" in ehmo("bond", "r.cif", "--mesh", "2,2,2", "--table", "latex").out
+    assert "Monkhorst" in ehmo("bond", "r.cif", "--mesh", "2,2,2", "--cite").out
+
+
+def test_works_of_all_structures_are_listed_once(ehmo, put):
+    put(VOCL3 + VOCL3)
+    out = ehmo("bond", "a.xyz", "--cite", "bibtex").out
+    assert out.count("@article{hoffmann-1963,") == 1
+    assert ehmo("bond", "a.xyz", "--cite").out.count("Extended-Hückel calculations") == 1

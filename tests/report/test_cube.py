@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import csv
 import io
 
 import numpy as np
@@ -12,7 +11,6 @@ from ase.io.cube import read_cube
 
 from ehmo import bond_report
 from ehmo.orbitals.parameters import load_parameters
-from ehmo.report.bond_csv import COLUMNS, bond_csv
 from ehmo.report.cube import SMALLEST, cube_text, xyz_text
 from ehmo.report.page.shown import orbital_grid, orbital_values
 from ehmo.structure import read
@@ -54,13 +52,3 @@ def test_xyz_keeps_atoms_charge_and_spin(tmp_path):
     assert (again.symbols, again.charge, again.unpaired_electrons) == (fragment.symbols, 2, 1)
     np.testing.assert_allclose(again.positions_A, fragment.positions_A, atol=1e-8)
     np.testing.assert_allclose(ase_read(path).positions, fragment.positions_A, atol=1e-8)
-
-
-def test_csv_gives_each_bond_and_weights_add_up(report):
-    rows = list(csv.DictReader(io.StringIO(bond_csv(report))))
-    assert list(rows[0]) == list(COLUMNS)
-    assert [row["bond"] for row in rows] == ["V1-O2", "V1-Cl3", "V1-Cl4", "V1-Cl5"]
-    for row, orders in zip(rows, report.orders, strict=True):
-        weights = sum(float(row[f"{part}_weight"]) for part in ("sigma", "pi", "delta", "phi"))
-        assert weights == pytest.approx(orders.wiberg, rel=1e-4)
-        assert float(row["mayer"]) == pytest.approx(orders.mayer, rel=1e-5)

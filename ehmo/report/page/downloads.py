@@ -12,7 +12,7 @@ import numpy as np
 
 from basis_params import ParameterTable
 from ehmo.records.report import BondReport
-from ehmo.report.bond_csv import bond_csv
+from ehmo.report.bond_table import bond_table
 from ehmo.report.cube import cube_text, xyz_text
 from ehmo.report.document import json_text
 from ehmo.report.formula import complex_formula
@@ -33,7 +33,7 @@ def file_links(report: BondReport) -> Markup:
     stem = file_stem(report)
     files = (
         ("JSON", "everything on this page and more, as data", f"{stem}.json", json_text([report]), "application/json"),
-        ("CSV", "the bonds as a table", f"{stem}.csv", bond_csv(report), "text/csv"),
+        ("CSV", "the bonds as a table", f"{stem}.csv", bond_table([report], "csv"), "text/csv"),
         ("XYZ", "the structure with charge and spin", f"{stem}.xyz", xyz_text(report.fragment), "chemical/x-xyz"),
     )
     return markup(

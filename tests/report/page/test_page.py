@@ -176,7 +176,7 @@ def test_downloads_are_the_report(report, seen, data):
     assert sorted(name.rsplit(".", 1)[1] for name in files) == ["csv", "json", "xyz"]
     by_ending = {name.rsplit(".", 1)[1]: content.decode() for name, content in files.items()}
     assert json.loads(by_ending["json"]) == json.loads(json.dumps(bond_document(report)))
-    assert by_ending["csv"].splitlines()[1].startswith("V1-O2,oxo,1.591,")
+    assert ",V1-O2,oxo,,1.591," in by_ending["csv"].splitlines()[1]
     assert by_ending["xyz"].splitlines()[1] == "charge=2 unpaired=1"
     assert len(data["files"]) >= 2
     for text in data["files"].values():
