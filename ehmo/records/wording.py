@@ -17,10 +17,12 @@ FULL_CHANNEL: Final = 0.60
 PARTIAL_CHANNEL: Final = 0.20
 """Weights from which a channel counts as full or as partial when a bond is put into words."""
 
+LISTED_CHANNEL: Final = 0.05
+"""Weight below which a channel is not listed among the weights of a bond."""
+
 BOND_NUMBERS: Final = (2, 3, 4, 5, 6)
 """Columns of `bond_rows` that hold numbers."""
 
-_LISTED_CHANNEL = 0.05
 _NUMBER_WORDS = ("no", "one", "two", "three", "four", "five", "six")
 
 
@@ -60,7 +62,7 @@ def channel_weights(channels: Sequence[BondChannel]) -> str:
     """Weights grouped by symmetry, such as ``sigma 0.75 0.15  pi 0.81 0.80``."""
     groups = []
     for symmetry in BOND_SYMMETRIES:
-        weights = [f"{c.weight:.2f}" for c in channels if c.type == symmetry and c.weight >= _LISTED_CHANNEL]
+        weights = [f"{c.weight:.2f}" for c in channels if c.type == symmetry and c.weight >= LISTED_CHANNEL]
         if weights:
             groups.append(f"{symmetry} {' '.join(weights)}")
     return "  ".join(groups)

@@ -213,7 +213,8 @@ def _ligand_field(report: BondReport, numbers: _Numbers) -> list[str]:
         if any(found.crystal_field_per_cm for found in parameters):
             text += f", read as crystal-field parameters{numbers.cite('ballhausen-1962')}"
         if any(found.angular_overlap for found in parameters):
-            text += f", and in the angular overlap model{numbers.cite('schaffer-1965')}"
+            joint = " and" if "crystal-field" in text else ", read"
+            text += f"{joint} in the angular overlap model{numbers.cite('schaffer-1965')}"
         sentences.append(f"{text}.")
     spectrum = report.spectroscopy
     if spectrum.terms is not None:

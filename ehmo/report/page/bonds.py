@@ -10,10 +10,11 @@ from ehmo.records.coordination import MetalDonorBond
 from ehmo.records.electronic import NO_ELECTRON
 from ehmo.records.interaction import OrbitalSet
 from ehmo.records.report import BondReport
-from ehmo.records.wording import FULL_CHANNEL, PARTIAL_CHANNEL, channel_weights, with_deviation
+from ehmo.records.wording import FULL_CHANNEL, LISTED_CHANNEL, PARTIAL_CHANNEL, with_deviation
 from ehmo.report.page.formulas import irrep_markup, part_letter
 from ehmo.report.page.markup import Markup, element, markup
 from ehmo.report.page.shown import Carrier, ShownChannel
+from ehmo.report.page.view import PICTURE_PX
 from ehmo.report.text import hybrid_cells
 
 _MINUS = "\N{MINUS SIGN}"
@@ -38,9 +39,9 @@ def bond_entries(report: BondReport, channels: Sequence[ShownChannel], pictures:
     for bond in report.distinct_bonds():
         own = [shown for shown in channels if shown.bond == bond]
         rows = [_channel_row(report, shown, pictures, chosen=shown is first) for shown in own]
-        if not own:
-            weights = channel_weights(report.orders[bond].channels)
-            rows = [element("p", f"Channels: {weights or 'traces only'}", class_="note")]
+        weaker = _weaker(report, bond, len(own))
+        if weaker:
+            rows.append(element("p", weaker, class_="weaker"))
         groups.append(
             element("fieldset", element("legend", _bond_heading(report, bond)), rows, class_="bond", data_bond=bond)
         )
@@ -56,11 +57,23 @@ def first_channel(report: BondReport, channels: Sequence[ShownChannel]) -> Shown
         channels,
         key=lambda shown: (
             not bonds[shown.bond].may_be_multiple,
-            bonds[shown.bond].length_A,
+            # Rounded, so that of equal bonds and channels the first is taken.
+            round(bonds[shown.bond].length_A, 3),
+            shown.bond,
             shown.channel.type != "pi",
-            -shown.channel.weight,
+            -round(shown.channel.weight, 3),
+            shown.place,
         ),
     )
+
+
+def _weaker(report: BondReport, bond: int, pictured: int) -> str:
+    """Channels of a bond that have no picture, such as ``weaker: π 0.06``."""
+    rest = report.orders[bond].channels[pictured:]
+    named = [
+        f"{part_letter(channel.type)} {channel.weight:.2f}" for channel in rest if channel.weight >= LISTED_CHANNEL
+    ]
+    return f"{'weaker' if pictured else 'channels'}: {', '.join(named)}" if named else ""
 
 
 def channel_name(report: BondReport, shown: ShownChannel) -> str:
@@ -120,12 +133,16 @@ def _channel_row(report: BondReport, shown: ShownChannel, pictures: Mapping[str,
     )
     name = channel_name(report, shown)
     still = element(
-        "img", src=pictures[identity], alt=f"Metal and donor hybrid of the {name}: {what}", width="200", height="200"
+        "img",
+        src=pictures[identity],
+        alt=f"Metal and donor hybrid of the {name}: {what}",
+        width=PICTURE_PX,
+        height=PICTURE_PX,
     )
-    still_figure = element("figure", still, element("figcaption", element("b", "Hybrids: "), what), class_="still")
-    carriers = element("div", _carriers(report, shown), class_="carriers", id=f"carriers-{identity}")
+    made = element("p", f"Metal hybrid {metal}; donor hybrid {donor}", class_="made")
+    carriers = element("div", made, _carriers(report, shown), class_="carriers", id=f"carriers-{identity}")
     return element(
-        "div", radio, label, element("div", still_figure, carriers, class_="detail"), class_="channel", data_name=name,
+        "div", radio, label, element("div", element("div", still, class_="still"), carriers, class_="detail"), class_="channel", data_name=name,
         data_key=identity, data_part=channel.type,
     )  # fmt: skip
 

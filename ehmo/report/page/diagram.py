@@ -13,6 +13,7 @@ from ehmo.report.figures.interaction import default_bond, interaction_diagram
 from ehmo.report.look import LIGHT
 from ehmo.report.page.bonds import level_in_words
 from ehmo.report.page.markup import Markup, element, markup
+from ehmo.report.page.view import PICTURE_PX
 
 WIDTH_CM: Final = 13.0
 
@@ -51,7 +52,9 @@ def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
         orbital, (x, y, end, _) = int(found[1]), (float(found[k]) for k in range(2, 6))
         if orbital not in shown:
             return found[0]
-        room = element("rect", x=f"{x - 1:g}", y=f"{y - 9:g}", width=f"{end - x + 2:g}", height="18", class_="room")
+        room = element(
+            "rect", x=f"{x - 1:g}", y=f"{y - 7:g}", width=f"{end - x + 2:g}", height="14", rx="2", class_="room"
+        )
         return (
             f'<g class="level" data-orbital="{orbital}" tabindex="0" role="button" aria-pressed="false" '
             f'aria-label="Orbital {orbital + 1}: {markup(words[orbital])}">{room}{found[0]}</g>'
@@ -60,7 +63,7 @@ def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
     label = report.bond_label(report.coordination.bonds[bond])
     caption = (
         f"How the orbitals arise from the metal (left) and the ligands of {label} (right). Levels that carry the "
-        "chosen channel are marked; choose a level to see it in the view above."
+        "chosen channel are marked; choose a level to see it."
     )
     return element(
         "figure",
@@ -71,7 +74,17 @@ def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
             role="group",
             aria_label=f"Interaction diagram of {label}",
         ),
-        element("figcaption", caption),
+        element(
+            "figcaption",
+            element("p", caption),
+            element(
+                "div",
+                element("p", "", id="echo-words", class_="shown"),
+                element("img", id="echo", src="data:,", alt="", width=PICTURE_PX, height=PICTURE_PX),
+                element("p", element("a", "To the view", href="#viewer")),
+                class_="echo needs-script",
+            ),
+        ),
         class_="diagram",
         id="diagram-figure",
     )

@@ -14,6 +14,10 @@ PART_LETTERS: Final = {"sigma": "σ", "pi": "π", "delta": "δ", "phi": "φ"}
 
 _PIECE = re.compile(r"([A-Z][a-z]?|[()])(\d*)")
 _IRREP = re.compile(r"(\d*)([abetgABETGσπδφγΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
+_TERM = re.compile(r"(\d+)([A-Z]|[ΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
+_LONG = re.compile(r"\d*[abetg][123gu][^ ]*")
+_CORE = re.compile(r"([(]*)(.*?)([),;:]*)")
+_SPACE = Markup(" ")
 _MINUS = "\N{MINUS SIGN}"
 
 
@@ -55,6 +59,27 @@ def irrep_markup(label: str) -> Markup:
             element("sup", sign.replace("-", _MINUS)) if sign else None,
         ]
     )
+
+
+def term_markup(label: str) -> Markup:
+    """Term such as ``3T1g`` with its indices; other text as it is."""
+    found = _TERM.fullmatch(label)
+    if not found:
+        return markup(label)
+    multiplicity, letter, below, primes, sign = found.groups()
+    return markup([element("sup", multiplicity), irrep_markup(f"{letter}{below}{primes}{sign}")])
+
+
+def symbols_markup(text: str) -> Markup:
+    """Text with its terms and irreps set with indices."""
+    return markup([_SPACE if k else None, _set(word)] for k, word in enumerate(text.split(" ")))
+
+
+def _set(word: str) -> Markup:
+    """One word, its brackets and punctuation apart."""
+    start, core, end = _CORE.fullmatch(word).groups()  # type: ignore[union-attr]
+    symbol = term_markup(core) if _TERM.fullmatch(core) else irrep_markup(core) if _LONG.fullmatch(core) else core
+    return markup([start, symbol, end])
 
 
 def part_letter(name: str) -> str:

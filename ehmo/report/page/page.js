@@ -7,7 +7,7 @@
   const view = find("view"), still = find("view-still"), shownText = find("shown"), level = find("level");
   const dark = window.matchMedia("(prefers-color-scheme: dark)");
   const state = { channel: null, orbital: null, part: "both", level: data.level, labels: true, bond: null };
-  const camera = { eye: [...data.eye], up: [0, 0, 1], centre: [0, 0, 0], distance: 1.1, zoom: 1 };
+  const camera = { eye: [...data.eye], up: [0, 0, 1], centre: [0, 0, 0], distance: 1, zoom: 1 };
   const decoded = new Map();
   let drawing = false;
 
@@ -122,11 +122,15 @@
 
   const draw = async () => {
     const said = words();
+    const picture = state.orbital === null
+      ? document.querySelector(`[data-key="${state.channel}"] .still img`)
+      : find(`still-orbital-${state.orbital}`);
     shownText.textContent = said;
+    find("echo-words").textContent = said;
+    find("echo").src = picture.src;
+    find("echo").alt = picture.alt;
     find("level-value").textContent = data.levels[state.level].toFixed(2);
     if (body.classList.contains("still-only")) {
-      const key = state.orbital === null ? null : `still-orbital-${state.orbital}`;
-      const picture = key ? find(key) : document.querySelector(`[data-key="${state.channel}"] .still img`);
       still.src = picture.src;
       still.alt = picture.alt;
       return;
@@ -143,7 +147,7 @@
     const whole = state.orbital !== null;
     const own = data.places[state.channel];
     camera.centre = whole ? [0, 0, 0] : own.centre;
-    camera.distance = 1.27 * (whole ? 0.86 : Math.min(0.86, own.half / data.reach));
+    camera.distance = 1.27 * (whole ? 0.8 : Math.min(0.8, own.half / data.reach));
     camera.zoom = 1;
     if (own.bond !== state.bond) {
       camera.eye = [...own.eye];
@@ -159,8 +163,8 @@
     all(".level").forEach((one) => one.classList.toggle("carries", carrying.has(one.dataset.orbital)));
     all("[data-orbital]").forEach((one) => {
       const chosen = Number(one.dataset.orbital) === state.orbital;
-      if (one.hasAttribute("aria-pressed")) one.setAttribute("aria-pressed", String(chosen));
-      else one.classList.toggle("chosen", chosen);
+      one.setAttribute("aria-pressed", String(chosen));
+      if (one.parentElement.classList.contains("plate")) one.parentElement.classList.toggle("chosen", chosen);
     });
     all("[data-show]").forEach((one) => {
       const chosen = state.orbital === null && one.dataset.show === state.part;
@@ -276,6 +280,10 @@
     }
   };
 
+  // On paper nothing can be unfolded.
+  window.addEventListener("beforeprint", () => all("details:not([open])").forEach((one) => { one.open = true; one.dataset.folded = ""; }));
+  window.addEventListener("afterprint", () => all("details[data-folded]").forEach((one) => { one.open = false; delete one.dataset.folded; }));
+
   body.classList.add("scripted");
   all(".channel-radio").forEach((radio) => radio.addEventListener("change", () => choose({ channel: radio.value, orbital: null })));
   document.addEventListener("click", (event) => {
@@ -283,7 +291,11 @@
     if (!target) return;
     if (target.dataset.file) save(target.dataset.file);
     else if (target.dataset.show) choose({ part: target.dataset.show, orbital: null });
-    else if (!target.classList.contains("plate")) chooseOrbital(Number(target.dataset.orbital));
+    else {
+      chooseOrbital(Number(target.dataset.orbital));
+      // From the plates the view is out of sight.
+      if (target.closest(".plate")) find("viewer").scrollIntoView({ block: "start" });
+    }
   });
   document.addEventListener("keydown", (event) => {
     const chosen = event.target.closest && event.target.closest(".level");

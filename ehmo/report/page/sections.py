@@ -23,8 +23,10 @@ from ehmo.report.ladder_text import (
     withheld_reasons,
 )
 from ehmo.report.method import MethodParagraph
+from ehmo.report.page.formulas import symbols_markup
 from ehmo.report.page.markup import Content, Markup, element, markup, table
 from ehmo.report.page.shown import orbital_key
+from ehmo.report.page.view import PICTURE_PX
 from ehmo.report.spread_text import draws_in_words, effect_rows
 from ehmo.report.text import (
     ORBITAL_NUMBERS,
@@ -63,7 +65,9 @@ def typographic(text: str) -> str:
 
 def numbers_table(rows: Sequence[Sequence[str]], caption: Content, numeric: Iterable[int]) -> Markup:
     """Table of a report's cells."""
-    return table([[typographic(cell) for cell in row] for row in rows], caption, numeric)
+    head, *body = rows
+    cells = [[symbols_markup(typographic(cell)) for cell in row] for row in body]
+    return table([[typographic(cell) for cell in head], *cells], caption, numeric)
 
 
 def paragraphs(sentences: Iterable[str], style: str | None = None) -> Markup:
@@ -80,17 +84,26 @@ def words_section(report: BondReport) -> Markup:
     """Summary in words: metals, multiple bonds, the other bonds, spectrum, and how much there is to doubt."""
     said, notes = multiple_bonds_in_words(report)
     parts: list[Content] = [paragraphs(site_in_words(report, site) for site in report.distinct_sites())]
-    parts.append(element("div", paragraphs(said), class_="finding") if said else None)
+    parts.append(element("div", paragraphs(_joined(said)), class_="finding") if said else None)
     others = other_bonds_in_words(report)
     parts.append(paragraphs(others) if others else None)
     spectrum = spectrum_in_words(report)
-    parts.append(paragraphs([spectrum]) if spectrum else None)
+    parts.append(element("p", symbols_markup(typographic(spectrum))) if spectrum else None)
     count = len(report.warnings)
     if count:
         link = element("a", f"{count} {'point' if count == 1 else 'points'} to doubt", href="#doubts")
         parts.append(element("p", "Before you rely on it: ", link, "."))
     parts.append(element("details", element("summary", "How to read this"), paragraphs(notes)) if notes else None)
     return section("words", "In words", parts)
+
+
+def _joined(sentences: Iterable[str]) -> list[str]:
+    """Sentences that say the same of several bonds made one."""
+    bonds: dict[str, list[str]] = {}
+    for sentence in sentences:
+        bond, _, rest = sentence.partition(": ")
+        bonds.setdefault(rest, []).append(bond)
+    return [f"{', '.join(labels)}: {rest}" for rest, labels in bonds.items()]
 
 
 def other_bonds_in_words(report: BondReport) -> list[str]:
@@ -141,18 +154,7 @@ def orbitals_section(report: BondReport, shown: Sequence[int], pictures: Mapping
     """Every orbital that can be shown, with its picture, and their table."""
     rows = orbital_rows(report, list(reversed(shown)))
     head, *body = rows
-    plates = [
-        element(
-            "figure",
-            element("img", src=pictures[orbital_key(k)], alt=f"Orbital {k + 1}: {row[8]}", width="200", height="200",
-                    id=f"still-{orbital_key(k)}"),
-            element("figcaption", element("b", row[0]), f" {row[1]}  {typographic(row[2])} eV, {row[3]} e"),
-            element("button", "Show", type="button", class_="needs-script", data_orbital=k, aria_pressed="false",
-                    aria_label=f"Show orbital {k + 1}"),
-            class_="plate",
-        )
-        for k, row in zip(reversed(shown), body, strict=True)
-    ]  # fmt: skip
+    plates = [_plate(k, row, pictures) for k, row in zip(reversed(shown), body, strict=True)]
     caption = (
         "Orbitals, topmost first; overlap population with all donors for two electrons, positive is bonding; "
         "irreps of the idealised sphere"
@@ -168,6 +170,27 @@ def orbitals_section(report: BondReport, shown: Sequence[int], pictures: Mapping
             numbers_table([head, *body], caption, ORBITAL_NUMBERS),
         ),
     )
+
+
+def _plate(orbital: int, row: Sequence[str], pictures: Mapping[str, str]) -> Markup:
+    """Picture of an orbital with what its row in the table says first."""
+    key, number = orbital_key(orbital), orbital + 1
+    still = element(
+        "img",
+        src=pictures[key],
+        alt=f"Orbital {number}: {row[8]}",
+        width=PICTURE_PX,
+        height=PICTURE_PX,
+        id=f"still-{key}",
+    )
+    electrons = "empty" if row[3] == "0" else f"{row[3]} e"
+    name = [element("b", row[0]), " ", symbols_markup(row[1])]
+    show = element(
+        "button", "Show", type="button", class_="needs-script", data_orbital=orbital, aria_pressed="false",
+        aria_label=f"Show orbital {number}",
+    )  # fmt: skip
+    lines = [name, element("br"), typographic(f"{row[2]} eV"), element("br"), electrons]
+    return element("figure", still, element("figcaption", lines), show, class_="plate")
 
 
 def ladder_section(report: BondReport) -> Markup | None:

@@ -19,8 +19,8 @@ from ehmo.records.grid import Grid
 from ehmo.records.interaction import OrbitalSet
 from ehmo.records.report import BondReport
 
-LEAST_WEIGHT: Final = 0.05
-"""Channels of less weight are left out."""
+LEAST_WEIGHT: Final = 0.10
+"""Channels of less weight are named, without pictures."""
 
 LEAST_SHARE: Final = 0.05
 """Part of a channel from which a level is listed as carrying it."""
@@ -36,7 +36,7 @@ USUAL_LEVEL: Final = 1
 
 _MARGIN_A = 2.8
 _HYBRID_POINTS, _ORBITAL_POINTS = 30_000, 90_000
-_HYBRID_SPACING_A, _ORBITAL_SPACING_A = 0.22, 0.24
+_HYBRID_SPACING_A, _ORBITAL_SPACING_A = 0.20, 0.18
 
 
 @dataclass(frozen=True, slots=True)

@@ -27,7 +27,7 @@ from ehmo.report.page.shown import (
 )
 from ehmo.report.page.surfaces import STEP_A, Surface, isosurface, packed
 
-PICTURE_PX: Final = 176
+PICTURE_PX: Final = 160
 """Width and height of a still picture."""
 
 _EYE = np.array([0.86, 0.42, 0.30])
@@ -86,7 +86,7 @@ def page_view(
             pictures[shown.key] = scene.with_bodies(_coloured(metal) + _coloured(donor)).address()
     if orbitals:
         grid = orbital_grid(report)
-        scene = _scene(report, None, centre, reach, bodies)
+        scene = _scene(report, None, centre, reach - 0.5 * _ROOM_A, bodies)
         for orbital, values in zip(orbitals, orbital_values(report, table, orbitals, grid), strict=True):
             both = _surfaces(values, grid)
             surfaces[orbital_key(orbital)] = packed(both, axes, centre)

@@ -29,6 +29,7 @@ from ehmo.report.page.sections import (
     spectrum_section,
     spread_section,
     trust_sections,
+    typographic,
     words_section,
 )
 from ehmo.report.page.shown import LEVELS, USUAL_LEVEL, shown_channels, shown_orbitals
@@ -72,8 +73,8 @@ def bond_page(report: BondReport, table: ParameterTable) -> str:
             ),
             element(
                 "div",
-                _viewer(),
                 element("div", bond_entries(report, channels, view.pictures), class_="entries"),
+                _viewer(),
                 class_="bench",
             ),
             element("details", element("summary", "Table of the bonds"), bond_table(report)),
@@ -185,7 +186,7 @@ def _top(report: BondReport) -> Markup:
         "header",
         element("p", "Metal-donor bonds by extended Hückel theory", class_="kind"),
         element("h1", formula_markup(report)),
-        element("p", electrons_in_words(fragment), class_="state"),
+        element("p", typographic(electrons_in_words(fragment)), class_="state"),
         element("p", origin, class_="origin"),
         element(
             "nav",
@@ -251,6 +252,7 @@ def _viewer() -> Markup:
         element("p", "", id="why-still", class_="note"),
         element("div", id="carriers-here"),
         class_="viewer needs-script",
+        id="viewer",
     )
 
 
