@@ -141,10 +141,10 @@ def _channel_row(report: BondReport, shown: ShownChannel, pictures: Mapping[str,
     )
     made = element("p", f"Metal hybrid {metal}; donor hybrid {donor}", class_="made")
     carriers = element("div", made, _carriers(report, shown), class_="carriers", id=f"carriers-{identity}")
+    detail = element("div", element("div", still, class_="still"), carriers, class_="detail")
     return element(
-        "div", radio, label, element("div", element("div", still, class_="still"), carriers, class_="detail"), class_="channel", data_name=name,
-        data_key=identity, data_part=channel.type,
-    )  # fmt: skip
+        "div", radio, label, detail, class_="channel", data_name=name, data_key=identity, data_part=channel.type
+    )
 
 
 def _class_of(weight: float) -> str:
