@@ -20,7 +20,7 @@ from ehmo.report.page.markup import Markup, data_address, element, markup
 from ehmo.report.page.shown import ShownChannel, orbital_grid, orbital_values
 
 MOST_CUBES: Final = 6
-_CUBE_SPACING_A, _CUBE_POINTS = 0.26, 45_000
+_CUBE_SPACING_A, _CUBE_POINTS = 0.26, 40_000
 
 
 def file_stem(report: BondReport) -> str:

@@ -7,6 +7,7 @@ import struct
 import zlib
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cache, reduce
 
 import numpy as np
 from numpy.typing import NDArray
@@ -129,15 +130,21 @@ def _samples(
     longest = np.sqrt(np.max([(edge * edge).sum(axis=1) for edge in (first, second, first - second)], axis=0))
     steps = np.maximum(np.ceil(longest / _PX_PER_POINT).astype(int), 1)
     parts = [np.zeros((0, 6), dtype=np.float32)]
-    for n in np.unique(steps):
-        a, b = (grid.ravel() for grid in np.meshgrid(np.arange(n + 1), np.arange(n + 1)))
-        weights = (np.stack([n - a - b, a, b], axis=1)[a + b <= n] / n).astype(np.float32)
-        parts.append((weights @ both[steps == n]).reshape(-1, 6))
+    parts += [(_strewn_weights(int(n)) @ both[steps == n]).reshape(-1, 6) for n in np.unique(steps)]
     strewn = np.concatenate(parts)
     columns = np.floor(strewn[:, 0] + fine / 2).astype(np.intp)
     rows = np.floor(fine / 2 - strewn[:, 1]).astype(np.intp)
     kept = (columns >= 0) & (columns < fine) & (rows >= 0) & (rows < fine)
     return (rows * fine + columns)[kept], strewn[kept, 2], strewn[kept, 3:]
+
+
+@cache
+def _strewn_weights(n: int) -> NDArray[np.float32]:
+    """(n_points, 3) weights of the corners for points strewn evenly over a triangle, n + 1 along each side."""
+    a, b = (grid.ravel() for grid in np.meshgrid(np.arange(n + 1), np.arange(n + 1)))
+    weights: NDArray[np.float32] = (np.stack([n - a - b, a, b], axis=1)[a + b <= n] / n).astype(np.float32)
+    weights.setflags(write=False)
+    return weights
 
 
 def _brightness(normals: NDArray[np.float32]) -> FloatArray:
@@ -164,10 +171,11 @@ def _shaded(colour: str, brightness: FloatArray) -> NDArray[np.uint8]:
 
 def _averaged(image: NDArray[np.uint8], size: int) -> NDArray[np.uint8]:
     """Image at its final size; the colour of a part-covered pixel is that of its covered part."""
-    blocks = image.reshape(size, _SAMPLES, size, _SAMPLES, 4).astype(np.float32)
-    alpha = blocks[..., 3].sum(axis=(1, 3))
-    colour = (blocks[..., :3] * blocks[..., 3:]).sum(axis=(1, 3)) / np.maximum(alpha, 1)[..., None]
-    return np.concatenate([colour, alpha[..., None] / _SAMPLES**2], axis=2).round().astype(np.uint8)
+    blocks = image.reshape(size, _SAMPLES, size, _SAMPLES, 4).astype(np.uint16)
+    # Fine pixels are either clear, and zero throughout, or opaque.
+    total = reduce(np.add, [blocks[:, row, :, column] for row in range(_SAMPLES) for column in range(_SAMPLES)])
+    covered = np.maximum(total[..., 3:] // 255, 1)
+    return np.concatenate([total[..., :3] // covered, total[..., 3:] // _SAMPLES**2], axis=2).astype(np.uint8)
 
 
 def _png(image: NDArray[np.uint8]) -> bytes:

@@ -35,7 +35,7 @@ from ehmo.report.page.sections import (
 from ehmo.report.page.shown import LEVELS, USUAL_LEVEL, shown_channels, shown_orbitals
 from ehmo.report.page.view import page_view
 
-_LIBRARY_PACKING = 6  # higher levels save little and take a second
+_LIBRARY_PACKING = 5  # higher levels save little and take long
 
 
 def bond_page(report: BondReport, table: ParameterTable) -> str:
