@@ -24,7 +24,7 @@ LISTED_STRENGTH = 1e-3
 """Charge-transfer bands of less oscillator strength are left out, but for the lowest ones."""
 
 ALLOWED_STRENGTH = 1e-4
-"""Charge-transfer bands of less are called forbidden."""
+"""Charge-transfer bands of less are called forbidden, unless the group of the sphere allows them."""
 
 SAME_TERM_PER_CM = 1.0
 """Terms closer than this are told apart by rounding alone [cm^-1]."""
@@ -33,6 +33,7 @@ MOVED_SHARE = 0.2
 """Part of an electron that must change between metal and ligands for a band to be called LMCT or MLCT."""
 
 _LOWEST_LISTED = 3
+_WEAK_STRENGTH = 1e-8  # strengths below are rounding of what symmetry forbids, or of no weight at all
 _NOTHING = 1e-12  # strengths below are rounding
 _POLARISED = 0.15  # share of the intensity along an axis that is worth its letter
 
@@ -277,7 +278,9 @@ def _members(orbitals: IntArray, starts: IntArray, place: int) -> IntArray:
 def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: bool) -> Band:
     source, target = transfer.source, transfer.target
     lower, upper = labels.irreps[source[0]], labels.irreps[target[0]]
-    allowed = transfer.strength >= ALLOWED_STRENGTH
+    allowed = transfer.strength >= ALLOWED_STRENGTH or (
+        transfer.strength >= _WEAK_STRENGTH and _allowed_by_symmetry(labels.group, lower, upper)
+    )
     weak = _POLARISED * transfer.by_axis.sum()
     letters = [letter for letter, part in zip("xyz", transfer.by_axis, strict=True) if allowed and part > weak]
     return Band(
@@ -294,6 +297,14 @@ def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: 
         transfer_direction(*transfer.on_metal),
         transfer.on_metal[1] - transfer.on_metal[0],
     )
+
+
+def _allowed_by_symmetry(group: PointGroup | None, lower: str, upper: str) -> bool:
+    """Whether the product of two irreps holds that of an axis; not so without labels."""
+    if group is None or lower not in group.irreps or upper not in group.irreps:
+        return False
+    capitals = dict(zip(group.irreps, group.term_irreps, strict=True))
+    return bool(dipole_polarisations(group, capitals[lower], capitals[upper]))
 
 
 def _singlets(group: PointGroup | None, lower: tuple[str, int], upper: tuple[str, int]) -> str:

@@ -97,7 +97,10 @@ def spectroscopy(
     transfer = charge_transfer_bands(
         bonding.state, labels, orbitals, dipoles, site.symmetry.axes, bonding.populations.orbital_shares[:, 0]
     )
-    return replace(found, bands=found.bands + transfer)
+    withheld = found.withheld
+    if options.observed_bands_per_cm and found.fit is None and not any("observed bands" in said for said in withheld):
+        withheld = (*withheld, "fit to the observed bands: there are no terms to assign them to")
+    return replace(found, bands=found.bands + transfer, withheld=withheld)
 
 
 def _shell_results(

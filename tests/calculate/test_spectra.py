@@ -239,3 +239,16 @@ def test_bands_within_a_ligand_have_no_direction_to_the_metal():
     inside = [band for band in bands if band.direction == "intraligand"]
     assert inside
     assert all(abs(band.to_metal) < 0.2 for band in inside)
+
+
+def test_weak_bands_that_symmetry_allows_are_not_called_forbidden():
+    # C4v: e to b2 is allowed in x, y by the product E x B2 = E, however little the overlap gives it.
+    bands = [b for b in report_on("[FeO(OH2)5]2+").spectroscopy.bands if b.kind == "charge transfer"]
+    found = [b for b in bands if b.transition.split()[1::3] == ["e", "b2"] and b.oscillator_strength < 1e-4]
+    assert found
+    assert all(band.dipole_allowed and set(band.polarisation) <= set("xy, ") for band in found)
+
+
+def test_bands_given_for_an_empty_shell_are_named_as_withheld():
+    report = bond_report(SPECIES["VOCl3"].fragment(), options=Options(observed_bands_per_cm=(13000.0,)))
+    assert any("observed bands" in reason for reason in report.spectroscopy.withheld)
