@@ -19,6 +19,9 @@ def add_command(commands: Any) -> None:
     )
     add_store_options(parser)
     parser.add_argument("--json", metavar="PATH", help="also write it as JSON; - prints the JSON instead")
+    parser.add_argument(
+        "--page", metavar="OUT.html", help="also write a page with order against length by metal and donor"
+    )
     parser.set_defaults(handler=run)
 
 
@@ -28,13 +31,23 @@ def run(chosen: argparse.Namespace) -> str:
     from ehmo.report.summary_text import summary_text
     from ehmo.store import condition, summarise
 
-    if chosen.json == "":
-        raise InputError("--json needs a path", mend="give a file name, or - to print it")
-    if same_file(chosen.store, chosen.json):
-        raise InputError("that is the store itself", place=chosen.json, mend="give another file")
+    for name in ("json", "page"):
+        path = getattr(chosen, name)
+        if path == "":
+            raise InputError(f"--{name} needs a path", mend="give a file name")
+        if same_file(chosen.store, path):
+            raise InputError("that is the store itself", place=path, mend="give another file")
     where = None if chosen.where is None else condition(chosen.where)
     with opened(chosen) as store:
         summary = summarise(store, where)
+        page = None
+        if chosen.page is not None:
+            from ehmo.report.page.store import store_page
+            from ehmo.store.distributions import bond_points
+
+            page = store_page(summary, bond_points(store, where))
+    if page is not None:
+        write_whole(chosen.page, page)
     if chosen.json == "-":
         return summary_json(summary)
     if chosen.json is not None:

@@ -86,6 +86,8 @@ class Outlier:
         Its label, metal and kind of donor.
     length_A : float
         Its length [angstrom].
+    mayer : float or None
+        Its Mayer order.
     quantity : "mayer" or "length_A"
         Whether its Mayer order is far from the trend at its length, or its length far from the others.
     value : float
@@ -102,6 +104,7 @@ class Outlier:
     metal: str
     kind: str
     length_A: float
+    mayer: float | None
     quantity: Literal["mayer", "length_A"]
     value: float
     expected: float

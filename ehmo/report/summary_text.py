@@ -46,13 +46,13 @@ def _heading(summary: StoreSummary) -> list[str]:
     if summary.where is not None:
         lines += textwrap.wrap(f"Where {visible(summary.where)}", WIDTH, subsequent_indent="  ")
     lines.append(
-        f"{_counted(summary.done, 'structure')} done, {summary.failed:,} failed; {_counted(bonds, 'metal-donor bond')}"
+        f"{counted(summary.done, 'structure')} done, {summary.failed:,} failed; {counted(bonds, 'metal-donor bond')}"
     )
     if summary.doubted:
-        lines.append(f"{_counted(summary.doubted, 'structure')} done with something to doubt (column warnings)")
+        lines.append(f"{counted(summary.doubted, 'structure')} done with something to doubt (column warnings)")
     lines += [
         f"Set {visible(made.parameter_set)} ({visible(made.parameter_sha256[:12])}), "
-        f"ehmo {visible(made.program_version)}, results edition {made.results_edition}: {_counted(made.rows, 'row')}"
+        f"ehmo {visible(made.program_version)}, results edition {made.results_edition}: {counted(made.rows, 'row')}"
         for made in summary.calculations
     ]
     if summary.done + summary.failed:
@@ -125,10 +125,7 @@ def _order_row(kind: KindSummary) -> tuple[str, ...]:
 def _outliers(summary: StoreSummary) -> list[str]:
     if not summary.kinds:
         return []
-    rule = (
-        f"length, or Mayer order less that of the trend, more than {FENCE:g} interquartile ranges beyond the quartiles "
-        f"of its metal and kind, where that has {LEAST_BONDS} bonds"
-    )
+    rule = outlier_rule()
     if not summary.outliers:
         return _wrapped(f"Outliers: none ({rule})", "")
     rows: list[tuple[str, ...]] = [("bond", "donor", "length/Å", "far out", "value", "expected", "structure")]
@@ -137,6 +134,14 @@ def _outliers(summary: StoreSummary) -> list[str]:
     if summary.outliers_found > OUTLIERS_SHOWN:
         lines.append(f"  and {summary.outliers_found - OUTLIERS_SHOWN:,} nearer ones (--json lists them)")
     return lines
+
+
+def outlier_rule() -> str:
+    """What makes a bond an outlier."""
+    return (
+        f"length, or Mayer order less that of the line, more than {FENCE:g} interquartile ranges beyond the quartiles "
+        f"of its metal and kind, where that has {LEAST_BONDS} bonds"
+    )
 
 
 def _outlier_row(one: Outlier) -> tuple[str, ...]:
@@ -153,7 +158,8 @@ def _outlier_row(one: Outlier) -> tuple[str, ...]:
     )
 
 
-def _counted(count: int, thing: str) -> str:
+def counted(count: int, thing: str) -> str:
+    """Count with its thing in words, thousands set apart."""
     return f"{count:,} {thing}{'s' if count != 1 else ''}"
 
 

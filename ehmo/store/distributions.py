@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from typing import Literal
 
@@ -60,6 +60,7 @@ class _Far:
     metal: str
     kind: str
     length_A: float
+    mayer: float | None
     quantity: Literal["mayer", "length_A"]
     value: float
     expected: float
@@ -84,7 +85,7 @@ def bond_statistics(store: Store, where: Condition | None = None) -> BondStatist
     """
     kinds: list[KindSummary] = []
     far: list[_Far] = []
-    for bonds in _by_kind(store, where):
+    for bonds in _by_kind(store, where, QUANTITIES):
         present = {name: values[np.isfinite(values)] for name, values in bonds.values.items()}
         found = {name: distribution(values) for name, values in present.items() if len(values)}
         trend = _trend(bonds)
@@ -157,6 +158,7 @@ def _far(bonds: _Bonds, trend: Trend) -> Iterator[_Far]:
                 bonds.metal,
                 bonds.kind,
                 float(lengths[k]),
+                float(orders[k]) if np.isfinite(orders[k]) else None,
                 quantity,
                 float(values[k]),
                 float(expected[k]),
@@ -164,12 +166,33 @@ def _far(bonds: _Bonds, trend: Trend) -> Iterator[_Far]:
             )
 
 
-def _by_kind(store: Store, where: Condition | None) -> Iterator[_Bonds]:
-    """Bonds of each metal and kind."""
+def bond_points(store: Store, where: Condition | None = None) -> Iterator[tuple[str, str, FloatArray, FloatArray]]:
+    """Bonds of each metal and kind to be drawn.
+
+    Parameters
+    ----------
+    store : Store
+    where : Condition, optional
+        Only bonds that meet it.
+
+    Yields
+    ------
+    metal, kind : str
+    lengths_A, orders : (n,) ndarray
+        Lengths [angstrom] and Mayer orders of the bonds that have both.
+    """
+    for bonds in _by_kind(store, where, ("length_A", "mayer")):
+        lengths, orders = bonds.values["length_A"], bonds.values["mayer"]
+        both = np.isfinite(lengths) & np.isfinite(orders)
+        yield bonds.metal, bonds.kind, lengths[both], orders[both]
+
+
+def _by_kind(store: Store, where: Condition | None, names: Sequence[str]) -> Iterator[_Bonds]:
+    """Bonds of each metal and kind, with the values of these columns."""
     codes: dict[tuple[str, str], int] = {}
     places: list[NDArray[np.int64]] = []
     numbers: list[FloatArray] = []
-    for page in store.bond_pages(("metal", "kind", *QUANTITIES), where):
+    for page in store.bond_pages(("metal", "kind", *names), where):
         ids, at, metals, kinds, *columns = zip(*page, strict=True)
         code = [codes.setdefault(one, len(codes)) for one in zip(metals, kinds, strict=True)]
         places.append(np.array((code, ids, at), dtype=np.int64))
@@ -182,7 +205,7 @@ def _by_kind(store: Store, where: Condition | None) -> Iterator[_Bonds]:
     starts = np.searchsorted(rows[0], np.arange(len(codes) + 1))
     for (metal, kind), code_ in sorted(((tuple(map(str, names)), code) for names, code in codes.items())):
         some = slice(starts[code_], starts[code_ + 1])
-        yield _Bonds(metal, kind, rows[1, some], rows[2, some], dict(zip(QUANTITIES, values[:, some], strict=True)))
+        yield _Bonds(metal, kind, rows[1, some], rows[2, some], dict(zip(names, values[:, some], strict=True)))
 
 
 def _named(store: Store, far: list[_Far]) -> Iterator[Outlier]:
@@ -196,6 +219,7 @@ def _named(store: Store, far: list[_Far]) -> Iterator[Outlier]:
             one.metal,
             one.kind,
             one.length_A,
+            one.mayer,
             one.quantity,
             one.value,
             one.expected,

@@ -12,12 +12,12 @@ from ehmo import __version__
 from ehmo.errors import InputError
 from ehmo.records.report import BondReport
 from ehmo.records.wording import electrons_in_words
-from ehmo.report.look import DARK, LIGHT, PAGE_FONTS, Look
 from ehmo.report.method import method_paragraph
 from ehmo.report.page.bonds import bond_entries
 from ehmo.report.page.diagram import diagram_figure
 from ehmo.report.page.downloads import cube_orbitals, file_links, packed_cubes
 from ehmo.report.page.formulas import formula_markup, formula_plain
+from ehmo.report.page.frame import colours, own_file
 from ehmo.report.page.markup import Content, Markup, content_hash, element, embedded_json, markup
 from ehmo.report.page.sections import (
     bond_table,
@@ -116,8 +116,8 @@ def plotting_library() -> str:
 
 
 def _document(report: BondReport, body: Markup, data: dict[str, Any], library: str) -> str:
-    style = f"{_colours()}\n{_own_file('page.css')}"
-    script = _own_file("page.js")
+    style = f"{colours()}\n{own_file('page.css')}"
+    script = own_file("page.js")
     # Styles are not restricted to hashes: the plotting library sets them on its elements. They can load nothing.
     policy = "; ".join(
         (
@@ -150,24 +150,6 @@ def _document(report: BondReport, body: Markup, data: dict[str, Any], library: s
         element("script", Markup(script)),
     )
     return f"<!DOCTYPE html>\n{element('html', head, whole, lang='en')}\n"
-
-
-def _own_file(name: str) -> str:
-    return resources.files("ehmo.report.page").joinpath(name).read_text("utf-8")
-
-
-def _colours() -> str:
-    """Colours of the looks as variables: light on screen and paper, dark where the reader's screen is dark."""
-    fonts = ", ".join(f'"{font}"' if " " in font else font for font in PAGE_FONTS)
-
-    def variables(look: Look) -> str:
-        roles = [role for role in look.__slots__ if role != "name"]
-        return " ".join(f"--{role}: {getattr(look, role)};" for role in roles)
-
-    return (
-        f":root {{ {variables(LIGHT)} --fonts: {fonts}; }}\n"
-        f"@media screen and (prefers-color-scheme: dark) {{ :root {{ {variables(DARK)} }} }}"
-    )
 
 
 def _top(report: BondReport) -> Markup:
