@@ -44,6 +44,7 @@ __all__ = [
     "Options",
     "__version__",
     "bond_report",
+    "figures",
     "from_ase",
     "open_store",
     "read",
@@ -57,6 +58,8 @@ def __dir__() -> list[str]:
 
 
 def __getattr__(name: str) -> Any:
+    if name == "figures":
+        return import_module("ehmo.figures")
     if name in _HOMES:
         return getattr(import_module(_HOMES[name]), name)
     raise AttributeError(f"module 'ehmo' has no attribute {name!r}")

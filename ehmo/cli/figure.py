@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 import math
 from collections.abc import Callable, Sequence
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from ehmo.cli import bond
 from ehmo.cli.output import same_file, write_whole
@@ -13,9 +13,7 @@ from ehmo.cli.stores import WAIT_S, open_for_reading
 from ehmo.cli.structures import add_structure_options, chosen_fragments, extended_crystals, listing
 from ehmo.errors import InputError
 from ehmo.report.figures.catalogue import FIGURE_KINDS, FigureKind
-
-if TYPE_CHECKING:
-    from ehmo.records.report import BondReport
+from ehmo.report.figures.choice import labelled
 
 _NARROWEST_MM, _WIDEST_MM = 60.0, 400.0
 _OPTIONS = ("bond", "bands", "spread", "mesh", "path", "window", "where")
@@ -111,7 +109,8 @@ def _molecule(chosen: argparse.Namespace) -> Drawn:
         from ehmo.studies.spread import spread_report
 
         report = spread_report(fragment, table, options, draws=chosen.spread)
-    return report, {} if chosen.bond is None else {"bond": bond_place(report, chosen.bond)}
+    labels = [report.bond_label(one) for one in report.coordination.bonds]
+    return report, {} if chosen.bond is None else {"bond": labelled(labels, chosen.bond, chosen.file)}
 
 
 def _crystal(chosen: argparse.Namespace) -> Drawn:
@@ -136,7 +135,7 @@ def _scan(chosen: argparse.Namespace) -> Drawn:
     from ehmo.report.scan_reading import read_scan
 
     scan = read_scan(chosen.file, max_bytes=chosen.max_bytes)
-    return scan, {} if chosen.bond is None else {"bond": _place(scan.bond_labels, chosen.bond, chosen.file)}
+    return scan, {} if chosen.bond is None else {"bond": labelled(scan.bond_labels, chosen.bond, chosen.file)}
 
 
 def _store(chosen: argparse.Namespace) -> Drawn:
@@ -147,13 +146,13 @@ def _store(chosen: argparse.Namespace) -> Drawn:
     from ehmo.store import condition
 
     where = None if chosen.where is None else condition(chosen.where)
-    names = ("metal", "donor", "kind", "length_A", "mayer", "source", "entry", "bond")
+    names = ("metal", "kind", "length_A", "mayer", "source", "entry", "bond")
     bonds = []
     with open_for_reading(chosen.file, WAIT_S) as store:
-        for metal, donor, kind, length, mayer, source, entry, label in store.cells("bonds", where, names):
+        for metal, kind, length, mayer, source, entry, label in store.cells("bonds", where, names):
             if isinstance(length, float) and isinstance(mayer, float):
                 name = " ".join(word for word in (PurePath(str(source or "")).name, str(entry or "")) if word)
-                bonds.append(PlottedBond(str(metal), str(donor), str(kind), length, mayer, name, str(label)))
+                bonds.append(PlottedBond(str(metal), str(kind), length, mayer, name, str(label)))
     return bonds, {}
 
 
@@ -182,23 +181,3 @@ def _window(words: str) -> tuple[float, float]:
     if not (math.isfinite(low) and math.isfinite(high) and low < high):
         raise InputError(f"--window {words!r} is no window of energies", mend="give two energies in eV such as -8,6")
     return low, high
-
-
-def bond_place(report: BondReport, words: str) -> int:
-    """Place of a bond in a report by its label.
-
-    Raises
-    ------
-    InputError
-        If the report has no such bond.
-    """
-    return _place([report.bond_label(one) for one in report.coordination.bonds], words, report.fragment.source)
-
-
-def _place(labels: Sequence[str], words: str, where: str) -> int:
-    wanted = words.strip().lower()
-    for place, label in enumerate(labels):
-        if wanted in (label.lower(), "-".join(reversed(label.lower().split("-")))):
-            return place
-    some = ", ".join(labels[:6]) + (" ..." if len(labels) > 6 else "")
-    raise InputError(f"there is no bond {words!r}", place=where, mend=f"bonds are {some}")

@@ -9,6 +9,7 @@ from ehmo.records.arrays import FloatArray, frozen_floats
 from ehmo.records.basis import Basis
 from ehmo.records.bonding import BondChannel
 from ehmo.records.coordination import MetalDonorBond
+from ehmo.records.markup import html_sentences, html_table
 from ehmo.records.report import BondReport
 
 Theory = Literal["pbe", "b3lyp", "hf"]
@@ -253,3 +254,15 @@ class Crosscheck:
     bonds: tuple[BondComparison, ...]
     ladders: tuple[LadderComparison, ...]
     frontier: FrontierComparison
+
+    def _repr_html_(self) -> str:
+        """Both sides of each bond as a table for a notebook."""
+        labels = self.report.fragment.labels
+        rows = [["bond", "kind", "Mayer", "of the run", "overlap pop.", "of the run", "verdict"]]
+        for one in self.bonds:
+            ours, other = one.ours, one.reference
+            numbers = (ours.mayer, other.mayer, ours.overlap_population, other.overlap_population)
+            name = f"{labels[one.bond.metal]}-{labels[one.bond.donor]}"
+            rows.append([name, one.bond.kind, *(f"{value:z.2f}" for value in numbers), one.verdict.words])
+        caption = f"{self.report.fragment.formula} beside {self.run.theory} in a minimal basis ({self.run.program})"
+        return html_table(caption, rows, (2, 3, 4, 5)) + html_sentences("To doubt in the run", self.run.doubts)

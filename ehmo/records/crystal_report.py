@@ -12,7 +12,9 @@ from ehmo.records.bonding import BondOrders
 from ehmo.records.crystal import MetalDonorUnit
 from ehmo.records.crystal_electronic import CrystalBonding, EnergyCurve
 from ehmo.records.fragment import hill_formula
+from ehmo.records.markup import html_sentences, html_table
 from ehmo.records.report import Method
+from ehmo.records.wording import channel_weights
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -102,3 +104,23 @@ class CrystalReport:
             basis.shell_label(int(shell)): float((hybrid[shells == shell] ** 2).sum())
             for shell in dict.fromkeys(shells)
         }
+
+    def _repr_html_(self) -> str:
+        """Bonds of the asymmetric unit as a table for a notebook, with what was assumed and what is doubtful."""
+        gap = self.bonding.gap
+        kind = "metal" if gap is None else f"gap {gap.gap_eV:.2f} eV, {'direct' if gap.is_direct else 'indirect'}"
+        caption = f"{', '.join(self.networks) or self.formula}: {kind}, set {self.method.parameter_set}"
+        rows = [["bond", "kind", "n", "length/Å", "overlap pop.", "Mayer", "Wiberg", "channels and their weights"]]
+        for unit, orders in self.bonds():
+            rows.append(
+                [
+                    f"{unit.metal}-{unit.donor}",
+                    unit.kind,
+                    str(unit.per_metal),
+                    f"{unit.length_A:.3f}",
+                    *(f"{value:z.2f}" for value in (orders.overlap_population, orders.mayer, orders.wiberg)),
+                    channel_weights(orders.channels),
+                ]
+            )
+        parts = [html_table(caption, rows, range(2, 7)), html_sentences("To doubt", self.warnings, shown=True)]
+        return "".join([*parts, html_sentences("Assumed", self.assumptions)])

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import dataclass
-from html import escape
 
 import numpy as np
 
@@ -18,6 +17,7 @@ from ehmo.records.electronic import ElectronicState
 from ehmo.records.formal_order import FormalOrder
 from ehmo.records.fragment import Fragment
 from ehmo.records.health import Health
+from ehmo.records.markup import html_sentences, html_table
 from ehmo.records.reactivity import DonorReactivity
 from ehmo.records.site import MetalSite, Spectroscopy
 from ehmo.records.spread import LevelSpread, Spread
@@ -199,12 +199,11 @@ class BondReport:
     __repr__ = __str__
 
     def _repr_html_(self) -> str:
-        head, *body = self._rows()
-        rows = ["".join(f"<th>{escape(cell)}</th>" for cell in head)]
-        rows += ["".join(f"<td>{escape(cell)}</td>" for cell in row) for row in body]
-        sentences = "".join(f"<li>{escape(sentence)}</li>" for sentence in (*self.assumptions, *self.warnings))
-        table = "".join(f"<tr>{row}</tr>" for row in rows)
-        return f"<table><caption>{escape(self._heading())}</caption>{table}</table><ul>{sentences}</ul>"
+        """Bonds and levels as tables for a notebook, with what was assumed and what is doubtful."""
+        parts = [html_table(self._heading(), self._rows(), BOND_NUMBERS)]
+        parts += [html_table(*_levels(self, site), (1, 2, 3, 4)) for site in self.sites if site.ladder is not None]
+        parts += [html_sentences("To doubt", self.warnings, shown=True), html_sentences("Assumed", self.assumptions)]
+        return "".join(parts)
 
     def _heading(self) -> str:
         fragment, method = self.fragment, self.method
@@ -214,3 +213,23 @@ class BondReport:
     def _rows(self) -> list[list[str]]:
         spreads = None if self.spread is None else self.spread.bonds
         return bond_rows(self.coordination.bonds, self.orders, self.formal_orders, self.fragment.labels, spreads)
+
+
+def _levels(report: BondReport, site: MetalSite) -> tuple[str, list[list[str]]]:
+    """Caption, heading and rows of the ladder of a metal, topmost level first."""
+    levels = () if site.ladder is None else site.ladder.levels
+    rows = [["level", "above lowest/eV", "electrons", "metal/%", "donors/%"]]
+    for level in reversed(levels):
+        irrep = "" if report.irreps is None or level.orbital is None else report.irreps.labels[level.orbital]
+        rows.append(
+            [
+                f"{irrep} {level.function}".strip(),
+                f"{level.energy_eV - levels[0].energy_eV:.2f}",
+                f"{round(level.electrons, 2):g}",
+                f"{100 * level.metal_share:.0f}",
+                f"{100 * level.donor_share:.0f}",
+            ]
+        )
+    shell = "" if site.ladder is None else site.ladder.shell
+    ground = f", ground term {report.spectroscopy.ground_term}" if report.spectroscopy.ground_term else ""
+    return f"{report.fragment.labels[site.metal]} {shell} levels{ground}", rows

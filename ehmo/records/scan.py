@@ -6,6 +6,7 @@ from dataclasses import dataclass
 from typing import Literal
 
 from ehmo.records.arrays import FloatArray, IntArray, frozen_floats, frozen_ints
+from ehmo.records.markup import html_sentences, html_table
 
 Coordinate = Literal["length", "angle"]
 
@@ -230,3 +231,23 @@ class Scan:
     minimum: ScanMinimum | None = None
     parameter_sha256: str = ""
     constants: tuple[tuple[str, float | bool | None], ...] = ()
+
+    def _repr_html_(self) -> str:
+        """Points as a table for a notebook, with crossings and what is withheld."""
+        place = self.scanned_bond or 0
+        named, unit = "-".join(self.labels[atom] for atom in self.plan.atoms), "Å"
+        unit = unit if self.plan.coordinate == "length" else "degree"
+        heading = [f"{named}/{unit}", "overlap pop.", "Mayer", "sigma", "pi", "ground term", "energy/eV"]
+        rows = [heading]
+        for point in self.points:
+            if point.fault:
+                rows.append([f"{point.value:g}", "", "", "", "", point.fault, ""])
+                continue
+            bond = point.bonds[place]
+            numbers = (bond.overlap_population, bond.mayer, bond.sigma, bond.pi)
+            energy = "" if point.energy_eV is None else f"{point.energy_eV:.3f}"
+            rows.append([f"{point.value:g}", *(f"{value:z.2f}" for value in numbers), point.ground_term, energy])
+        label = self.bond_labels[place] if self.bond_labels else ""
+        caption = f"scan of {named}, numbers of {label}; set {self.parameter_set}, {self.charge_model} charges"
+        parts = [html_table(caption, rows, (0, 1, 2, 3, 4, 6)), html_sentences("Crossings", self.crossings, shown=True)]
+        return "".join([*parts, html_sentences("Withheld", self.withheld), html_sentences("Assumed", self.plan.notes)])

@@ -13,6 +13,7 @@ import numpy as np
 from ehmo.errors import InputError
 from ehmo.records.arrays import FloatArray
 from ehmo.records.report import BondReport
+from ehmo.records.store_summary import Trend
 from ehmo.report.figures.canvas import (
     DOUBLE_COLUMN_CM,
     SMALL_POINTS,
@@ -26,6 +27,8 @@ from ehmo.report.figures.canvas import (
 from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.markup import write
 from ehmo.report.look import LIGHT, Look
+from ehmo.store.distributions import FENCE, LEAST_BONDS, LEAST_RANGES, beyond_quartiles
+from ehmo.store.trends import resistant_line
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -35,22 +38,12 @@ MOST_PANELS: Final = 12
 MOST_NAMED: Final = 12
 """Metals with a panel of their own, and bonds off the trend that are named."""
 
-ENOUGH: Final = 8
-"""Bonds of one metal and kind from which a trend is drawn."""
-
-OFF_TREND: Final = 4.0
-"""Distance from the trend, in robust standard deviations, from which a bond is named."""
-
-LEAST_OFF: Final = 0.15
-"""Smaller distances are never named, however tight the trend."""
-
 _MANY_POINTS = 2000  # drawn as a picture within the figure beyond
 _PANEL_CM, _GAP_CM, _LEFT_CM, _BOTTOM_CM, _TOP_CM = 2.7, 0.3, 1.05, 1.05, 0.75
 _WANTED_PANEL_CM = 3.4
 _MOST_ROWS = 5
 _LINE_CM = 0.31
 _MARKERS = ("o", "s", "^", "D")
-_ROBUST = 1.4826  # median absolute deviation to standard deviation
 
 
 @dataclass(frozen=True, slots=True)
@@ -61,8 +54,6 @@ class PlottedBond:
     ----------
     metal : str
         Symbol.
-    donor : str
-        Symbol.
     kind : str
         Kind of the donor.
     length_A : float
@@ -72,7 +63,6 @@ class PlottedBond:
     """
 
     metal: str
-    donor: str
     kind: str
     length_A: float
     mayer: float
@@ -105,7 +95,6 @@ def bonds_of(reports: Iterable[BondReport]) -> list[PlottedBond]:
             found.append(
                 PlottedBond(
                     report.fragment.symbols[bond.metal],
-                    report.fragment.symbols[bond.donor],
                     str(bond.kind),
                     bond.length_A,
                     report.orders[place].mayer,
@@ -117,7 +106,7 @@ def bonds_of(reports: Iterable[BondReport]) -> list[PlottedBond]:
 
 
 def off_trend(bonds: Sequence[PlottedBond]) -> list[OffTrend]:
-    """Bonds far from the trend of their metal, donor and kind, farthest first; of equal ones in a structure the first.
+    """Bonds far off the order-length line of their metal and kind, by the rule of the summary of a store.
 
     Parameters
     ----------
@@ -126,28 +115,27 @@ def off_trend(bonds: Sequence[PlottedBond]) -> list[OffTrend]:
     Returns
     -------
     off : list of OffTrend
+        Farthest from the line first; of those that are alike in a structure the first.
     """
     found: dict[tuple[str, str, str, float, float], OffTrend] = {}
     for members in _groups(bonds).values():
         line = _trend(members)
         if line is None:
             continue
-        slope, offset = line
-        lengths, orders = _arrays(members)
-        distances = orders - (slope * lengths + offset)
-        scale = max(_ROBUST * float(np.median(np.abs(distances))), 1e-6)
-        for bond, distance in zip(members, distances, strict=True):
-            if abs(distance) >= max(LEAST_OFF, OFF_TREND * scale):
-                like = (bond.source, bond.metal, bond.kind, round(bond.length_A, 2), round(bond.mayer, 2))
-                found.setdefault(like, OffTrend(bond, float(distance)))
+        distances = np.array([bond.mayer - line.at(bond.length_A) for bond in members])
+        far = beyond_quartiles(distances, LEAST_RANGES["mayer"]) > FENCE
+        for k in np.flatnonzero(far):
+            bond = members[k]
+            like = (bond.source, bond.metal, bond.kind, round(bond.length_A, 2), round(bond.mayer, 2))
+            found.setdefault(like, OffTrend(bond, float(distances[k])))
     return sorted(found.values(), key=lambda off: (-abs(off.distance), off.bond.source, off.bond.label))
 
 
-def _groups(bonds: Sequence[PlottedBond]) -> dict[tuple[str, str, str], list[PlottedBond]]:
-    """Bonds of one metal, donor and kind."""
-    groups: dict[tuple[str, str, str], list[PlottedBond]] = {}
+def _groups(bonds: Sequence[PlottedBond]) -> dict[tuple[str, str], list[PlottedBond]]:
+    """Bonds of one metal and kind."""
+    groups: dict[tuple[str, str], list[PlottedBond]] = {}
     for bond in bonds:
-        groups.setdefault((bond.metal, bond.donor, bond.kind), []).append(bond)
+        groups.setdefault((bond.metal, bond.kind), []).append(bond)
     return groups
 
 
@@ -155,28 +143,17 @@ def _arrays(bonds: Sequence[PlottedBond]) -> tuple[FloatArray, FloatArray]:
     return np.array([bond.length_A for bond in bonds]), np.array([bond.mayer for bond in bonds])
 
 
-def _trend(bonds: Sequence[PlottedBond]) -> tuple[float, float] | None:
-    """Slope and offset of the line that half of the bonds lie above (Theil and Sen); None for too few bonds."""
-    from scipy.stats import theilslopes
-
-    if len(bonds) < ENOUGH:
-        return None
-    # The line of a sample is that of all; pairs grow with the square of their number.
-    chosen = bonds if len(bonds) <= 600 else bonds[:: len(bonds) // 600 + 1]
-    lengths, orders = _arrays(chosen)
-    if np.ptp(lengths) < 1e-3:
-        return 0.0, float(np.median(orders))
-    slope = float(theilslopes(orders, lengths)[0])
-    lengths, orders = _arrays(bonds)
-    return slope, float(np.median(orders - slope * lengths))
+def _trend(bonds: Sequence[PlottedBond]) -> Trend | None:
+    """Line of the bonds of one metal and kind; None for too few."""
+    return resistant_line(*_arrays(bonds)) if len(bonds) >= LEAST_BONDS else None
 
 
 @drawn
 def overview_figure(bonds: Sequence[PlottedBond], *, look: Look = LIGHT, width_cm: float = DOUBLE_COLUMN_CM) -> Figure:
     """Mayer order against length, one panel for each metal, one mark for each kind of donor.
 
-    Lines are the trends of a metal and kind with enough bonds. Numbered bonds lie off their trend; their names stand
-    under the panels.
+    Lines and numbered bonds are those of the summary of a store: resistant lines, and bonds far off them. Their names
+    stand under the panels.
 
     Parameters
     ----------
@@ -260,7 +237,7 @@ def _style(kind: str, kinds: Sequence[str], look: Look) -> tuple[str, str]:
 
 
 def _draw_bonds(axes: Axes, bonds: Sequence[PlottedBond], kinds: Sequence[str], look: Look) -> None:
-    for (_, _, kind), members in _groups(bonds).items():
+    for (_, kind), members in _groups(bonds).items():
         marker, colour = _style(kind, kinds, look)
         lengths, orders = _arrays(members)
         axes.plot(
@@ -268,9 +245,9 @@ def _draw_bonds(axes: Axes, bonds: Sequence[PlottedBond], kinds: Sequence[str], 
             mec=colour, mew=0.6, ls="none", zorder=3, gid="bonds", rasterized=len(bonds) > _MANY_POINTS,
         )  # fmt: skip
         line = _trend(members)
-        if line is not None and np.ptp(lengths) >= 1e-3:
-            ends = np.array([lengths.min(), lengths.max()])
-            axes.plot(ends, line[0] * ends + line[1], color=colour, lw=0.8, alpha=0.8, zorder=2, gid="trend")
+        if line is not None:
+            ends = (float(lengths.min()), float(lengths.max()))
+            axes.plot(ends, [line.at(x) for x in ends], color=colour, lw=0.8, alpha=0.8, zorder=2, gid="trend")
 
 
 def _draw_numbers(

@@ -7,6 +7,7 @@ from ehmo.errors import InputError
 from ehmo.report.figures.canvas import figure_bytes
 from ehmo.report.figures.overview import MOST_NAMED, PlottedBond, bonds_of, off_trend, overview_figure
 from ehmo.report.look import DARK, LIGHT
+from ehmo.store.trends import resistant_line
 from tests.report.figures.boxes import outside, overlapping, words
 from tests.report.figures.reports import SIMPLE_TO_CROWDED, report
 
@@ -23,9 +24,7 @@ def strewn(metals=("V", "Mo", "W"), off=(), count=40):
                 at = length + 0.05 * random.standard_normal()
                 mayer = order - 2 * (at - length) + 0.02 * random.standard_normal()
                 mayer += dict(off).get((metal, kind, k), 0.0)
-                bonds.append(
-                    PlottedBond(metal, "Cl" if kind == "halide" else "O", kind, at, mayer, f"{k}.cif", "M1-X2")
-                )
+                bonds.append(PlottedBond(metal, kind, at, mayer, f"{k}.cif", "M1-X2"))
     return bonds
 
 
@@ -50,7 +49,7 @@ def test_every_bond_of_some_reports_is_drawn():
 
 @pytest.mark.parametrize(("look", "width"), [(LIGHT, 8.4), (DARK, 17.4)])
 def test_no_two_words_overlap(look, width):
-    off = [(("V", "oxo", k), 0.3 + 0.02 * k) for k in range(8)] + [(("W", "aqua", k), 0.4) for k in range(8)]
+    off = [(("V", "oxo", k), 0.6 + 0.02 * k) for k in range(5)] + [(("W", "aqua", k), 0.7) for k in range(5)]
     metals = ("V", "Mo", "W", "Cr", "Re", "Os", "U", "Fe", "Mn", "Ti", "Tc", "Ru", "Nb", "Ta")
     figure = overview_figure(strewn(metals, off, 25), look=look, width_cm=width)
     assert overlapping(figure) == []
@@ -59,7 +58,7 @@ def test_no_two_words_overlap(look, width):
 
 
 def test_bonds_off_their_trend_are_found_and_no_others():
-    off = {("V", "oxo", 3): 0.5, ("W", "halide", 8): -0.4, ("Mo", "aqua", 1): 0.3}
+    off = {("V", "oxo", 3): 0.8, ("W", "halide", 8): -0.6, ("Mo", "aqua", 1): 0.5}
     found = off_trend(strewn(off=off.items()))
     assert [(one.bond.metal, one.bond.kind, one.bond.source) for one in found] == [
         (metal, kind, f"{k}.cif") for metal, kind, k in off
@@ -67,25 +66,33 @@ def test_bonds_off_their_trend_are_found_and_no_others():
     assert [one.distance for one in found] == pytest.approx(list(off.values()), abs=0.08)
 
 
+def test_lines_and_outliers_are_those_of_the_summary():
+    bonds = [bond for bond in strewn(("V",)) if bond.kind == "oxo"]
+    line = resistant_line(np.array([b.length_A for b in bonds]), np.array([b.mayer for b in bonds]))
+    figure = overview_figure(bonds)
+    drawn = next(one for one in figure.axes[1].lines if one.get_gid() == "trend")
+    assert drawn.get_ydata() == pytest.approx([line.at(x) for x in drawn.get_xdata()])
+
+
 def test_few_bonds_have_no_trend():
-    off = {("V", "oxo", 3): 0.5}
-    assert off_trend(strewn(off=off.items(), count=7)) == []
-    assert len(off_trend(strewn(off=off.items(), count=8))) == 1
+    off = {("V", "oxo", 3): 0.8}
+    assert off_trend(strewn(off=off.items(), count=11)) == []
+    assert len(off_trend(strewn(off=off.items(), count=12))) == 1
 
 
 def test_names_stand_under_the_panels_and_their_number_in_them():
-    off = [(("V", "oxo", k), 1.0 + 0.05 * k) for k in range(9)] + [(("Mo", "oxo", k), 1.0 + 0.05 * k) for k in range(9)]
+    off = [(("V", "oxo", k), 1.0 + 0.05 * k) for k in range(7)] + [(("Mo", "oxo", k), 1.0 + 0.05 * k) for k in range(7)]
     figure = overview_figure(strewn(off=off))
     numbers = [text.get_text() for text in figure.axes[0].texts if text.get_gid() == "number"]
     named = [text.get_text() for text in figure.axes[0].texts if text.get_gid() == "named"]
     assert sorted(map(int, numbers)) == list(range(1, MOST_NAMED + 1))
     assert len(named) == 2 * MOST_NAMED
-    assert any("8.cif M1-X2, oxo" in text for text in named)
+    assert any("6.cif M1-X2, oxo" in text for text in named)
 
 
 def test_hostile_names_are_inert_and_shortened():
     bonds = strewn(off=[(("V", "oxo", 3), 0.9)])
-    bonds = [b if abs(b.mayer - 2.2) < 0.7 or b.kind != "oxo" else PlottedBond(b.metal, b.donor, b.kind, b.length_A,
+    bonds = [b if abs(b.mayer - 2.2) < 0.7 or b.kind != "oxo" else PlottedBond(b.metal, b.kind, b.length_A,
              b.mayer, HOSTILE, "V1-O2") for b in bonds]  # fmt: skip
     figure = overview_figure(bonds)
     assert outside(figure) == []
@@ -104,4 +111,4 @@ def test_no_bonds_are_refused():
     with pytest.raises(InputError, match="no bonds"):
         overview_figure([])
     with pytest.raises(InputError, match="no bonds"):
-        overview_figure([PlottedBond("V", "O", "oxo", float("nan"), 1.0, "a", "b")])
+        overview_figure([PlottedBond("V", "oxo", float("nan"), 1.0, "a", "b")])
