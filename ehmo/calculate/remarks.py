@@ -72,9 +72,11 @@ def electronic_warnings(
     )
 
 
-def site_warnings(fragment: Fragment, coordination: Coordination, sites: tuple[MetalSite, ...]) -> tuple[str, ...]:
+def site_warnings(
+    fragment: Fragment, coordination: Coordination, sites: tuple[MetalSite, ...], oxidation_total: int | None
+) -> tuple[str, ...]:
     """Sentences on oxidation states that bond lengths contradict, on irregular spheres and on missing ladders."""
-    said = []
+    said = _mean_state_warning(fragment, sites, oxidation_total)
     for site in sites:
         label = fragment.labels[site.metal]
         if site.bond_valence_sum is not None and site.oxidation_state is not None:
@@ -101,6 +103,23 @@ def site_warnings(fragment: Fragment, coordination: Coordination, sites: tuple[M
             for ligand in {ligand.formula: ligand for ligand in doubtful}.values()
         ]
     return tuple(said)
+
+
+def _mean_state_warning(fragment: Fragment, sites: tuple[MetalSite, ...], oxidation_total: int | None) -> list[str]:
+    """Sentence on metals of one element whose bond-valence sums contradict their mean oxidation state."""
+    if len(sites) == 1 or oxidation_total is None or len({fragment.symbols[site.metal] for site in sites}) > 1:
+        return []
+    mean = oxidation_total / len(sites)
+    sums = [(fragment.labels[site.metal], site.bond_valence_sum) for site in sites if site.bond_valence_sum is not None]
+    far = [(label, total) for label, total in sums if abs(total - mean) > BOND_VALENCE_GAP]
+    if not far:
+        return []
+    low, high = (f"{extreme(total for _, total in far):.2f}" for extreme in (min, max))
+    several = f"sums of {', '.join(label for label, _ in far)} are" if len(far) > 1 else f"sum of {far[0][0]} is"
+    return [
+        f"the bond-valence {several} {low if low == high else f'{low} to {high}'}, counting gives {mean:.3g} on the "
+        "average: check charge, hydrogens and the oxidation states"
+    ]
 
 
 def spectrum_warnings(spectrum: Spectroscopy) -> tuple[str, ...]:

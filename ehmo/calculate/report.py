@@ -155,7 +155,7 @@ def known_report(
             *coordination.warnings,
             *electronic_warnings(fragment, coordination, electrons, bonding),
             *health_warnings(fragment, coordination, health),
-            *site_warnings(fragment, coordination, sites),
+            *site_warnings(fragment, coordination, sites, electrons.metal_oxidation_total),
             *spectrum_warnings(spectrum),
         ),
     )

@@ -27,9 +27,6 @@ _FORBIDDEN_STRENGTH = 1e-7  # rounding of a strength that symmetry makes zero
 _VISIBLE_STRENGTH = 0.01
 _AXIAL = 0.005
 
-TRANSFER_HEADING = " (of charge transfer: direction, and the part of the electron that moves onto the metal)"
-"""What the kinds of charge-transfer bands mean."""
-
 LADDER_NUMBERS = tuple(range(2, 8))
 TERM_NUMBERS = (1, 4)
 BAND_NUMBERS = (0, 4, 7)
@@ -244,9 +241,15 @@ def _band_lines(bands: Sequence[Band], deviations: Sequence[float | None] | None
         return []
     rows, rest = band_rows(bands, deviations)
     more = [f"  and {rest} more, in the JSON"] if rest else []
+    return [bands_heading(bands), *aligned(rows, numeric=BAND_NUMBERS, indent="  "), *more]
+
+
+def bands_heading(bands: Sequence[Band]) -> str:
+    """Heading of a table of bands, which says how to read the kinds."""
     transfer = any(band.kind == "charge transfer" for band in bands)
-    heading = f"Bands{TRANSFER_HEADING if transfer else ''}"
-    return [heading, *aligned(rows, numeric=BAND_NUMBERS, indent="  "), *more]
+    return (
+        "Bands" + " (of charge transfer: direction, and the part of the electron that moves onto the metal)" * transfer
+    )
 
 
 def band_rows(bands: Sequence[Band], deviations: Sequence[float | None] | None) -> tuple[list[list[str]], int]:

@@ -18,6 +18,7 @@ from ehmo.report.ladder_text import ladder_text
 from ehmo.units import BOHR_A, HARTREE_EV, PER_CM_PER_EV
 from tests.geometries import SPECIES
 from tests.molecule_builder import polar
+from tests.structure.ligand_cases import dichromate
 
 VOCL3 = np.array([[0, 0, 0], [0, 0, 1.57], [2.042, 0, -0.647], [-1.021, 1.768, -0.647], [-1.021, -1.768, -0.647]])
 
@@ -229,3 +230,12 @@ def test_unpaired_density_off_the_metal_is_a_doubt(standard):
     moved = replace(b, populations=replace(b.populations, spin=np.array([0.4, 0.4, 0.4, 0.4, 0.4])))
     said = electronic_warnings(report.fragment, report.coordination, report.electrons, moved)
     assert any("only 20 %" in warning for warning in said)
+
+
+def test_bond_valences_of_several_equal_metals_are_held_against_their_mean_state():
+    good = replace(dichromate(), charge=-2, unpaired_electrons=0)
+    stretched = replace(good, positions_A=good.positions_A * 1.03)
+    told = [warning for warning in bond_report(stretched).warnings if "bond-valence" in warning]
+    assert told
+    assert "counting gives 6 on the average" in told[0]
+    assert not [warning for warning in bond_report(good).warnings if "bond-valence" in warning]

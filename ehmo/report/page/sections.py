@@ -13,6 +13,7 @@ from ehmo.report.ladder_text import (
     LADDER_NUMBERS,
     TERM_NUMBERS,
     band_rows,
+    bands_heading,
     constants_in_words,
     ladder_heading,
     ladder_rows,
@@ -225,7 +226,7 @@ def spectrum_section(report: BondReport) -> Markup | None:
         spread = None if report.spread is None else report.spread.bands_per_cm
         rows, rest = band_rows(spectrum.bands, spread)
         more = f"; {rest} more are in the JSON" if rest else ""
-        parts.append(numbers_table(rows, f"Bands{more}", BAND_NUMBERS))
+        parts.append(numbers_table(rows, f"{bands_heading(spectrum.bands)}{more}", BAND_NUMBERS))
     if spectrum.magnetism is not None:
         parts += [element("h3", "Magnetism"), listed(magnetism_sentences(spectrum, spectrum.magnetism))]
     return section("spectrum", "Terms, bands, magnetism", parts) if parts else None
