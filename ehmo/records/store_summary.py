@@ -64,7 +64,7 @@ class KindSummary:
     distributions : mapping of str to Distribution
         By column of the store; columns without any value are left out.
     trend : Trend or None
-        Mayer order against length; None where no bond has both.
+        Mayer order against length; None where too few bonds have both.
     """
 
     metal: str

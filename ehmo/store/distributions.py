@@ -25,7 +25,7 @@ LEAST_RANGES = {"mayer": 0.1, "length_A": 0.1}
 """Interquartile ranges taken at least, so that nearly equal values make no outliers of small differences."""
 
 LEAST_BONDS = 12
-"""Bonds of one metal and kind from which outliers are sought."""
+"""Bonds of one metal and kind from which a line is drawn and outliers are sought."""
 
 MOST_OUTLIERS = 1000
 """Outliers listed; all are counted."""
@@ -138,7 +138,8 @@ def beyond_quartiles(values: FloatArray, least_range: float) -> FloatArray:
 def _trend(bonds: _Bonds) -> Trend | None:
     lengths, orders = bonds.values["length_A"], bonds.values["mayer"]
     both = np.isfinite(lengths) & np.isfinite(orders)
-    return resistant_line(lengths[both], orders[both]) if both.any() else None
+    # The line of a few bonds of one or two compounds says nothing.
+    return resistant_line(lengths[both], orders[both]) if both.sum() >= LEAST_BONDS else None
 
 
 def _far(bonds: _Bonds, trend: Trend) -> Iterator[_Far]:

@@ -16,12 +16,15 @@ from hypothesis import strategies as st
 from pyarrow import parquet
 
 import ehmo as program
+from ehmo.calculate.crystal_report import crystal_report
+from ehmo.report.bands_document import crystal_document
 from ehmo.report.export.tables import csv_cell
-from ehmo.store import open_store
+from ehmo.store import StoredRow, open_store
 from ehmo.store.columns import TABLES
-from ehmo.structure import read_frames
+from ehmo.structure import ase_database_rows, crystal_contents, read_frames
+from tests.crystal.test_report import QUICK, RUTILE
 from tests.geometries import SPECIES
-from tests.store.rows import done, key
+from tests.store.rows import done, key, provenance
 
 SPECIES_OF = {1: "[VO(OH2)5]2+", 2: "MnO4 -", 3: "VOCl3", 5: "UO2 2+"}
 
@@ -213,3 +216,51 @@ def test_more_rows_than_a_page_and_a_window(ehmo, tmp_path, monkeypatch):
     assert list(pandas.read_csv("a.csv")["source"]) == wanted
     assert list(pandas.read_parquet("a.parquet")["source"]) == wanted
     assert [frame.info["source"] for frame in ase.io.read("a.xyz", index=":")] == wanted[::4]
+
+
+@pytest.fixture(scope="module")
+def rutile(tmp_path_factory) -> StoredRow:
+    """Row of an extended structure."""
+    path = tmp_path_factory.mktemp("rutile") / "rutile.cif"
+    path.write_text(RUTILE)
+    report = crystal_report(crystal_contents(path), crystal=QUICK)
+    return StoredRow(key(9), "done", "", crystal_document(report), provenance(source="rutile.cif"))
+
+
+def test_crystals_keep_their_cell(ehmo, tmp_path, rutile):
+    with open_store(tmp_path / "a.sqlite", create=True) as store:
+        store.write([rutile, done(1, "VOCl3")])
+    for target in ("a.xyz", "a.db"):
+        assert ehmo("export", "a.sqlite", "--to", target).status == 0
+    cell = np.array(rutile.document["crystal"]["cell_A"])
+    for frames in (ase.io.read("a.xyz", index=":"), [row.toatoms() for row in connect("a.db").select()]):
+        crystal, molecule = frames
+        assert crystal.pbc.all()
+        assert not molecule.pbc.any()
+        np.testing.assert_allclose(crystal.cell[:], cell, atol=1e-8)
+        assert crystal.get_chemical_formula(mode="metal") == "Ti2O4"
+    (first, *_) = ase_database_rows(tmp_path / "a.db")
+    assert [network.reduced_formula for network in first.contents.networks] == ["O2Ti"]
+
+
+def test_a_crystal_in_the_tables(ehmo, tmp_path, rutile):
+    with open_store(tmp_path / "a.sqlite", create=True) as store:
+        store.write([rutile])
+    ehmo("export", "a.sqlite", "--to", "a.parquet")
+    found = pandas.read_parquet("a.parquet")
+    assert found["metal"].tolist() == ["Ti"] * len(rutile.document["bonds"])
+    np.testing.assert_array_equal(found["mayer"], [bond["mayer"] for bond in rutile.document["bonds"]])
+    assert found["charge"].isna().all()
+
+
+def test_rows_that_come_while_an_export_runs_do_no_harm(tmp_path, monkeypatch):
+    monkeypatch.setattr("ehmo.store.reading.PAGE", 3)
+    path = tmp_path / "a.sqlite"
+    first, later = [done(k, "MnO4 -") for k in range(10)], [done(k, "MnO4 -") for k in range(10, 14)]
+    with open_store(path, create=True) as writer, open_store(path, read_only=True) as reader:
+        writer.write(first)
+        rows = reader.rows()
+        found = [next(rows) for _ in range(4)]
+        writer.write(later)
+        found += rows
+    assert found == first + later
