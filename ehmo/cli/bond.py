@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from ehmo.cli.extended import add_crystal_options, clusters, extended_report, refuse_crystal_options
 from ehmo.cli.output import same_file, write_whole
-from ehmo.cli.pages import add_page_option, check_page, write_page
+from ehmo.cli.pages import add_page_option, add_scan_option, check_page, check_view, scan_for_page, write_page
 from ehmo.cli.papers import add_paper_options, check_paper_options, paper_text
 from ehmo.cli.structures import add_structure_options, chosen_fragments, extended_crystals, listing
 from ehmo.errors import EhmoError, InputError
@@ -39,6 +39,7 @@ def add_command(commands: Any) -> None:
     add_spread_option(parser)
     parser.add_argument("--json", metavar="PATH", help="also write the report as JSON; - prints it instead of the text")
     add_page_option(parser)
+    add_scan_option(parser)
     add_paper_options(parser)
     parser.set_defaults(handler=run)
 
@@ -124,12 +125,6 @@ def run(chosen: argparse.Namespace) -> str:
     if extended and chosen.cluster is not None:
         return report_on(clusters(extended, chosen), chosen)
     if extended:
-        if chosen.page is not None:
-            raise InputError(
-                "a page shows a molecule, and the crystal is calculated as a whole",
-                place=chosen.file,
-                mend="leave --page out, or cut a cluster with --cluster",
-            )
         return extended_report(extended, chosen, calculation_options(chosen))
     refuse_crystal_options(chosen)
     return report_on(chosen_fragments(chosen), chosen)
@@ -151,8 +146,10 @@ def report_on(
         raise InputError("--json would overwrite the structure file", place=chosen.json, mend="give another file name")
     check_paper_options(chosen)
     page = getattr(chosen, "page", None) is not None
+    scan = scan_for_page(chosen, fragments[0].labels)
     if page:
-        check_page(chosen, len(fragments))
+        check_page(chosen, len(fragments), "choose one with --pick (--list shows them)")
+        check_view()
     options, table = options or calculation_options(chosen), load_parameters(chosen.params)
     make: Callable[..., BondReport] = bond_report
     if chosen.spread is not None:
@@ -172,7 +169,7 @@ def report_on(
     if not reports:
         raise next(iter(refused.values()))
     if page:
-        write_page(chosen, reports[0], table)
+        write_page(chosen, reports[0], table, scan=scan)
     if chosen.json is not None:
         from ehmo.report.document import json_text
 

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from ehmo.cli import bond
 from ehmo.cli.output import write_whole
+from ehmo.cli.pages import add_page_option, check_page, check_view, write_page
 from ehmo.errors import EhmoError, InputError, visible
 
 if TYPE_CHECKING:
@@ -44,6 +45,7 @@ def add_command(commands: Any) -> None:
     parser.add_argument(
         "--json", metavar="PATH", help="also write the comparison as JSON; - prints it instead of the text"
     )
+    add_page_option(parser)
     parser.set_defaults(handler=run)
 
 
@@ -58,6 +60,9 @@ def run(chosen: argparse.Namespace) -> str:
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
     options, table, cache = bond.calculation_options(chosen), load_parameters(chosen.params), _cache(chosen.cache)
     fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
+    if chosen.page is not None:
+        check_page(chosen, len(fragments), "give a file with one")
+        check_view()
     found = []
     for fragment in fragments:
         report = bond_report(fragment, table, options)
@@ -66,6 +71,8 @@ def run(chosen: argparse.Namespace) -> str:
         except EhmoError as error:
             error.place = error.place or fragment.source
             raise
+    if chosen.page is not None:
+        write_page(chosen, found[0].report, table, crosscheck=found[0])
     return _shown(found, chosen.json)
 
 

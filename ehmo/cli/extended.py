@@ -7,6 +7,7 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from ehmo.cli.output import write_whole
+from ehmo.cli.pages import check_page, write_crystal_page
 from ehmo.cli.papers import check_paper_options, paper_text
 from ehmo.errors import InputError
 
@@ -68,8 +69,12 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
     check_paper_options(chosen)
     from ehmo.orbitals.parameters import load_parameters
 
+    if chosen.page is not None:
+        check_page(chosen, len(crystals), "choose one with --pick (--list shows them)")
     table, crystal = load_parameters(chosen.params), crystal_options(chosen)
     reports = [crystal_report(contents, table, options, crystal) for contents in crystals]
+    if chosen.page is not None:
+        write_crystal_page(chosen, reports[0], table)
     if chosen.json is not None:
         from ehmo.report.bands_document import crystal_json
 
@@ -87,7 +92,7 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
 
 
 def _refuse_molecular_options(chosen: argparse.Namespace) -> None:
-    for name in ("oxidation_state", "spread"):
+    for name in ("oxidation_state", "spread", "scan"):
         if getattr(chosen, name, None) is not None:
             raise InputError(
                 f"--{name.replace('_', '-')} is for molecules, and the crystal is calculated as a whole",

@@ -61,20 +61,27 @@ def _heading(report: CrystalReport) -> list[str]:
         if method.charge_model == "fixed"
         else f"self-consistent charges (lambda {method.lambda_:g}, converged in {method.iterations} iterations)"
     )
-    lengths = np.linalg.norm(report.cell_A, axis=1)
-    unit = report.cell_A / lengths[:, None]
-    angles = [np.degrees(np.arccos(np.clip(unit[a] @ unit[b], -1, 1))) for a, b in ((1, 2), (0, 2), (0, 1))]
     state = report.bonding.state
-    made = f"; {', '.join(report.networks)}" if report.networks else ""
     return [
         visible(report.source) or "crystal",
         *textwrap.wrap(f"Title: {visible(report.title)}" if report.title else "", WIDTH, subsequent_indent="  "),
-        f"{report.formula} in the calculated cell, {report.bonding.electrons.total} valence electrons{made}",
-        f"Cell {' '.join(f'{x:.3f}' for x in lengths)} Å, {' '.join(f'{x:.2f}' for x in angles)} degrees",
+        *state_in_words(report).split("\n"),
         f"Periodic extended Hückel, set {visible(method.parameter_set)} ({visible(method.edition)}), {charges}",
         f"Mesh {state.mesh} with the zone centre, {len(state.mesh)} k-points by time reversal; "
         f"smallest overlap eigenvalue {state.smallest_overlap_eigenvalue:.1e}",
     ]
+
+
+def state_in_words(report: CrystalReport) -> str:
+    """Content of the calculated cell and, on a second line, its lengths and angles."""
+    lengths = np.linalg.norm(report.cell_A, axis=1)
+    unit = report.cell_A / lengths[:, None]
+    angles = [np.degrees(np.arccos(np.clip(unit[a] @ unit[b], -1, 1))) for a, b in ((1, 2), (0, 2), (0, 1))]
+    made = f"; {', '.join(report.networks)}" if report.networks else ""
+    return (
+        f"{report.formula} in the calculated cell, {report.bonding.electrons.total} valence electrons{made}\n"
+        f"Cell {' '.join(f'{x:.3f}' for x in lengths)} Å, {' '.join(f'{x:.2f}' for x in angles)} degrees"
+    )
 
 
 def point_words(point: Sequence[float]) -> str:
@@ -83,6 +90,11 @@ def point_words(point: Sequence[float]) -> str:
 
 
 def _kind(report: CrystalReport) -> list[str]:
+    return [line for said in kind_sentences(report) for line in textwrap.wrap(said, WIDTH, subsequent_indent="  ")]
+
+
+def kind_sentences(report: CrystalReport) -> list[str]:
+    """Insulator or metal with its edges, and energies, one sentence each."""
     state, gap = report.bonding.state, report.bonding.gap
     energy = f"Energy per cell {state.energy_eV:.4f} eV, of bands {state.band_energy_eV:.4f} eV"
     if gap is None:
@@ -99,7 +111,7 @@ def _kind(report: CrystalReport) -> list[str]:
         )
     line = f"Insulator on this mesh: gap {gap.gap_eV:.2f} eV, {where}"
     edges = f"Highest filled level {gap.valence_eV:.2f} eV, lowest empty {gap.conduction_eV:.2f} eV"
-    return [*textwrap.wrap(line, WIDTH, subsequent_indent="  "), edges, energy]
+    return [line, edges, energy]
 
 
 def short_label(label: str) -> str:
@@ -113,7 +125,18 @@ def unit_label(unit: MetalDonorUnit) -> str:
     return f"{short_label(unit.metal)}-{short_label(unit.donor)}"
 
 
+BOND_NUMBERS = (2, 3, 4, 5, 6)
+CHARGE_NUMBERS = (1, 2, 3)
+"""Columns of `crystal_bond_rows` and `crystal_charge_rows` that hold numbers."""
+
+
 def _bonds(report: CrystalReport) -> list[str]:
+    heading = "Metal-donor bonds of the asymmetric unit (labels of the file)"
+    return [heading, *aligned(crystal_bond_rows(report), numeric=BOND_NUMBERS, indent="  ")]
+
+
+def crystal_bond_rows(report: CrystalReport) -> list[list[str]]:
+    """Heading, and one row for each bond of the asymmetric unit."""
     rows = [["bond", "kind", "length/Å", "per metal", "overlap pop.", "Mayer", "Wiberg", "channels, weights"]]
     rows += [
         [
@@ -128,14 +151,22 @@ def _bonds(report: CrystalReport) -> list[str]:
         ]
         for unit, order in report.bonds()
     ]
-    heading = "Metal-donor bonds of the asymmetric unit (labels of the file)"
-    return [heading, *aligned(rows, numeric=(2, 3, 4, 5, 6), indent="  ")]
+    return rows
 
 
 def _words(report: CrystalReport) -> list[str]:
+    lines = [
+        line
+        for said in pi_bonds_in_words(report)
+        for line in textwrap.wrap(said, WIDTH, initial_indent="  ", subsequent_indent="    ")
+    ]
+    return ["Bonds with pi channels, strongest first, and the metal shells in them", *lines] if lines else []
+
+
+def pi_bonds_in_words(report: CrystalReport) -> list[str]:
     """Bonds in words, strongest first, where more than a single bond shows."""
     ranked = sorted(enumerate(report.bonds()), key=lambda entry: -entry[1][1].mayer)
-    lines = []
+    sentences = []
     for place, (unit, order) in ranked:
         said = channels_in_words(order.channels)
         if "pi" not in said and "delta" not in said:
@@ -145,10 +176,8 @@ def _words(report: CrystalReport) -> list[str]:
             for channel in order.channels
             if channel.weight >= PARTIAL_CHANNEL
         )
-        lines += textwrap.wrap(
-            f"{unit_label(unit)}: {said} ({made})", WIDTH, initial_indent="  ", subsequent_indent="    "
-        )
-    return ["Bonds with pi channels, strongest first, and the metal shells in them", *lines] if lines else []
+        sentences.append(f"{unit_label(unit)}: {said} ({made})")
+    return sentences
 
 
 def _metal_shells(report: CrystalReport, place: int, hybrid: FloatArray) -> str:
@@ -158,6 +187,12 @@ def _metal_shells(report: CrystalReport, place: int, hybrid: FloatArray) -> str:
 
 
 def _charges(report: CrystalReport) -> list[str]:
+    heading = "Mulliken charges (positive = electron poor)"
+    return [heading, *aligned(crystal_charge_rows(report), numeric=CHARGE_NUMBERS, indent="  ")]
+
+
+def crystal_charge_rows(report: CrystalReport) -> list[list[str]]:
+    """Heading, and one row for each site."""
     charges, spin = report.bonding.charges, report.bonding.populations.spin
     unpaired = bool(report.bonding.electrons.unpaired)
     rows = [["site", "atoms", "charge/e", *(["unpaired/e"] if unpaired else [])]]
@@ -168,7 +203,7 @@ def _charges(report: CrystalReport) -> list[str]:
             places = [report.bonding.place_of[int(atom)] for atom in members if int(atom) in report.bonding.place_of]
             row.append(f"{spin[places].mean():.2f}" if places else "")
         rows.append(row)
-    return ["Mulliken charges (positive = electron poor)", *aligned(rows, numeric=(1, 2, 3), indent="  ")]
+    return rows
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -225,6 +260,12 @@ def band_blocks(report: CrystalReport) -> list[BandBlock]:
 
 
 def _blocks(report: CrystalReport) -> list[str]:
+    heading = "Bands, topmost first (overlap population with two electrons in each band, positive = bonding)"
+    return [heading, *aligned(block_rows(report), numeric=(0, 1, 2, 3, 4), indent="  ")]
+
+
+def block_rows(report: CrystalReport) -> list[list[str]]:
+    """Heading, and one row for each block of bands."""
     rows = [["from/eV", "to/eV", "bands", "electrons", "M-donor overlap pop.", "made of"]]
     for block in reversed(band_blocks(report)):
         leading = [(name, part) for name, part in block.shares.items() if part >= _SHOWN_SHARE][:_SHOWN_SHELLS]
@@ -239,8 +280,7 @@ def _blocks(report: CrystalReport) -> list[str]:
                 made,
             ]
         )
-    heading = "Bands, topmost first (overlap population with two electrons in each band, positive = bonding)"
-    return [heading, *aligned(rows, numeric=(0, 1, 2, 3, 4), indent="  ")]
+    return rows
 
 
 def _path(report: CrystalReport) -> list[str]:
@@ -260,14 +300,20 @@ def _path(report: CrystalReport) -> list[str]:
 
 
 def _mesh(report: CrystalReport) -> list[str]:
+    line = mesh_in_words(report)
+    wrapped = textwrap.wrap(line, WIDTH, initial_indent="  ", subsequent_indent="  ")
+    return ["Convergence with the mesh", *wrapped] if line else []
+
+
+def mesh_in_words(report: CrystalReport) -> str:
+    """What changes from a coarser mesh, in a sentence; empty if that was not asked."""
     change = report.bonding.mesh_change
     if change is None:
-        return []
+        return ""
     other = " x ".join(map(str, change.counts))
     gap = "" if change.gap_eV is None else f", the gap by {change.gap_eV:+.3f} eV"
     energy = 1000 * change.energy_per_atom_eV
-    line = (
+    return (
         f"From a mesh of {other} the energy changes by {energy:+.2f} meV per atom, charges by up to "
         f"{change.largest_charge_e:.4f} e, orders by up to {change.largest_order:.4f}{gap}"
     )
-    return ["Convergence with the mesh", *textwrap.wrap(line, WIDTH, initial_indent="  ", subsequent_indent="  ")]

@@ -48,22 +48,37 @@ def crosscheck_text(found: Crosscheck) -> str:
 
 
 def _heading(found: Crosscheck) -> list[str]:
-    report, run = found.report, found.run
+    report = found.report
     method = report.method
     lines = [
         visible(report.fragment.source) or "fragment",
         f"{report.fragment.formula}, {electrons_in_words(report.fragment)}",
         f"ehmo: set {visible(method.parameter_set)} ({visible(method.edition)}), {method.charge_model} charges",
     ]
-    said = (
+    return [*lines, *textwrap.wrap(run_in_words(found), WIDTH, subsequent_indent="  ")]
+
+
+def run_in_words(found: Crosscheck) -> str:
+    """Program, basis and tries of the run."""
+    run = found.run
+    return (
         f"{THEORY_NAMES[run.theory]}: {run.program}, minimal contraction of ANO-RCC ({len(run.basis)} functions), "
         f"spin-free X2C, density fitting{', from the cache' if run.from_cache else ''}; {'; '.join(run.tried)}"
     )
-    return [*lines, *textwrap.wrap(said, WIDTH, subsequent_indent="  ")]
 
 
 def _verdicts(found: Crosscheck) -> list[str]:
-    lines = ["Verdict on each bond"]
+    lines = [
+        line
+        for said in verdict_sentences(found)
+        for line in textwrap.wrap(said, WIDTH, initial_indent="  ", subsequent_indent="    ")
+    ]
+    return ["Verdict on each bond", *lines]
+
+
+def verdict_sentences(found: Crosscheck) -> list[str]:
+    """One sentence on each bond."""
+    sentences = []
     for place, comparison in enumerate(found.bonds):
         said = f"{_label(found, comparison)}: {comparison.verdict.words}"
         # Doubts stand in the words already; what follows are the figures.
@@ -73,8 +88,8 @@ def _verdicts(found: Crosscheck) -> list[str]:
             None,
         )
         said += f" (as {_label(found, same)})" if same else f" ({'; '.join(rest)})" if rest else ""
-        lines += textwrap.wrap(said, WIDTH, initial_indent="  ", subsequent_indent="    ")
-    return lines
+        sentences.append(said)
+    return sentences
 
 
 def _same_figures(one: BondComparison, other: BondComparison) -> bool:
@@ -86,8 +101,13 @@ def _label(found: Crosscheck, comparison: BondComparison) -> str:
 
 
 def _bonds(found: Crosscheck) -> list[str]:
+    return ["Bonds", *aligned(comparison_rows(found), numeric=range(2, 9), indent="  ")]
+
+
+def comparison_rows(found: Crosscheck) -> list[list[str]]:
+    """Heading, and orders of both sides for each bond."""
     name = THEORY_NAMES[found.run.theory]
-    rows = [
+    rows: list[list[str]] = [
         [
             *("bond", "kind", "length/Å", "Mayer ehmo", name),
             *("Wiberg ehmo", name, "overlap pop. ehmo", name),
@@ -108,10 +128,15 @@ def _bonds(found: Crosscheck) -> list[str]:
                 *(f"{value:.2f}" for pair in pairs for value in pair),
             ]
         )
-    return ["Bonds", *aligned(rows, numeric=range(2, 9), indent="  ")]
+    return rows
 
 
 def _channels(found: Crosscheck) -> list[str]:
+    return ["Channels and their weights", *aligned(channel_comparison_rows(found), indent="  ")]
+
+
+def channel_comparison_rows(found: Crosscheck) -> list[list[str]]:
+    """Heading, and channel weights of both sides for each bond."""
     rows = [["bond", "ehmo", THEORY_NAMES[found.run.theory]]]
     rows += [
         [
@@ -121,10 +146,16 @@ def _channels(found: Crosscheck) -> list[str]:
         ]
         for comparison in found.bonds
     ]
-    return ["Channels and their weights", *aligned(rows, indent="  ")]
+    return rows
 
 
 def _charges(found: Crosscheck) -> list[str]:
+    rows = charge_comparison_rows(found)
+    return ["Mulliken charges of metals and donors", *aligned(rows, numeric=range(1, 5), indent="  ")]
+
+
+def charge_comparison_rows(found: Crosscheck) -> list[list[str]]:
+    """Heading, and charges of both sides for each metal and donor."""
     report, name = found.report, THEORY_NAMES[found.run.theory]
     unpaired = bool(report.fragment.unpaired_electrons)
     rows = [["atom", "charge/e ehmo", name, *(["unpaired/e ehmo", name] if unpaired else [])]]
@@ -132,7 +163,7 @@ def _charges(found: Crosscheck) -> list[str]:
         ours, theirs = found.atoms[atom]
         row = [report.fragment.labels[atom], f"{ours.charge:+.2f}", f"{theirs.charge:+.2f}"]
         rows.append([*row, f"{ours.spin:.2f}", f"{theirs.spin:.2f}"] if unpaired else row)
-    return ["Mulliken charges of metals and donors", *aligned(rows, numeric=range(1, 5), indent="  ")]
+    return rows
 
 
 def _ladder(found: Crosscheck, ladder: LadderComparison) -> list[str]:

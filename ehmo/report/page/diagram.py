@@ -8,22 +8,16 @@ from typing import Final
 
 from ehmo.analysis.interaction import bond_interaction
 from ehmo.records.report import BondReport
-from ehmo.report.figures.canvas import figure_bytes
 from ehmo.report.figures.interaction import default_bond, interaction_diagram
-from ehmo.report.look import LIGHT
 from ehmo.report.page.bonds import level_in_words
+from ehmo.report.page.drawings import drawing
 from ehmo.report.page.markup import Markup, element, markup
 from ehmo.report.page.view import PICTURE_PX
 
 WIDTH_CM: Final = 13.0
 
-_LEVEL = re.compile(r'<g id="orbital (\d+)">\s*<path d="M ([\d.]+) ([\d.]+)\s+L ([\d.]+) ([\d.]+)\s*"[^>]*/>\s*</g>')
-_ROLES = tuple(
-    (role, getattr(LIGHT, role))
-    for role in (
-        *("paper", "ink", "muted", "grid", "sigma", "pi", "delta", "phi"),
-        *("metal", "donor", "other", "alpha", "beta"),
-    )
+_LEVEL = re.compile(
+    r'<g id="diagram-orbital-(\d+)">\s*<path d="M ([\d.]+) ([\d.]+)\s+L ([\d.]+) ([\d.]+)\s*"[^>]*/>\s*</g>'
 )
 
 
@@ -41,11 +35,7 @@ def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
     html : Markup
     """
     bond = default_bond(report)
-    drawing = figure_bytes(interaction_diagram(report, bond, width_cm=WIDTH_CM), "svg").decode("utf-8")
-    drawing = drawing[drawing.index("<svg") :]
-    drawing = re.sub(r"<metadata>.*?</metadata>", "", drawing, flags=re.DOTALL)
-    for role, colour in _ROLES:
-        drawing = drawing.replace(colour, f"var(--{role})")
+    svg = drawing(interaction_diagram(report, bond, width_cm=WIDTH_CM), "diagram")
     words = {k: level_in_words(level) for level in bond_interaction(report, bond).sets for k in level.orbitals}
 
     def button(found: re.Match[str]) -> str:
@@ -69,7 +59,7 @@ def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
         "figure",
         element(
             "div",
-            Markup(_LEVEL.sub(button, drawing)),
+            Markup(_LEVEL.sub(button, svg)),
             class_="drawing",
             role="group",
             aria_label=f"Interaction diagram of {label}",

@@ -5,7 +5,7 @@ from __future__ import annotations
 import base64
 import re
 import zlib
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from typing import Final
 
 import numpy as np
@@ -36,14 +36,25 @@ def file_links(report: BondReport) -> Markup:
         ("CSV", "the bonds as a table", f"{stem}.csv", bond_table([report], "csv"), "text/csv"),
         ("XYZ", "the structure with charge and spin", f"{stem}.xyz", xyz_text(report.fragment), "chemical/x-xyz"),
     )
+    return links_to(files)
+
+
+def links_to(files: Iterable[tuple[str, str, str, str, str]]) -> Markup:
+    """Links to files that stand in the page.
+
+    Parameters
+    ----------
+    files : iterable of tuple
+        Format, what the file holds, its name, its text, and its media type.
+
+    Returns
+    -------
+    html : Markup
+    """
     return markup(
         [
-            element(
-                "li",
-                element("a", f"{name} ({filename})", href=data_address(text, kind), download=filename),
-                f": {words}",
-            )
-            for name, words, filename, text, kind in files
+            element("li", element("a", f"{name} ({file})", href=data_address(text, kind), download=file), f": {words}")
+            for name, words, file, text, kind in files
         ]
     )
 

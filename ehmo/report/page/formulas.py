@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from typing import Final
 
+from ehmo.records.crystal_report import CrystalReport
 from ehmo.records.report import BondReport
 from ehmo.report.formula import complex_formula
 from ehmo.report.page.markup import Markup, element, markup
@@ -16,7 +17,7 @@ _PIECE = re.compile(r"([A-Z][a-z]?|[()])(\d*)")
 _IRREP = re.compile(r"(\d*)([abetgABETGσπδφγΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
 _TERM = re.compile(r"(\d+)([A-Z]|[ΣΠΔΦΓ])([123]?[gu]?)('{0,2})([+\-]?)")
 _LONG = re.compile(r"\d*[abetg][123gu][^ ]*")
-_CORE = re.compile(r"([(]*)(.*?)([),;:]*)")
+_CORE = re.compile(r"([(]*)(.*?)([),;:⁰¹²³⁴⁵⁶⁷⁸⁹]*)")
 _SPACE = Markup(" ")
 _MINUS = "\N{MINUS SIGN}"
 
@@ -24,17 +25,29 @@ _MINUS = "\N{MINUS SIGN}"
 def formula_markup(report: BondReport) -> Markup:
     """Formula with subscripts and charge, such as ``[VO(H2O)5]2+``."""
     charge = report.fragment.charge
-    body = markup(
-        [
-            [symbol, element("sub", count) if count else None]
-            for symbol, count in _PIECE.findall(complex_formula(report))
-        ]
-    )
+    body = hill_markup(complex_formula(report))
     if not charge:
         return body
     size = "" if abs(charge) == 1 else str(abs(charge))
     raised = element("sup", f"{size}{'+' if charge > 0 else _MINUS}")
     return markup(["[", body, "]", raised])
+
+
+def hill_markup(formula: str) -> Markup:
+    """Formula with subscripts."""
+    pieces = _PIECE.findall(formula)
+    return markup([[symbol, element("sub", count) if count else None] for symbol, count in pieces])
+
+
+def crystal_formula(report: CrystalReport) -> str:
+    """Formula of the first network of a crystal, else of its cell, metals first, such as ``V2O5``."""
+    formula = (report.networks[0] if report.networks else report.formula).rpartition(" ")[2]
+    pieces = _PIECE.findall(formula)
+    if "".join(symbol + count for symbol, count in pieces) != formula:
+        return report.formula
+    metals = {unit.metal_symbol for unit in report.units}
+    ordered = sorted(pieces, key=lambda piece: piece[0] not in metals)
+    return "".join(symbol + count for symbol, count in ordered)
 
 
 def formula_plain(report: BondReport) -> str:

@@ -1,13 +1,14 @@
 "use strict";
 (() => {
-  const data = JSON.parse(document.getElementById("page-data").textContent);
   const body = document.body;
   const find = (id) => document.getElementById(id);
+  // A page of a crystal has no view, and then no data for one.
+  const data = find("page-data") ? JSON.parse(find("page-data").textContent) : null;
   const all = (selector, within = document) => Array.from(within.querySelectorAll(selector));
   const view = find("view"), still = find("view-still"), shownText = find("shown"), level = find("level");
   const dark = window.matchMedia("(prefers-color-scheme: dark)");
-  const state = { channel: null, orbital: null, part: "both", level: data.level, labels: true, bond: null };
-  const camera = { eye: [...data.eye], up: [0, 0, 1], centre: [0, 0, 0], distance: 1, zoom: 1 };
+  const state = { channel: null, orbital: null, part: "both", level: data ? data.level : 0, labels: true, bond: null };
+  const camera = { eye: data ? [...data.eye] : [1, 0, 0], up: [0, 0, 1], centre: [0, 0, 0], distance: 1, zoom: 1 };
   const decoded = new Map();
   let drawing = false;
 
@@ -273,7 +274,7 @@
     selection.removeAllRanges();
     selection.addRange(range);
     try {
-      await navigator.clipboard.writeText(find("method-plain").textContent);
+      await navigator.clipboard.writeText(JSON.parse(find("method-plain").textContent));
       find("copied").textContent = " Copied.";
     } catch {
       find("copied").textContent = " Selected: copy it with the keyboard.";
@@ -284,39 +285,43 @@
   window.addEventListener("beforeprint", () => all("details:not([open])").forEach((one) => { one.open = true; one.dataset.folded = ""; }));
   window.addEventListener("afterprint", () => all("details[data-folded]").forEach((one) => { one.open = false; delete one.dataset.folded; }));
 
+  const wireView = () => {
+    all(".channel-radio").forEach((radio) => radio.addEventListener("change", () => choose({ channel: radio.value, orbital: null })));
+    document.addEventListener("click", (event) => {
+      const target = event.target.closest("[data-orbital], [data-show], [data-file]");
+      if (!target) return;
+      if (target.dataset.file) save(target.dataset.file);
+      else if (target.dataset.show) choose({ part: target.dataset.show, orbital: null });
+      else {
+        chooseOrbital(Number(target.dataset.orbital));
+        // From the plates the view is out of sight.
+        if (target.closest(".plate")) find("viewer").scrollIntoView({ block: "start" });
+      }
+    });
+    document.addEventListener("keydown", (event) => {
+      const chosen = event.target.closest && event.target.closest(".level");
+      if (chosen && (event.key === "Enter" || event.key === " ")) {
+        event.preventDefault();
+        chooseOrbital(Number(chosen.dataset.orbital));
+      }
+    });
+    view.addEventListener("keydown", (event) => {
+      if (!event.ctrlKey && !event.metaKey && !event.altKey && turn(event.key)) event.preventDefault();
+    });
+    level.addEventListener("input", () => { state.level = Number(level.value); draw(); });
+    find("labels").addEventListener("change", (event) => { state.labels = event.target.checked; draw(); });
+    find("reset").addEventListener("click", () => turn("Home"));
+    dark.addEventListener("change", draw);
+    const chosen = document.querySelector(".channel-radio:checked");
+    if (chosen) {
+      state.channel = chosen.value;
+      look();
+      mark();
+      start();
+    }
+  };
+
   body.classList.add("scripted");
-  all(".channel-radio").forEach((radio) => radio.addEventListener("change", () => choose({ channel: radio.value, orbital: null })));
-  document.addEventListener("click", (event) => {
-    const target = event.target.closest("[data-orbital], [data-show], [data-file]");
-    if (!target) return;
-    if (target.dataset.file) save(target.dataset.file);
-    else if (target.dataset.show) choose({ part: target.dataset.show, orbital: null });
-    else {
-      chooseOrbital(Number(target.dataset.orbital));
-      // From the plates the view is out of sight.
-      if (target.closest(".plate")) find("viewer").scrollIntoView({ block: "start" });
-    }
-  });
-  document.addEventListener("keydown", (event) => {
-    const chosen = event.target.closest && event.target.closest(".level");
-    if (chosen && (event.key === "Enter" || event.key === " ")) {
-      event.preventDefault();
-      chooseOrbital(Number(chosen.dataset.orbital));
-    }
-  });
-  view.addEventListener("keydown", (event) => {
-    if (!event.ctrlKey && !event.metaKey && !event.altKey && turn(event.key)) event.preventDefault();
-  });
-  level.addEventListener("input", () => { state.level = Number(level.value); draw(); });
-  find("labels").addEventListener("change", (event) => { state.labels = event.target.checked; draw(); });
-  find("reset").addEventListener("click", () => turn("Home"));
-  dark.addEventListener("change", draw);
   find("copy-method").addEventListener("click", copied);
-  const chosen = document.querySelector(".channel-radio:checked");
-  if (chosen) {
-    state.channel = chosen.value;
-    look();
-    mark();
-    start();
-  }
+  if (view) wireView();
 })();

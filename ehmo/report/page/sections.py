@@ -8,6 +8,8 @@ from collections.abc import Iterable, Mapping, Sequence
 from ehmo.records.report import BondReport
 from ehmo.records.wording import BOND_NUMBERS, bond_rows, channels_in_words
 from ehmo.report.cautions import CAUTIONS
+from ehmo.report.figures.ladder import ladder_figure
+from ehmo.report.figures.spectrum import spectrum_figure
 from ehmo.report.ladder_text import (
     BAND_NUMBERS,
     LADDER_NUMBERS,
@@ -24,6 +26,7 @@ from ehmo.report.ladder_text import (
     withheld_reasons,
 )
 from ehmo.report.method import MethodParagraph
+from ehmo.report.page.drawings import FIGURE_CM, figure_block
 from ehmo.report.page.formulas import symbols_markup
 from ehmo.report.page.markup import Content, Markup, element, markup, table
 from ehmo.report.page.shown import orbital_key
@@ -200,6 +203,10 @@ def ladder_section(report: BondReport) -> Markup | None:
     for site in report.distinct_sites():
         if site.ladder is not None:
             parts.append(numbers_table(ladder_rows(report, site), ladder_heading(report, site), LADDER_NUMBERS))
+            label = report.fragment.labels[site.metal]
+            figure = ladder_figure(report, site.metal, width_cm=FIGURE_CM)
+            words = f"Ladder of {label} with its electrons, metal shares and terms; the tables say the same."
+            parts.append(figure_block(figure, f"ladder-{site.metal}", words, f"Levels of {label} and terms"))
             if site.parameters is not None:
                 parts.append(listed(parameter_sentences(site.parameters)))
     reasons = withheld_reasons(report)
@@ -219,7 +226,9 @@ def spectrum_section(report: BondReport) -> Markup | None:
         more = f"; {rest} higher ones are in the JSON" if rest else ""
         parts.append(
             numbers_table(
-                rows, f"Terms in {spectrum.terms.group}, ground term {spectrum.ground_term}{more}", TERM_NUMBERS
+                rows,
+                symbols_markup(f"Terms in {spectrum.terms.group}, ground term {spectrum.ground_term}{more}"),
+                TERM_NUMBERS,
             )
         )
     if spectrum.bands:
@@ -227,6 +236,12 @@ def spectrum_section(report: BondReport) -> Markup | None:
         rows, rest = band_rows(spectrum.bands, spread)
         more = f"; {rest} more are in the JSON" if rest else ""
         parts.append(numbers_table(rows, f"{bands_heading(spectrum.bands)}{more}", BAND_NUMBERS))
+        words = "Computed bands as sticks with their envelope; the table says the same."
+        parts.append(
+            figure_block(
+                spectrum_figure(report, width_cm=FIGURE_CM), "bands", words, "Computed bands and their envelope"
+            )
+        )
     if spectrum.magnetism is not None:
         parts += [element("h3", "Magnetism"), listed(magnetism_sentences(spectrum, spectrum.magnetism))]
     return section("spectrum", "Terms, bands, magnetism", parts) if parts else None
@@ -245,12 +260,12 @@ def spread_section(report: BondReport) -> Markup | None:
     return section("spread", "Spread", parts)
 
 
-def trust_sections(report: BondReport) -> Markup:
+def trust_sections(assumptions: Sequence[str], warnings: Sequence[str]) -> Markup:
     """Assumptions, doubts and cautions."""
-    doubts = report.warnings or ("Nothing in particular, beyond the cautions below.",)
+    doubts = warnings or ("Nothing in particular, beyond the cautions below.",)
     return markup(
         [
-            section("assumptions", "Assumed", listed(report.assumptions)),
+            section("assumptions", "Assumed", listed(assumptions)),
             section("doubts", "To doubt", listed(doubts, "doubts")),
             section("cautions", "Cautions", listed(CAUTIONS)),
         ]
