@@ -204,6 +204,16 @@ def _dimensions(report: BondReport) -> dict[str, int]:
     return dict(zip(group.irreps, group.dimensions.tolist(), strict=True))
 
 
+def _orbital_labels(report: BondReport) -> tuple[tuple[str, ...], dict[str, int]]:
+    """Irrep of each orbital of the fragment, in the group of the sphere or of the molecule, and their dimensions."""
+    if report.irreps is not None:
+        return report.irreps.labels, _dimensions(report)
+    if report.molecule_irreps is None or report.molecule_symmetry is None:
+        return ("",) * len(report.state.energies_eV), {}
+    group = report.molecule_symmetry.group
+    return report.molecule_irreps.labels, dict(zip(group.irreps, group.dimensions.tolist(), strict=True))
+
+
 def _distinct(report: BondReport, labels: Sequence[str]) -> tuple[str, ...]:
     """Irreps of a level, each as often as it occurs."""
     dimensions = _dimensions(report)
@@ -286,8 +296,8 @@ def _orbital_sets(
     report: BondReport, bonds: Sequence[int], metal: int, atoms: Sequence[int]
 ) -> tuple[list[OrbitalSet], IntArray]:
     """Levels of the fragment, and the level of each orbital."""
-    state, dimensions = report.state, _dimensions(report)
-    labels = ("",) * len(state.energies_eV) if report.irreps is None else report.irreps.labels
+    state = report.state
+    labels, dimensions = _orbital_labels(report)
     set_of = _numbered(state.energies_eV, labels, dimensions)
     by_part = orbital_overlap_by_part(report, bonds)
     gross = state.coefficients * (report.overlap @ state.coefficients)

@@ -16,7 +16,7 @@ from ehmo.report.figures.catalogue import FIGURE_KINDS, FigureKind
 from ehmo.report.figures.choice import labelled
 
 _NARROWEST_MM, _WIDEST_MM = 60.0, 400.0
-_OPTIONS = ("bond", "bands", "spread", "mesh", "path", "window", "where")
+_OPTIONS = ("bond", "metal", "bands", "spread", "mesh", "path", "window", "where")
 
 Drawn = tuple[Any, dict[str, Any]]
 """What a figure is drawn from, and its options."""
@@ -37,6 +37,7 @@ def add_command(commands: Any) -> None:
     parser.add_argument("--width", type=float, metavar="MM", help="width on paper (84; overview: 174)")
     own = parser.add_argument_group("what the figure shows")
     own.add_argument("--bond", metavar="M-X", help="bond of the figure, such as V1-O2")
+    own.add_argument("--metal", metavar="M", help="metal of the figure, such as V1")
     own.add_argument("--bands", metavar="LIST", help="observed bands within the shell [cm-1]: 13000,16000")
     own.add_argument("--mesh", metavar="A,B,C", help="k-points of a crystal along each reciprocal vector")
     own.add_argument("--path", metavar="NAMES|auto", help="bands of a crystal along special points such as GXMG")
@@ -109,8 +110,15 @@ def _molecule(chosen: argparse.Namespace) -> Drawn:
         from ehmo.studies.spread import spread_report
 
         report = spread_report(fragment, table, options, draws=chosen.spread)
-    labels = [report.bond_label(one) for one in report.coordination.bonds]
-    return report, {} if chosen.bond is None else {"bond": labelled(labels, chosen.bond, chosen.file)}
+    options_of: dict[str, Any] = {}
+    if chosen.bond is not None:
+        labels = [report.bond_label(one) for one in report.coordination.bonds]
+        options_of["bond"] = labelled(labels, chosen.bond, chosen.file)
+    if chosen.metal is not None:
+        metals = report.coordination.metals
+        labels = [report.fragment.labels[metal] for metal in metals]
+        options_of["metal"] = metals[labelled(labels, chosen.metal, chosen.file, things="metals")]
+    return report, options_of
 
 
 def _crystal(chosen: argparse.Namespace) -> Drawn:

@@ -220,7 +220,9 @@ def _levels(report: BondReport, site: MetalSite) -> tuple[str, list[list[str]]]:
     levels = () if site.ladder is None else site.ladder.levels
     rows = [["level", "above lowest/eV", "electrons", "metal/%", "donors/%"]]
     for level in reversed(levels):
-        irrep = "" if report.irreps is None or level.orbital is None else report.irreps.labels[level.orbital]
+        irrep = level.irrep
+        if report.irreps is not None and level.orbital is not None:
+            irrep = report.irreps.labels[level.orbital]
         rows.append(
             [
                 f"{irrep} {level.function}".strip(),

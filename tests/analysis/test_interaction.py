@@ -89,13 +89,13 @@ def test_vanadyl():
     assert [report.bond_label(report.coordination.bonds[k]) for k in found.bonds] == ["V1-O2"]
 
 
-def test_several_metals_have_no_irreps():
+def test_several_metals_have_the_irreps_of_the_whole():
     species = SPECIES["VOCl3"]
     twice = Fragment(
         species.symbols * 2, np.concatenate([species.positions_A, species.positions_A + np.array([0, 30.0, 0])]), 0, 0
     )
     report = bond_report(twice)
     found = bond_interaction(report, 0)
-    assert {s.irrep for s in found.sets} == {""}
-    assert found.sets[0].label == "(1)"
+    assert {s.irrep for s in found.sets} == set(report.molecule_irreps.labels) == {"a'", "a''"}
+    assert found.sets[0].label == "1a'"
     assert {irreps for level in (*found.metal_levels, *found.ligand_levels) for irreps in level.irreps} == set()

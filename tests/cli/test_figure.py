@@ -43,6 +43,14 @@ def test_bond_by_its_label_either_way_round(ehmo, put, tmp_path):
     assert one == other != oxo
 
 
+def test_metal_by_its_label(ehmo, put, refused, tmp_path):
+    put()
+    assert ehmo("figure", "ladder", "a.xyz", "-o", "one.svg", "--metal", "v1").status == 0
+    assert ehmo("figure", "ladder", "a.xyz", "-o", "two.svg").status == 0
+    assert (tmp_path / "one.svg").read_bytes() == (tmp_path / "two.svg").read_bytes()
+    assert "metals are V1" in refused("figure", "ladder", "a.xyz", "-o", "x.svg", "--metal", "O2")
+
+
 def test_spread_and_bands_reach_the_figure(ehmo, put, tmp_path):
     put()
     for name, words in (("plain.svg", ()), ("spread.svg", ("--spread", "3"))):

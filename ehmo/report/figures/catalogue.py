@@ -61,7 +61,12 @@ _KINDS = (
         ("bond",),
     ),
     FigureKind(
-        "ladder", "molecule", "d or f levels, terms and observed bands", "ladder", "ladder_figure", ("bands", "spread")
+        "ladder",
+        "molecule",
+        "d or f levels, terms and observed bands",
+        "ladder",
+        "ladder_figure",
+        ("bands", "metal", "spread"),
     ),
     FigureKind(
         "channels", "molecule", "sigma and pi channels of every bond as bars", "channels", "channel_bars", ("spread",)

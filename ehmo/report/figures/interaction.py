@@ -37,6 +37,7 @@ DONOR_SHARE: Final = 0.15
 LINE_SHARE: Final = 0.08
 """Contribution from which a level of a part and a level of the fragment are joined by a line."""
 
+_PART_OF_LARGEST = 0.5  # lines are drawn from this part of the largest contribution, where that is less
 _ABOVE_EV = 1.0  # what is drawn above the highest level of interest
 _TOP_CM, _BOTTOM_CM = 0.95, 1.15
 _SHORTEST_CM, _TALLEST_CM = 9.0, 22.0
@@ -187,6 +188,7 @@ def _draw_axis(axes: Axes, layout: _Layout, look: Look) -> None:
 
 def _draw_lines(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> None:
     metal_x, middle, _, ligand_x, _ = layout.columns
+    least = _least_line(found, layout)
     for k, y, centre in zip(layout.shown, layout.heights, layout.centres, strict=True):
         level = found.sets[k]
         half = set_width(len(level.orbitals)) / 2
@@ -195,7 +197,7 @@ def _draw_lines(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
             (found.ligand_levels, found.ligand_contributions[k], ligand_x, 1),
         ):
             for own, share in zip(levels, shares, strict=True):
-                if share < LINE_SHARE or not _drawn(layout, own):
+                if share < least or not _drawn(layout, own):
                     continue
                 symmetry = own.symmetry or level.symmetry
                 axes.plot(
@@ -208,6 +210,15 @@ def _draw_lines(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
                     zorder=1,
                     solid_capstyle="butt",
                 )
+
+
+def _least_line(found: Interaction, layout: _Layout) -> float:
+    """Contribution from which a line is drawn: less where a large fragment spreads every level over many orbitals."""
+    shown = list(layout.shown)
+    largest = max(
+        float(shares[shown].max(initial=0.0)) for shares in (found.metal_contributions, found.ligand_contributions)
+    )
+    return min(LINE_SHARE, _PART_OF_LARGEST * largest)
 
 
 def _drawn(layout: _Layout, level: PartLevel) -> bool:

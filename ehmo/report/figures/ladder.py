@@ -293,8 +293,11 @@ def _draw_levels(
 
 
 def _irrep_of(report: BondReport, ladder: Ladder, k: int) -> str:
-    orbital = ladder.levels[k].orbital
-    return "" if report.irreps is None or orbital is None else report.irreps.labels[orbital]
+    """Irrep of a level: of its orbital, or of its functions where several metals share the orbitals."""
+    level = ladder.levels[k]
+    if level.orbital is None or report.irreps is None:
+        return level.irrep
+    return report.irreps.labels[level.orbital]
 
 
 def _labelled_together(report: BondReport, ladder: Ladder, heights: Sequence[float]) -> tuple[tuple[int, ...], ...]:

@@ -11,7 +11,7 @@ import numpy as np
 
 from ehmo.errors import InputError
 from ehmo.records.arrays import FloatArray
-from ehmo.records.scan import Scan, ScanPoint
+from ehmo.records.scan import Scan, ScannedLevel, ScanPoint
 from ehmo.report.figures.canvas import (
     COLUMN_CM,
     SMALL_POINTS,
@@ -60,8 +60,8 @@ def scan_figure(scan: Scan, bond: int | None = None, *, look: Look = LIGHT, widt
     """Panels over one another: channels with the Mayer order, levels, and the energy of a calibrated set.
 
     Channel weights are summed by symmetry. Strong lines among the levels are those of the ladder, followed by their
-    leading function; thin ones are other orbitals, followed by their character. Dotted rules stand where the filling
-    changes.
+    irrep (else by their leading function); thin ones are other orbitals, followed by their character. Dotted rules
+    stand where the filling changes.
 
     Parameters
     ----------
@@ -145,27 +145,49 @@ def _energy_line(points: Sequence[ScanPoint], look: Look) -> _Line:
 
 
 def _ladder_lines(points: Sequence[ScanPoint], look: Look) -> list[_Line]:
-    """One line per level, by its leading function where these are the same along the scan, else by rank."""
+    """One line per level, each level known at every point by the same name."""
     count = max(len(point.levels) for point in points)
     if not count:
         return []
-    names = [{level.function for level in point.levels} for point in points if len(point.levels) == count]
-    by_function = all(len(one) == count and one == names[0] for one in names)
-    reference = next(point for point in reversed(points) if len(point.levels) == count)
-    lines = []
-    for rank, last in enumerate(reference.levels):
-        values = []
-        for point in points:
-            levels = point.levels if len(point.levels) == count else ()
-            chosen = [
-                level.energy_eV
-                for k, level in enumerate(levels)
-                if (level.function == last.function if by_function else k == rank)
-            ]
-            values.append(chosen[0] if chosen else np.nan)
-        label = function(last.function)
-        lines.append(_Line(np.array(values), label, look.metal, width=1.3, group=irrep(last.irrep)))
-    return lines
+    whole = [point for point in points if len(point.levels) == count]
+    names = next((own for own in (_by_irrep, _by_function) if _lasting([own(p.levels) for p in whole])), _by_rank)
+    energies = [
+        dict(zip(names(point.levels), (level.energy_eV for level in point.levels), strict=True))
+        if len(point.levels) == count
+        else {}
+        for point in points
+    ]
+    last = whole[-1].levels
+    return [
+        _Line(
+            np.array([known.get(name, np.nan) for known in energies]),
+            function(level.function),
+            look.metal,
+            width=1.3,
+            group=irrep(level.irrep),
+        )
+        for name, level in zip(names(last), last, strict=True)
+    ]
+
+
+def _by_irrep(levels: Sequence[ScannedLevel]) -> list[tuple[str, int]]:
+    """Irrep and place within it: levels of one irrep do not cross."""
+    own = [level.irrep for level in levels]
+    return [(name, own[:k].count(name)) for k, name in enumerate(own)]
+
+
+def _by_function(levels: Sequence[ScannedLevel]) -> list[tuple[str, int]]:
+    own = [level.function for level in levels]
+    return [(name, own[:k].count(name)) for k, name in enumerate(own)]
+
+
+def _by_rank(levels: Sequence[ScannedLevel]) -> list[tuple[str, int]]:
+    return [("", k) for k in range(len(levels))]
+
+
+def _lasting(names: Sequence[Sequence[tuple[str, int]]]) -> bool:
+    """Whether every point has the same names, and none of them is blank."""
+    return all(set(own) == set(names[0]) for own in names) and all(name for name, _ in names[0])
 
 
 def _other_orbitals(points: Sequence[ScanPoint], ladder: Sequence[_Line]) -> list[FloatArray]:

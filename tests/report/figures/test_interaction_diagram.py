@@ -104,3 +104,18 @@ def test_the_bond_can_be_chosen():
     assert "3 halide" in texts
     with pytest.raises(InputError, match="no bond number 9"):
         interaction_diagram(report("VOCl3"), 9)
+
+
+def test_levels_of_a_large_ion_are_labelled_in_its_group_and_joined():
+    """Two tetrahedra that share an oxygen, D3d: no orbital has much of one metal."""
+    one = SPECIES["CrO4 2-"]
+    turned = one.positions_A - one.positions_A[1]
+    both = np.concatenate([turned, -turned[[0, 2, 3, 4]]])
+    ion = bond_report(Fragment((*one.symbols, *(one.symbols[k] for k in (0, 2, 3, 4))), both, -2, 0))
+    assert ion.irreps is None
+    figure = interaction_diagram(ion)
+    assert overlapping(figure) == []
+    labels = " ".join(text.get_text() for text in figure.axes[0].texts if text.get_gid() == "label set")
+    assert r"\mathrm{e}_{\mathrm{u}}" in labels
+    assert r"\mathrm{a}_{\mathrm{1g}}" in labels
+    assert len([line for line in figure.axes[0].lines if line.get_alpha() == 0.8]) > 10

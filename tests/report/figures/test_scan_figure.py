@@ -60,15 +60,31 @@ def test_channels_and_order_are_those_of_the_points(vocl3):
         np.testing.assert_allclose(line.get_ydata(), values)
 
 
-def test_levels_are_those_of_the_ladder_followed_by_function(vanadyl):
+def test_levels_are_those_of_the_ladder_followed_by_irrep(vanadyl):
     axes = scan_figure(vanadyl).axes[2]
     drawn = sorted(line.get_ydata().tolist() for line in lines(axes))
+    # In C4v every function of the d shell but xz and yz has an irrep of its own.
     functions = {level.function for level in vanadyl.points[0].levels}
     wanted = sorted(
         [next(level.energy_eV for level in point.levels if level.function == name) for point in vanadyl.points]
         for name in functions
     )
-    np.testing.assert_allclose(drawn, wanted)
+    np.testing.assert_allclose(drawn, wanted, atol=1e-3)
+
+
+def test_levels_of_one_irrep_do_not_cross(vocl3):
+    """The two e sets of C3v change their leading functions between two points, and repel each other."""
+    first, last = (
+        [level.function for level in point.levels if level.irrep == "e"]
+        for point in (vocl3.points[0], vocl3.points[-1])
+    )
+    assert first != last
+    drawn = np.sort([line.get_ydata() for line in lines(scan_figure(vocl3).axes[2])], axis=0)
+    found = [[level.energy_eV for level in point.levels if level.irrep == "e"] for point in vocl3.points]
+    rows = [line.get_ydata().tolist() for line in lines(scan_figure(vocl3).axes[2])]
+    assert drawn.shape == (5, len(vocl3.points))
+    for row in np.transpose(found).tolist():
+        assert row in rows
 
 
 def test_other_orbitals_are_followed_by_character(vanadyl):
