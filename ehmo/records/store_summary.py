@@ -6,6 +6,10 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Literal
 
+import numpy as np
+
+from ehmo.records.arrays import FloatArray
+
 
 @dataclass(frozen=True, slots=True)
 class Distribution:
@@ -28,25 +32,31 @@ class Distribution:
 
 @dataclass(frozen=True, slots=True)
 class Trend:
-    """Mayer order against length: ``order + slope_per_A * (length - length_A)``.
+    """Mayer order against length: ``order * exp(log_slope_per_A * (length - length_A))``.
 
     Attributes
     ----------
-    slope_per_A : float
-        [1/angstrom]
+    log_slope_per_A : float
+        Of the order's logarithm [1/angstrom].
     length_A : float
         Median length [angstrom].
     order : float
         On the line at that length.
     """
 
-    slope_per_A: float
+    log_slope_per_A: float
     length_A: float
     order: float
 
-    def at(self, length_A: float) -> float:
-        """Order on the line at a length."""
-        return self.order + self.slope_per_A * (length_A - self.length_A)
+    @property
+    def b_A(self) -> float | None:
+        """Length over which the order falls to 1/e [angstrom]; None if it does not fall."""
+        return -1.0 / self.log_slope_per_A if self.log_slope_per_A < 0 else None
+
+    def at(self, lengths_A: FloatArray) -> FloatArray:
+        """Orders on the line at some lengths."""
+        orders: FloatArray = self.order * np.exp(self.log_slope_per_A * (lengths_A - self.length_A))
+        return orders
 
 
 @dataclass(frozen=True, slots=True)

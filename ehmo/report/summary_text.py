@@ -93,11 +93,11 @@ def _orders(summary: StoreSummary) -> list[str]:
         "quartile",
         "highest",
         "length/Å",
-        "slope/Å⁻¹",
+        "b/Å",
     )
     rows = [heading, *map(_order_row, summary.kinds)]
     return [
-        "Mayer bond orders by metal and kind of donor, median length, and slope of the order against length",
+        "Mayer bond orders by metal and kind of donor, median length, and b of their fall as exp(-length/b)",
         *aligned(rows, range(2, len(heading)), indent="  "),
     ]
 
@@ -118,7 +118,7 @@ def _order_row(kind: KindSummary) -> tuple[str, ...]:
         f"{kind.bonds:,}",
         *numbers,
         "" if length is None else f"{length.median:.3f}",
-        "" if kind.trend is None or not kind.trend.slope_per_A else f"{kind.trend.slope_per_A:.1f}",
+        "" if kind.trend is None or kind.trend.b_A is None else f"{kind.trend.b_A:.2f}",
     )
 
 

@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from ehmo.records.arrays import FloatArray
 from ehmo.records.store_summary import Distribution, KindSummary, Outlier, Trend
 from ehmo.store.store import Store
-from ehmo.store.trends import resistant_line
+from ehmo.store.trends import order_trend
 from ehmo.store.where import Condition
 
 QUANTITIES = ("mayer", "wiberg", "formal_order", "overlap_population", "length_A")
@@ -139,12 +139,12 @@ def _trend(bonds: _Bonds) -> Trend | None:
     lengths, orders = bonds.values["length_A"], bonds.values["mayer"]
     both = np.isfinite(lengths) & np.isfinite(orders)
     # The line of a few bonds of one or two compounds says nothing.
-    return resistant_line(lengths[both], orders[both]) if both.sum() >= LEAST_BONDS else None
+    return order_trend(lengths[both], orders[both]) if both.sum() >= LEAST_BONDS else None
 
 
 def _far(bonds: _Bonds, trend: Trend) -> Iterator[_Far]:
     lengths, orders = bonds.values["length_A"], bonds.values["mayer"]
-    on_line = trend.order + trend.slope_per_A * (lengths - trend.length_A)
+    on_line = trend.at(lengths)
     usual = np.full(len(lengths), np.median(lengths[np.isfinite(lengths)]))
     sought: tuple[tuple[Literal["mayer", "length_A"], FloatArray, FloatArray], ...] = (
         ("mayer", orders, on_line),

@@ -16,7 +16,7 @@ from scipy.stats import siegelslopes
 from ehmo.store import condition, open_store, summarise
 from ehmo.store.distributions import QUANTITIES, beyond_quartiles
 from ehmo.store.summary import reason_of
-from ehmo.store.trends import resistant_line
+from ehmo.store.trends import order_trend, resistant_line
 from tests.store.rows import StoredRow, document, done, failed, key, provenance
 
 
@@ -33,7 +33,7 @@ def varied(location) -> str:
     """Oxo bonds on a line of order against length, two off it, one of another length; failures of three reasons."""
     steps = np.linspace(-0.05, 0.05, 21)
     rows = [shifted(k, mayer=-2.0 * step, length=step, duration_s=0.5) for k, step in enumerate(steps)]
-    rows += [shifted(30, mayer=-0.9), shifted(31, mayer=0.5, length=-0.05), shifted(32, mayer=-1.6, length=0.8)]
+    rows += [shifted(30, mayer=-0.9), shifted(31, mayer=0.5, length=-0.05), shifted(32, mayer=-1.16, length=0.8)]
     rows += [failed(40 + k, f"{k}.xyz, line {k}: {k} of 9 atoms; complete it", source=f"{k}.xyz") for k in range(3)]
     rows += [failed(50, "a.xyz: no metal; give a complex", started_utc="2026-11-30T00:00:00Z")]
     rows += [failed(51, "took longer than 600 s", parameter_set="mine", parameter_sha256="1" * 64)]
@@ -90,7 +90,8 @@ def test_outliers_are_off_the_line_or_of_another_length(varied):
     assert set(named) == {("30.xyz", "mayer"), ("31.xyz", "mayer"), ("32.xyz", "length_A")}
     assert found.outliers_found == 3
     trend = next(one.trend for one in found.kinds if (one.metal, one.kind) == ("V", "oxo"))
-    assert trend.slope_per_A == pytest.approx(-2.0, abs=0.1)
+    assert trend.order * trend.log_slope_per_A == pytest.approx(-2.0, abs=0.1)  # slope where the bonds are
+    assert trend.b_A == pytest.approx(2.35 / 2.0, abs=0.1)
     off = named["30.xyz", "mayer"]
     assert (off.bond, off.metal, off.kind, off.key) == ("V1-O2", "V", "oxo", key(30))
     assert off.value - off.expected == pytest.approx(-0.9, abs=0.05)
@@ -131,11 +132,11 @@ def test_a_line_is_found_whatever_a_sixth_of_the_points_does(lengths, slope, dat
     astray = data.draw(st.sets(st.integers(0, len(x) - 1), max_size=(third - 1) // 2))
     moved = y.copy()
     moved[list(astray)] += 10.0
-    clean = resistant_line(x, y)
-    assert clean.slope_per_A == pytest.approx(slope, abs=1e-4)
-    assert clean.at(1.8) == pytest.approx(2.0, abs=1e-4)
-    if not astray:
-        assert clean.slope_per_A == pytest.approx(siegelslopes(y, x).slope, abs=1e-4)
+    found, centre, level = resistant_line(x, y)
+    assert found == pytest.approx(slope, abs=1e-6)
+    assert level + found * (1.8 - centre) == pytest.approx(2.0, abs=1e-6)
+    assert found == pytest.approx(siegelslopes(y, x).slope, abs=1e-6)
+    assert abs(resistant_line(x, moved)[0] - slope) < 10.0 / 0.05 * 0.51
 
 
 def test_a_line_stays_near_siegels_where_points_scatter():
@@ -143,16 +144,30 @@ def test_a_line_stays_near_siegels_where_points_scatter():
     x = rng.uniform(1.55, 1.75, 300)
     y = 2.2 - 1.7 * (x - 1.65) + 0.03 * rng.standard_normal(300)
     y[:40] -= 1.0
-    found, siegel = resistant_line(x, y), siegelslopes(y, x)
-    assert found.slope_per_A == pytest.approx(siegel.slope, abs=0.25)
-    assert found.at(1.65) == pytest.approx(siegel.intercept + 1.65 * siegel.slope, abs=0.01)
+    slope, centre, level = resistant_line(x, y)
+    siegel = siegelslopes(y, x)
+    assert slope == pytest.approx(siegel.slope, abs=0.25)
+    assert level + slope * (1.65 - centre) == pytest.approx(siegel.intercept + 1.65 * siegel.slope, abs=0.01)
+
+
+def test_bond_valences_fall_with_the_b_they_are_made_with():
+    # s = exp((R0 - R)/B), B = 0.37 and R0 of V(V)-O 1.803: Brown, Altermatt 1985 (memory). One order is astray, one
+    # negative.
+    lengths = np.linspace(1.55, 2.35, 40)
+    orders = np.exp((1.803 - lengths) / 0.37)
+    orders[3], orders[30] = 0.3, -0.2
+    trend = order_trend(lengths, orders)
+    assert trend.b_A == pytest.approx(0.37, abs=0.001)
+    np.testing.assert_allclose(trend.at(lengths[5:8]), orders[5:8], rtol=1e-3)
+    assert order_trend(lengths, np.full(40, 0.01)) is None
+    assert order_trend(lengths, lengths).b_A is None  # no fall
 
 
 @pytest.mark.parametrize("lengths", [[1.6], [1.6] * 20, [1.6, 1.61]])
 def test_lengths_that_tell_no_slope(lengths):
     x = np.array(lengths)
     found = resistant_line(x, np.linspace(1.0, 2.0, len(x)))
-    assert found.slope_per_A == 0.0
+    assert found[0] == 0.0
 
 
 def test_distances_beyond_quartiles():
@@ -197,7 +212,7 @@ def test_text(ehmo, varied):
     assert "25 structures done, 5 failed; 148 metal-donor bonds" in lines
     assert "       3  # of # atoms" in lines
     row = next(line for line in lines if re.match(r" +V +oxo ", line)).split()
-    assert row[2:4] == ["24", "0.75"]
+    assert row[2:4] == ["24", "1.19"]
     assert any(re.match(r" +V1-O2 +oxo +1\.591 +Mayer order +1\.45 +2\.35 +30\.xyz$", line) for line in lines)
     assert any("never replace" in line for line in lines)
     assert all(len(line) <= 110 for line in lines)

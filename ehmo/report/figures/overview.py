@@ -28,7 +28,7 @@ from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.markup import write
 from ehmo.report.look import LIGHT, Look
 from ehmo.store.distributions import FENCE, LEAST_BONDS, LEAST_RANGES, beyond_quartiles
-from ehmo.store.trends import resistant_line
+from ehmo.store.trends import order_trend
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -122,7 +122,8 @@ def off_trend(bonds: Sequence[PlottedBond]) -> list[OffTrend]:
         line = _trend(members)
         if line is None:
             continue
-        distances = np.array([bond.mayer - line.at(bond.length_A) for bond in members])
+        lengths, orders = _arrays(members)
+        distances = orders - line.at(lengths)
         far = beyond_quartiles(distances, LEAST_RANGES["mayer"]) > FENCE
         for k in np.flatnonzero(far):
             bond = members[k]
@@ -145,7 +146,7 @@ def _arrays(bonds: Sequence[PlottedBond]) -> tuple[FloatArray, FloatArray]:
 
 def _trend(bonds: Sequence[PlottedBond]) -> Trend | None:
     """Line of the bonds of one metal and kind; None for too few."""
-    return resistant_line(*_arrays(bonds)) if len(bonds) >= LEAST_BONDS else None
+    return order_trend(*_arrays(bonds)) if len(bonds) >= LEAST_BONDS else None
 
 
 @drawn
@@ -246,8 +247,9 @@ def _draw_bonds(axes: Axes, bonds: Sequence[PlottedBond], kinds: Sequence[str], 
         )  # fmt: skip
         line = _trend(members)
         if line is not None:
-            ends = (float(lengths.min()), float(lengths.max()))
-            axes.plot(ends, [line.at(x) for x in ends], color=colour, lw=0.8, alpha=0.8, zorder=2, gid="trend")
+            first, last = np.quantile(lengths, (0.05, 0.95))  # not out to an outlier
+            at = np.linspace(first, last, 25)
+            axes.plot(at, line.at(at), color=colour, lw=0.8, alpha=0.8, zorder=2, gid="trend")
 
 
 def _draw_numbers(

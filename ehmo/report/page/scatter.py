@@ -147,11 +147,13 @@ def _axes(limits: Limits) -> Iterator[Markup]:
 
 
 def _line(kind: KindPoints, limits: Limits) -> Markup | None:
-    if kind.trend is None or not kind.trend.slope_per_A or not len(kind.orders):
+    if kind.trend is None or not len(kind.orders):
         return None
-    ends = [float(end) for end in np.quantile(kind.lengths_A, (0.05, 0.95))]  # not out to an outlier
-    (x1, y1), (x2, y2) = ((f"{limits.x(at):.1f}", f"{limits.y(kind.trend.at(at)):.1f}") for at in ends)
-    return element("line", x1=x1, y1=y1, x2=x2, y2=y2, class_=f"trend mark-{MARKS[kind.mark][0]}")
+    ends = np.quantile(kind.lengths_A, (0.05, 0.95))  # not out to an outlier
+    lengths = np.linspace(ends[0], ends[1], 25)
+    places = zip(limits.x(lengths).tolist(), limits.y(kind.trend.at(lengths)).tolist(), strict=True)
+    points = " ".join(f"{x:.1f},{y:.1f}" for x, y in places)
+    return element("polyline", points=points, class_=f"trend mark-{MARKS[kind.mark][0]}")
 
 
 def _marks(kind: KindPoints, limits: Limits) -> Markup:

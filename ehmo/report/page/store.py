@@ -106,23 +106,23 @@ def _orders(summary: StoreSummary) -> Content:
     if not summary.kinds:
         return element("p", "No structure is done, so there are no bonds.")
     rows: list[list[Content]] = [
-        ["Metal", "Donor", "Bonds", "Lowest", "Quartile", "Median", "Quartile", "Highest", "Length/Å", "Slope/Å⁻¹"],
+        ["Metal", "Donor", "Bonds", "Lowest", "Quartile", "Median", "Quartile", "Highest", "Length/Å", "b/Å"],
         *map(_order_row, summary.kinds),
     ]
-    caption = "Mayer bond orders, median length, and slope of the order against length"
+    caption = "Mayer bond orders, median length, and b of their fall as exp(\N{MINUS SIGN}length/b)"
     return table(rows, caption, range(2, 10))
 
 
 def _order_row(kind: KindSummary) -> list[Content]:
     mayer, length = kind.distributions.get("mayer"), kind.distributions.get("length_A")
-    slope = kind.trend.slope_per_A if kind.trend is not None else 0.0
+    fall = None if kind.trend is None else kind.trend.b_A
     return [
         kind.metal,
         kind.kind,
         f"{kind.bonds:,}",
         *([""] * 5 if mayer is None else [_number(value, 2) for value in _five(mayer)]),
         "" if length is None else _number(length.median, 3),
-        _number(slope, 1) if slope else "",
+        "" if fall is None else _number(fall, 2),
     ]
 
 

@@ -7,7 +7,7 @@ from ehmo.errors import InputError
 from ehmo.report.figures.canvas import figure_bytes
 from ehmo.report.figures.overview import MOST_NAMED, PlottedBond, bonds_of, off_trend, overview_figure
 from ehmo.report.look import DARK, LIGHT
-from ehmo.store.trends import resistant_line
+from ehmo.store.trends import order_trend
 from tests.report.figures.boxes import outside, overlapping, words
 from tests.report.figures.reports import SIMPLE_TO_CROWDED, report
 
@@ -68,10 +68,10 @@ def test_bonds_off_their_trend_are_found_and_no_others():
 
 def test_lines_and_outliers_are_those_of_the_summary():
     bonds = [bond for bond in strewn(("V",)) if bond.kind == "oxo"]
-    line = resistant_line(np.array([b.length_A for b in bonds]), np.array([b.mayer for b in bonds]))
+    line = order_trend(np.array([b.length_A for b in bonds]), np.array([b.mayer for b in bonds]))
     figure = overview_figure(bonds)
     drawn = next(one for one in figure.axes[1].lines if one.get_gid() == "trend")
-    assert drawn.get_ydata() == pytest.approx([line.at(x) for x in drawn.get_xdata()])
+    assert drawn.get_ydata() == pytest.approx(line.at(drawn.get_xdata()))
 
 
 def test_few_bonds_have_no_trend():
