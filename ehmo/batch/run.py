@@ -31,8 +31,8 @@ class BatchResult:
         Rows calculated, rows that say why not, structures that the store had already.
     size_done : int
         Bytes of the sources worked off.
-    read_s, calculate_s : float
-        Time of the workers spent in reading and in calculating [s].
+    read_s, calculate_s, record_s : float
+        Time of the workers spent in reading, in calculating, and in making the full records [s].
     elapsed_s : float
     workers : int
     reasons : Counter of str
@@ -45,6 +45,7 @@ class BatchResult:
     size_done: int = 0
     read_s: float = 0.0
     calculate_s: float = 0.0
+    record_s: float = 0.0
     elapsed_s: float = 0.0
     workers: int = 1
     reasons: Counter[str] = field(default_factory=Counter)
@@ -130,6 +131,7 @@ def known_keys(store: Store, *, retry_failed: bool = False) -> KnownKeys:
 def _count(event: Finished, result: BatchResult) -> None:
     result.read_s += event.read_s
     result.calculate_s += event.calculate_s
+    result.record_s += event.record_s
     if event.row.status == DONE:
         result.done += 1
         return

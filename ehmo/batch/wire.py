@@ -88,6 +88,7 @@ def outcome_message(outcome: Outcome) -> Message:
         "reason": outcome.reason,
         "read_s": outcome.read_s,
         "calculate_s": outcome.calculate_s,
+        "record_s": outcome.record_s,
     }
 
 
@@ -99,4 +100,4 @@ def outcome_of(message: Message) -> Outcome:
         return Skipped(message["skipped"])
     document = message["document"]
     row = PackedRow(message["row"], tuple(message["bonds"]), None if document is None else base64.b64decode(document))
-    return Finished(row, message["reason"], message["read_s"], message["calculate_s"])
+    return Finished(row, message["reason"], message["read_s"], message["calculate_s"], message["record_s"])

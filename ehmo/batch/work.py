@@ -55,12 +55,13 @@ class Skipped:
 
 @dataclass(frozen=True, slots=True)
 class Finished:
-    """A row, the reason of a failure in general words, and seconds spent in reading and in calculating."""
+    """A row, the reason of a failure in general words, and seconds: reading, calculating, making the full record."""
 
     row: PackedRow
     reason: str = ""
     read_s: float = 0.0
     calculate_s: float = 0.0
+    record_s: float = 0.0
 
 
 Outcome = Begun | Skipped | Finished
@@ -151,12 +152,14 @@ class Workplace:
         try:
             report = _report(structure, self._table, self._settings, options)
             calculated = clock.stopped()
+            clock = _Clock()
             document = _document(report)
         except Exception as fault:  # noqa: BLE001  as above
             yield self._failure(key, item, entry, fault, read, clock.stopped())
             return
+        recorded = clock.stopped()
         row = StoredRow(key, DONE, "", document, self._provenance(item, entry, structure, read, calculated))
-        yield Finished(pack(row), "", read.seconds, calculated.seconds)
+        yield Finished(pack(row), "", read.seconds, calculated.seconds, recorded.seconds)
 
     def _failure(
         self, key: str, item: WorkItem, entry: str, fault: Exception, read: _Clock, calculated: _Clock

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import json
-import math
 import re
 from collections.abc import Mapping, Sequence
-from typing import Any
+from math import isfinite
+from typing import Any, Final
 
 from ehmo import __version__
 from ehmo.records.reactivity import DonorReactivity
@@ -149,18 +149,20 @@ def _method(report: BondReport) -> dict[str, Any]:
 
 
 def _orbitals(report: BondReport) -> list[dict[str, Any]]:
-    composition = report.populations.orbital_shares
-    overlap = report.orbital_overlap()
-    occupations, irreps, shells = report.state.occupations, report.orbital_irreps, orbital_shells(report)
+    # Lists first: taking single numbers out of arrays is slow.
+    composition = report.populations.orbital_shares.tolist()
+    overlap, energies = report.orbital_overlap().tolist(), report.state.energies_eV.tolist()
+    occupations = report.state.occupations.sum(axis=0).tolist()
+    irreps, shells = report.orbital_irreps, orbital_shells(report)
     return [
         {
-            "energy_eV": report.state.energies_eV[k],
+            "energy_eV": energies[k],
             "irrep": None if irreps is None else irreps.labels[k] or None,
             "irrep_share": None if irreps is None else irreps.label_shares[k],
-            "occupation": occupations[0, k] + occupations[1, k],
-            "metal_share": composition[k, 0],
-            "donor_share": composition[k, 1],
-            "other_share": composition[k, 2],
+            "occupation": occupations[k],
+            "metal_share": composition[k][0],
+            "donor_share": composition[k][1],
+            "other_share": composition[k][2],
             "metal_donor_overlap_population_per_two_electrons": overlap[k],
             "shell_shares": shells[k],
             "spread": orbital_spread(report, k),
@@ -245,14 +247,24 @@ def _reactivity(reading: DonorReactivity) -> dict[str, Any]:
     }
 
 
+_PLAIN: Final = frozenset({str, int, bool, type(None)})
+
+
 def plain_data(value: Any) -> Any:
     """Arrays to lists, NaN to None, numbers to Python's own."""
+    # A report holds thousands of numbers: what stays as it is is told without a call. x - x is 0 where x is finite.
     if isinstance(value, dict):
-        return {key: plain_data(item) for key, item in value.items()}
+        return {
+            key: item if type(item) in _PLAIN or (type(item) is float and item - item == 0.0) else plain_data(item)
+            for key, item in value.items()
+        }
     if isinstance(value, (list, tuple)):
-        return [plain_data(item) for item in value]
+        return [
+            item if type(item) in _PLAIN or (type(item) is float and item - item == 0.0) else plain_data(item)
+            for item in value
+        ]
     if hasattr(value, "tolist"):
         return plain_data(value.tolist())
-    if isinstance(value, float) and not math.isfinite(value):
+    if isinstance(value, float) and not isfinite(value):
         return None
     return value

@@ -22,7 +22,7 @@ _DIGITS = 6  # decimals: enough to add up, and a third of the length
 def shell_parts(report: BondReport, atom: int) -> list[dict[str, Any]]:
     """Gross and net population of each shell of an atom, and the gross population of its functions."""
     basis, populations = report.basis, report.populations
-    net = populations.shell_overlap.diagonal()
+    net, gross = populations.shell_overlap.diagonal(), np.round(populations.gross, _DIGITS).tolist()
     parts = []
     for shell in np.flatnonzero(basis.shell_atom == atom).tolist():
         functions = np.flatnonzero(basis.shell_of == shell).tolist()
@@ -31,7 +31,7 @@ def shell_parts(report: BondReport, atom: int) -> list[dict[str, Any]]:
                 "shell": basis.shell_label(shell),
                 "gross_population": populations.gross[functions].sum(),
                 "net_population": net[shell],
-                "functions": {basis.function_label(i): round(float(populations.gross[i]), _DIGITS) for i in functions},
+                "functions": {basis.function_label(i): gross[i] for i in functions},
             }
         )
     return parts
@@ -41,7 +41,7 @@ def orbital_shells(report: BondReport) -> list[dict[str, float]]:
     """Shells that each orbital is made of, largest first."""
     shares = orbital_shell_shares(report.state, report.overlap, report.basis)
     names = _shell_names(report)
-    return [_named(names, column, LISTED_SHARE) for column in shares.T]
+    return _named(names, shares.T, LISTED_SHARE)
 
 
 def irrep_populations(report: BondReport) -> list[dict[str, Any]] | None:
@@ -52,10 +52,10 @@ def irrep_populations(report: BondReport) -> list[dict[str, Any]] | None:
     filling = report.state.occupations.sum(axis=0)
     shares = orbital_shell_shares(report.state, report.overlap, report.basis)
     held = sums_by_irrep(shares * filling, irreps.labels)
-    names = _shell_names(report)
+    populations = _named(_shell_names(report), np.array(list(held.values())), LISTED_POPULATION)
     return [
-        {"irrep": irrep or None, "electrons": gross.sum(), "shell_populations": _named(names, gross, LISTED_POPULATION)}
-        for irrep, gross in held.items()
+        {"irrep": irrep or None, "electrons": gross.sum(), "shell_populations": shells}
+        for (irrep, gross), shells in zip(held.items(), populations, strict=True)
     ]
 
 
@@ -91,6 +91,13 @@ def _shell_names(report: BondReport) -> list[str]:
     return [f"{labels[atom]} {basis.shell_label(shell)}" for shell, atom in enumerate(basis.shell_atom.tolist())]
 
 
-def _named(names: list[str], values: FloatArray, least: float) -> dict[str, float]:
-    order = np.argsort(-np.abs(values), kind="stable")
-    return {names[k]: round(float(values[k]), _DIGITS) for k in order.tolist() if abs(values[k]) >= least}
+def _named(names: list[str], rows: FloatArray, least: float) -> list[dict[str, float]]:
+    """Values of each row by name, largest first, without those below `least`."""
+    sizes = np.abs(rows)
+    order = np.argsort(-sizes, axis=-1, kind="stable")
+    values = np.round(np.take_along_axis(rows, order, axis=-1), _DIGITS).tolist()
+    counts = (sizes >= least).sum(axis=-1).tolist()
+    return [
+        {names[place]: value for place, value in zip(places[:count], found, strict=False)}
+        for places, found, count in zip(order.tolist(), values, counts, strict=True)
+    ]

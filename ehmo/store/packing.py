@@ -97,7 +97,8 @@ def storable(text: str) -> str:
 
 def compressed(document: Mapping[str, Any]) -> bytes:
     """Document as compressed JSON."""
-    return zlib.compress(json.dumps(document, separators=(",", ":"), allow_nan=False).encode("ascii"), 6)
+    # Level 1 takes a quarter of the time of level 6 and a sixth more room.
+    return zlib.compress(json.dumps(document, separators=(",", ":"), allow_nan=False).encode("ascii"), 1)
 
 
 def unfolded(data: bytes, place: str) -> dict[str, Any]:
