@@ -10,7 +10,7 @@ from html.parser import HTMLParser
 import numpy as np
 import pytest
 
-from ehmo.records.store_summary import Trend
+from ehmo.records.store_summary import Outlier, Trend
 from ehmo.report.page.scatter import KindPoints, Limits, scatter_drawing, ticks
 from ehmo.report.page.store import store_page
 from ehmo.store import StoredRow, open_store, summarise
@@ -123,6 +123,21 @@ def test_points_on_one_another_are_drawn_once_and_none_is_lost():
     assert len(re.findall("trend", svg)) == 1
 
 
+def test_numbers_of_crowded_outliers_do_not_overlap():
+    x = 1.6 + 0.001 * np.arange(12)
+    kind = KindPoints("oxo", 0, np.append(x, 2.4), np.append(np.full(12, 2.0), 0.3), None)
+    numbered = {
+        k: Outlier(key(k), "a.xyz", "", "V1-O2", "V", "oxo", x[k], 2.0, "mayer", 2.0, 1.0, 9.0) for k in range(12)
+    }
+    page = Elements(scatter_drawing("V", [kind], Limits.around([kind]), numbered))
+    places = [(float(one["x"]), float(one["y"])) for one in page.of("text", class_="numbered")]
+    assert len(places) == 12
+    for k, (x1, y1) in enumerate(places):
+        assert 46 < x1 < 440
+        assert 0 < y1 < 300
+        assert all(abs(x1 - x2) > 17 or abs(y1 - y2) > 12 for x2, y2 in places[:k])
+
+
 def test_an_empty_store_and_many_metals(tmp_path):
     with open_store(tmp_path / "a.sqlite", create=True) as store:
         empty = store_page(summarise(store), bond_points(store))
@@ -138,7 +153,7 @@ def test_an_empty_store_and_many_metals(tmp_path):
 @pytest.mark.parametrize(("first", "last"), [(1.48, 2.31), (0.0, 2.7), (-0.3, 0.1), (1.6, 1.7001)])
 def test_ticks_are_round_and_within(first, last):
     found = ticks(first, last)
-    assert 2 <= len(found) <= 7
+    assert 3 <= len(found) <= 9
     assert all(first <= one <= last for one in found)
     assert np.ptp(np.diff(found)) < 1e-9
 

@@ -17,6 +17,7 @@ Number = TypeVar("Number", float, FloatArray)
 
 WIDTH, HEIGHT = 440, 300
 _LEFT, _RIGHT, _TOP, _BOTTOM = 46, 10, 12, 40
+_NEAR = 14.0  # from a ring to its number [px]
 _GRID = 1.5  # marks closer than this are one mark [px]
 
 MARKS: Final = (
@@ -100,7 +101,7 @@ def scatter_drawing(metal: str, kinds: Sequence[KindPoints], limits: Limits, num
         list(_axes(limits)),
         [_line(kind, limits) for kind in kinds],
         [_marks(kind, limits) for kind in kinds],
-        [_number(number, one, limits) for number, one in numbered.items()],
+        list(_numbers(numbered, limits)),
         view_box=f"0 0 {WIDTH} {HEIGHT}",
         role="img",
         aria_label=f"Mayer order against length of {count} bonds of {metal}",
@@ -114,7 +115,7 @@ def mark_sample(mark: int) -> Markup:
     )
 
 
-def ticks(first: float, last: float, wanted: int = 5) -> list[float]:
+def ticks(first: float, last: float, wanted: int = 7) -> list[float]:
     """Round numbers between two ends.
 
     Examples
@@ -168,22 +169,36 @@ def _path(data: str, mark: int) -> Markup:
     return element("path", d=data, class_=f"mark mark-{MARKS[mark][0]}")
 
 
-def _number(number: int, one: Outlier, limits: Limits) -> Markup | None:
-    if one.mayer is None:
-        return None
-    x, y = limits.x(one.length_A), limits.y(one.mayer)
-    side = -9 if x > WIDTH - 40 else 9
-    return element(
-        "a",
-        element("title", f"{one.bond}, {one.kind}: {one.source}{', ' if one.entry else ''}{one.entry}"),
-        element("circle", cx=f"{x:.1f}", cy=f"{y:.1f}", r="6", class_="ring"),
-        element(
-            "text",
-            str(number),
-            x=f"{x + side:.1f}",
-            y=f"{y + 4:.1f}",
-            class_="numbered",
-            text_anchor="end" if side < 0 else "start",
-        ),
-        href=f"#outlier-{number}",
-    )
+def _numbers(numbered: Mapping[int, Outlier], limits: Limits) -> Iterator[Markup]:
+    """Rings round the outliers, each with its number beside it, none over another."""
+    taken: list[tuple[float, float]] = []
+    for number, one in numbered.items():
+        if one.mayer is None:
+            continue
+        x, y = limits.x(one.length_A), limits.y(one.mayer)
+        at = _free_place(x, y, taken)
+        taken.append(at)
+        yield element(
+            "a",
+            element("title", f"{one.bond}, {one.kind}: {one.source}{', ' if one.entry else ''}{one.entry}"),
+            element("circle", cx=f"{x:.1f}", cy=f"{y:.1f}", r="6", class_="ring"),
+            element("line", x1=f"{x:.1f}", y1=f"{y:.1f}", x2=f"{at[0]:.1f}", y2=f"{at[1]:.1f}", class_="leader")
+            if math.dist((x, y), at) > 2 * _NEAR
+            else None,
+            element(
+                "text", str(number), x=f"{at[0]:.1f}", y=f"{at[1] + 4:.1f}", class_="numbered", text_anchor="middle"
+            ),
+            href=f"#outlier-{number}",
+        )
+
+
+def _free_place(x: float, y: float, taken: Sequence[tuple[float, float]]) -> tuple[float, float]:
+    """Place of a number near a ring, clear of the others and within the axes as far as there is one."""
+    place = x + _NEAR, y
+    for k in range(96):
+        turn, reach = math.pi / 6 * (k % 12), _NEAR + 9.0 * (k // 12)
+        place = x + reach * math.cos(turn), y - reach * math.sin(turn)
+        inside = _LEFT + 8 < place[0] < WIDTH - _RIGHT - 4 and _TOP + 4 < place[1] < HEIGHT - _BOTTOM - 8
+        if inside and all(abs(place[0] - a) > 18 or abs(place[1] - b) > 13 for a, b in taken):
+            break
+    return place
