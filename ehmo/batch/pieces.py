@@ -80,8 +80,10 @@ def _whole(path: str, shared: dict[str, Any]) -> Iterator[WorkItem]:
         yield WorkItem(**shared, text=stamp, size=status.st_size)
         return
     try:
-        for number in ase_database_numbers(Path(path)):
-            yield WorkItem(**shared, entry=f"row {number}", kind="row", text=stamp, number=number)
+        numbers = list(ase_database_numbers(Path(path)))
+        part = status.st_size // max(1, len(numbers))
+        for number in numbers:
+            yield WorkItem(**shared, entry=f"row {number}", kind="row", text=stamp, number=number, size=part)
     except EhmoError as fault:
         yield WorkItem(**shared, kind="fault", text=f"{fault.fault}\n{fault.mend}", size=status.st_size)
 

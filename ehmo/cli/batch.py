@@ -212,7 +212,7 @@ def _closing_words(result: BatchResult, store: str) -> str:
     lines = [
         f"{rows + result.skipped:,} structures: {result.done:,} calculated, {result.failed:,} failed, "
         f"{result.skipped:,} were in the store.",
-        f"Store: {store}",
+        f"Store: {store} (ehmo summary shows what it holds)",
     ]
     if rows:
         rate = rows / max(result.elapsed_s, 1e-9)

@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import ast
 import json
 import re
+from pathlib import Path
+from urllib.parse import quote, unquote
 
 import pytest
 
@@ -272,3 +275,24 @@ def test_progress_is_one_line_on_a_terminal_and_silent_elsewhere():
     assert terminal.text == f"\r{progress_line(result, 1000)}\x1b[K\r\x1b[K"
     assert "2.2 per second; about 5 s left" in terminal.text
     assert pipe.text == ""
+
+
+def test_a_password_in_the_address_is_neither_shown_nor_stored(ehmo, tmp_path, database):
+    put(tmp_path, "a.xyz", xyz_text("OsO4"))
+    ran = ehmo("batch", "a.xyz", "--store", database, "--workers", "0")
+    assert ran.status == 0
+    secret = unquote(database.split("@127")[0].rsplit(":", 1)[1])
+    for words in (ran.out, ran.err, repr(rows(database))):
+        assert secret not in words
+        assert quote(secret, safe="") not in words
+
+
+@pytest.mark.parametrize("folder", ["batch", "store"])
+def test_nothing_is_unpickled(folder):
+    # Whoever unpickles a file runs what its writer wanted.
+    forbidden = {"pickle", "marshal", "shelve", "dill", "cloudpickle", "joblib"}
+    for path in (Path(package.__file__).parent / folder).glob("*.py"):
+        for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
+            names = [alias.name for alias in node.names] if isinstance(node, ast.Import) else []
+            names += [node.module or ""] if isinstance(node, ast.ImportFrom) else []
+            assert not forbidden & {name.split(".")[0] for name in names}, path
