@@ -15,7 +15,7 @@ from ehmo.errors import InputError
 from ehmo.report.figures.catalogue import FIGURE_KINDS, FigureKind
 from ehmo.report.figures.choice import labelled
 
-_NARROWEST_MM, _WIDEST_MM = 60.0, 400.0
+_NARROWEST_MM, _WIDEST_MM = 80.0, 400.0
 _OPTIONS = ("bond", "metal", "bands", "spread", "mesh", "path", "window", "where")
 
 Drawn = tuple[Any, dict[str, Any]]

@@ -128,12 +128,23 @@ def new_figure(width_cm: float, height_cm: float, *, layout: Literal["constraine
     return Figure(figsize=(width_cm / CM_PER_INCH, height_cm / CM_PER_INCH), layout=layout)
 
 
-def paper_axes(figure: Figure) -> Axes:
-    """Axes over the whole figure whose coordinates are centimetres on paper, from the lower left corner."""
+def paper_axes(figure: Figure, below: float = 0.0) -> Axes:
+    """Axes over the whole figure whose coordinates are centimetres on paper, from the lower left corner.
+
+    Parameters
+    ----------
+    figure : Figure
+    below : float
+        Height of a strip at the lower edge that lies below zero [cm].
+
+    Returns
+    -------
+    axes : Axes
+    """
     width, height = figure.get_size_inches() * CM_PER_INCH
     axes = figure.add_axes((0.0, 0.0, 1.0, 1.0))
     axes.set_xlim(0, width)
-    axes.set_ylim(0, height)
+    axes.set_ylim(-below, height - below)
     axes.set_xticks([])
     axes.set_yticks([])
     axes.set_axis_off()

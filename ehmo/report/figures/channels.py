@@ -11,7 +11,7 @@ from ehmo.records.report import BondReport
 from ehmo.records.wording import FULL_CHANNEL, PARTIAL_CHANNEL, with_deviation
 from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, drawn, new_figure, paper_axes
 from ehmo.report.figures.levels import LABEL_CM
-from ehmo.report.figures.markup import chemical, part, write
+from ehmo.report.figures.markup import NOTE_CM, chemical, note_lines, part, write, write_notes
 from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.formula import complex_formula
 from ehmo.report.look import LIGHT, Look
@@ -77,8 +77,10 @@ def channel_bars(report: BondReport, *, look: Look = LIGHT, width_cm: float = CO
     left_out = sum(row.count for row in rows[kept:])
     rows = rows[:kept]
     height = _TOP_CM + _BOTTOM_CM + sum(row.height for row in rows)
-    figure = new_figure(width_cm, height, layout=None)
-    axes = paper_axes(figure)
+    notes = note_lines(_notes(report, left_out), width_cm - 0.12)
+    below = NOTE_CM * (len(notes) - 1)
+    figure = new_figure(width_cm, height + below, layout=None)
+    axes = paper_axes(figure, below)
     mayer = [width_of(row.numbers[0], SMALL_POINTS) for row in rows]
     formal_x = width_cm - 0.1
     mayer_x = formal_x - max(0.75, *(width_of(row.numbers[1], SMALL_POINTS) for row in rows)) - 0.15
@@ -103,15 +105,17 @@ def channel_bars(report: BondReport, *, look: Look = LIGHT, width_cm: float = CO
         y -= row.height
         if row is not rows[-1]:
             axes.plot([0.06, width_cm - 0.06], [y, y], color=look.grid, lw=0.5, zorder=0)
+    write_notes(axes, notes, look)
+    return figure
+
+
+def _notes(report: BondReport, left_out: int) -> list[str]:
     notes = ["bar: weight of the channel"]
     if report.spread is not None:
         notes.append("line: \N{PLUS-MINUS SIGN} one standard deviation")
     if left_out:
         notes.append(f"{left_out} further bonds not drawn")
-    write(
-        axes, 0.06, 0.2, "; ".join(notes), ha="left", va="center", fontsize=SMALL_POINTS, color=look.muted, gid="note"
-    )
-    return figure
+    return notes
 
 
 def _rows(report: BondReport) -> list[_Row]:

@@ -17,6 +17,7 @@ from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, das
 from ehmo.report.figures.energy_axis import EnergyAxis, energy_axis
 from ehmo.report.figures.levels import ARROW_CM, DASH_CM, GAP_CM, LABEL_CM, draw_electrons, draw_set, set_width
 from ehmo.report.figures.markup import chemical, irrep, joined, part, write
+from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.placement import side_by_side, spread_out
 from ehmo.report.formula import complex_formula
 from ehmo.report.look import LIGHT, Look
@@ -38,6 +39,7 @@ LINE_SHARE: Final = 0.08
 """Contribution from which a level of a part and a level of the fragment are joined by a line."""
 
 _PART_OF_LARGEST = 0.5  # lines are drawn from this part of the largest contribution, where that is less
+_TICKS_CM = 0.42  # right edge that the ticks of the other ligands take
 _ABOVE_EV = 1.0  # what is drawn above the highest level of interest
 _TOP_CM, _BOTTOM_CM = 0.95, 1.15
 _SHORTEST_CM, _TALLEST_CM = 9.0, 22.0
@@ -56,12 +58,13 @@ class _Layout:
     label_heights: tuple[float, ...]
     ticks: tuple[int, ...]
     above: int
+    ligand_x: float
 
     @property
     def columns(self) -> tuple[float, float, float, float, float]:
         """Middle of metal levels and orbitals, left end of their labels, middle of ligand levels and of ticks."""
         w = self.width
-        return 0.235 * w, 0.50 * w, 0.66 * w, 0.845 * w, w - 0.2
+        return 0.235 * w, 0.50 * w, 0.66 * w, self.ligand_x, w - 0.2
 
 
 @drawn
@@ -154,7 +157,17 @@ def _laid_out(found: Interaction, top_eV: float, width_cm: float) -> _Layout:
         tuple(labels.tolist()),
         ticks,
         len(found.sets) - len(below),
+        _ligand_place(found, scale, width_cm),
     )
+
+
+def _ligand_place(found: Interaction, scale: EnergyAxis, width_cm: float) -> float:
+    """Middle of the ligand levels, such that their labels end before the ticks [cm]."""
+    inside = [level for level in found.ligand_levels if _is_drawn(scale, level)]
+    heights = [scale.height_cm(level.energy_eV) for level in inside]
+    widest = max((_group_width([inside[k] for k in rows]) for rows in _by_height(heights)), default=0.0)
+    label = max((width_of(_part_label(level, 1), SMALL_POINTS) for level in inside), default=0.0)
+    return min(0.845 * width_cm, width_cm - _TICKS_CM - label - 0.1 - widest / 2)
 
 
 def _own_share(level: OrbitalSet) -> float:
@@ -222,12 +235,21 @@ def _least_line(found: Interaction, layout: _Layout) -> float:
 
 
 def _drawn(layout: _Layout, level: PartLevel) -> bool:
+    return _is_drawn(layout.scale, level)
+
+
+def _is_drawn(scale: EnergyAxis, level: PartLevel) -> bool:
     ours = not level.symmetry or level.donor_share >= DONOR_SHARE
-    return bool(ours and level.energy_eV <= layout.scale.stretches_eV[-1, 1])
+    return bool(ours and level.energy_eV <= scale.stretches_eV[-1, 1])
 
 
 def _part_width(level: PartLevel) -> float:
-    return min(level.degeneracy, 7) * 0.13 + 0.12
+    return _group_width([level])
+
+
+def _group_width(levels: Sequence[PartLevel]) -> float:
+    """Width of levels at one height, drawn as one row of dashes [cm]."""
+    return min(sum(level.degeneracy for level in levels), 7) * 0.13 + 0.12
 
 
 def _draw_sets(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> None:
@@ -274,12 +296,12 @@ def _draw_parts(axes: Axes, found: Interaction, layout: _Layout, look: Look) -> 
         wanted = [heights[rows[0]] for rows in grouped]
         sizes = [LABEL_CM * len(rows) for rows in grouped]
         tops = spread_out(wanted, sizes, _BOTTOM_CM, layout.height - _TOP_CM) + np.array(sizes) / 2
-        widest = max((_part_width(level) for level in inside), default=0.0) / 2
+        widest = max((_group_width([inside[k] for k in rows]) for rows in grouped), default=0.0) / 2
         for rows, top, y in zip(grouped, tops, wanted, strict=True):
             for n, k in enumerate(reversed(rows)):
                 height = top - (n + 0.5) * LABEL_CM
                 if abs(height - y) > LABEL_CM / 2:
-                    start, end = x + side * _part_width(inside[k]) / 2, x + side * (widest + 0.08)
+                    start, end = x + side * _group_width([inside[j] for j in rows]) / 2, x + side * (widest + 0.08)
                     axes.plot([start, end], [y, height], color=look.grid, lw=0.5, zorder=0)
                 write(
                     axes, x + side * (widest + 0.1), height, _part_label(inside[k], side), va="center",
@@ -310,7 +332,7 @@ def _by_height(heights: Sequence[float]) -> list[list[int]]:
 
 def _draw_part_level(axes: Axes, levels: Sequence[PartLevel], y: float, x: float, colour: str) -> None:
     count = min(sum(level.degeneracy for level in levels), 7)
-    width = count * 0.13 + 0.12
+    width = _group_width(levels)
     edges = np.linspace(x - width / 2, x + width / 2, count + 1)
     for low, high in pairwise(edges):
         axes.plot([low + 0.02, high - 0.02], [y, y], color=colour, lw=1.8, solid_capstyle="butt", zorder=4)

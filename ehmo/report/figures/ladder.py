@@ -15,7 +15,17 @@ from ehmo.records.report import BondReport
 from ehmo.records.site import MetalSite
 from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, drawn, new_figure, paper_axes
 from ehmo.report.figures.levels import ARROW_CM, DASH_CM, GAP_CM, LABEL_CM, draw_electrons, draw_set, set_width
-from ehmo.report.figures.markup import chemical, function, irrep, joined, term, write
+from ehmo.report.figures.markup import (
+    NOTE_CM,
+    chemical,
+    function,
+    irrep,
+    joined,
+    note_lines,
+    term,
+    write,
+    write_notes,
+)
 from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.placement import side_by_side, spread_out
 from ehmo.report.formula import complex_formula
@@ -106,8 +116,10 @@ def ladder_figure(
     high = max(high, low + 1.0)
     margin = 0.04 * (high - low)
     scale = _Scale(low - margin, high + margin, height)
-    figure = new_figure(width_cm, height, layout=None)
-    axes = paper_axes(figure)
+    notes = note_lines(_notes(report, terms), width_cm - 0.12)
+    below = NOTE_CM * (len(notes) - 1)
+    figure = new_figure(width_cm, height + below, layout=None)
+    axes = paper_axes(figure, below)
     _draw_axis(axes, scale, width_cm, look)
     write(
         axes, 0.06, height - 0.3, chemical(complex_formula(report), report.fragment.charge), ha="left", va="center",
@@ -119,7 +131,7 @@ def ladder_figure(
     columns = _columns(width_cm, [levels.width, _terms_width(terms), _observed_width(observed)])
     _heading(axes, scale, columns[0], f"{report.fragment.labels[site.metal]} {ladder.shell} levels", look)
     _draw_levels(axes, levels, _deviations(report, site), scale, columns[0], look)
-    _draw_notes(axes, report, terms, look)
+    write_notes(axes, notes, look)
     label_heights = _draw_terms(axes, terms, scale, columns[1], look) if terms else {}
     if observed:
         start = columns[1] + _terms_width(terms) + 0.05
@@ -209,15 +221,13 @@ def _heading(axes: Axes, scale: _Scale, x: float, text: str, look: Look) -> None
     )  # fmt: skip
 
 
-def _draw_notes(axes: Axes, report: BondReport, terms: Sequence[_Mark], look: Look) -> None:
+def _notes(report: BondReport, terms: Sequence[_Mark]) -> list[str]:
     notes = ["%: on the metal"]
     if report.spread is not None:
         notes.append("grey: \N{PLUS-MINUS SIGN} one standard deviation")
     if not all(mark.strong for mark in terms):
         notes.append("thin: terms of other spin")
-    write(
-        axes, 0.06, 0.22, "; ".join(notes), ha="left", va="center", fontsize=SMALL_POINTS, color=look.muted, gid="note"
-    )
+    return notes
 
 
 def _columns(width: float, widths: Sequence[float]) -> list[float]:

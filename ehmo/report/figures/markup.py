@@ -6,10 +6,11 @@ Only text of a known form is set as a formula; everything else is drawn letter b
 from __future__ import annotations
 
 import re
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any, Final
 
-from ehmo.report.figures.canvas import POINTS_PER_CM, plain
-from ehmo.report.look import FIGURE_FONT
+from ehmo.report.figures.canvas import POINTS_PER_CM, SMALL_POINTS, plain
+from ehmo.report.look import FIGURE_FONT, Look
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -126,3 +127,47 @@ def write(axes: Axes, x: float, y: float, text: str, **style: Any) -> Text:
     """
     ours = isinstance(text, Formula)
     return axes.text(x, y, str(text) if ours else plain(text), parse_math=ours, **style)
+
+
+NOTE_CM: Final = 0.27
+"""Height of a line of notes [cm]."""
+
+
+def note_lines(notes: Sequence[str], room: float) -> list[str]:
+    """Notes in as few lines as hold them, in their order.
+
+    Parameters
+    ----------
+    notes : sequence of str
+    room : float
+        Width of a line [cm].
+
+    Returns
+    -------
+    lines : list of str
+    """
+    lines: list[str] = []
+    for note in notes:
+        longer = f"{lines[-1]}; {note}" if lines else note
+        if lines and width_cm(longer, SMALL_POINTS) <= room:
+            lines[-1] = longer
+        else:
+            lines.append(note)
+    return lines
+
+
+def write_notes(axes: Axes, lines: Sequence[str], look: Look) -> None:
+    """Lines of notes at the lower edge, the first at 0.2 cm and the others below zero.
+
+    Parameters
+    ----------
+    axes : Axes
+        Of the paper, with `NOTE_CM` below zero for each line but the first.
+    lines : sequence of str
+    look : Look
+    """
+    for k, line in enumerate(lines):
+        write(
+            axes, 0.06, 0.2 - NOTE_CM * k, line, ha="left", va="center", fontsize=SMALL_POINTS, color=look.muted,
+            gid="note",
+        )  # fmt: skip

@@ -18,7 +18,7 @@ from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, dra
 from ehmo.report.figures.energy_axis import EnergyAxis, energy_axis
 from ehmo.report.figures.interaction import default_bond, top_of_interest
 from ehmo.report.figures.levels import LABEL_CM
-from ehmo.report.figures.markup import chemical, irrep, joined, part, write
+from ehmo.report.figures.markup import NOTE_CM, chemical, irrep, joined, note_lines, part, write, write_notes
 from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.placement import spread_out
 from ehmo.report.formula import complex_formula
@@ -92,8 +92,13 @@ def overlap_population(
     bars = sorted(sorted(bars, key=lambda bar: -abs(bar.population))[:MOST_LEVELS], key=lambda bar: bar.energy_eV)
     height = float(np.clip(_TOP_CM + _BOTTOM_CM + 1.2 * LABEL_CM * len(bars), _SHORTEST_CM, _TALLEST_CM))
     scale = energy_axis([bar.energy_eV for bar in bars], _BOTTOM_CM + 0.15, height - _TOP_CM)
-    figure = new_figure(width_cm, height, layout=None)
-    axes = paper_axes(figure)
+    notes = ["hollow: empty", "line: sum over the electrons"]
+    if len(found.bonds) > 1:
+        notes.append(f"one of {len(found.bonds)} bonds")
+    notes = note_lines(notes, width_cm - 0.12)
+    below = NOTE_CM * (len(notes) - 1)
+    figure = new_figure(width_cm, height + below, layout=None)
+    axes = paper_axes(figure, below)
     sums = _running_sum(every)
     labels = [_label(bar) for bar in bars]
     right = width_cm - 0.1 - max(width_of(label, SMALL_POINTS) for label in labels) - 0.35
@@ -117,10 +122,7 @@ def overlap_population(
     name = report.bond_label(report.coordination.bonds[place]).replace("-", "\N{EN DASH}")
     head = joined(chemical(complex_formula(report), report.fragment.charge), name)
     write(axes, 0.06, height - 0.3, head, ha="left", va="center", fontsize=TEXT_POINTS + 1, gid="label head")
-    note = "hollow: empty; line: sum over the electrons"
-    if len(found.bonds) > 1:
-        note += f"; one of {len(found.bonds)} bonds"
-    write(axes, 0.06, 0.2, note, ha="left", va="center", fontsize=SMALL_POINTS, color=look.muted, gid="note")
+    write_notes(axes, notes, look)
     return figure
 
 

@@ -12,7 +12,7 @@ from ehmo.records.arrays import FloatArray
 from ehmo.records.bands import Band
 from ehmo.records.report import BondReport
 from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, axes_at, drawn, new_figure, paper_axes
-from ehmo.report.figures.markup import chemical, irrep, joined, term, write
+from ehmo.report.figures.markup import NOTE_CM, chemical, irrep, joined, note_lines, term, write, write_notes
 from ehmo.report.figures.markup import width_cm as width_of
 from ehmo.report.figures.placement import spread_out
 from ehmo.report.formula import complex_formula
@@ -33,7 +33,7 @@ THOUSAND: Final = 1000.0
 MOST_NAMES: Final = 12
 
 _STRONG = 0.01  # oscillator strength from which a charge-transfer band is named
-_LEFT_CM, _RIGHT_CM, _BOTTOM_CM, _PLOT_CM, _ABOVE_CM = 1.15, 0.2, 1.45, 4.6, 0.85
+_LEFT_CM, _RIGHT_CM, _BOTTOM_CM, _PLOT_CM, _ABOVE_CM = 1.15, 0.2, 1.2, 4.6, 0.85
 _LINE_CM = 0.29
 _AREA = (np.pi / (4 * np.log(2))) ** 0.5  # of a Gaussian of unit height and unit width at half of it
 
@@ -85,10 +85,12 @@ def spectrum_figure(
     named = _named(bands)
     names_cm = max(width_of(_name(band), SMALL_POINTS) for band in named) + 0.25 if named else 0.2
     height = _BOTTOM_CM + _PLOT_CM + _ABOVE_CM + names_cm
-    figure = new_figure(width_cm, height, layout=None)
-    paper = paper_axes(figure)
+    notes = note_lines(_notes(bands, bool(observed), band_width_per_cm), width_cm - 0.12)
+    below = NOTE_CM * (len(notes) - 1)
+    figure = new_figure(width_cm, height + below, layout=None)
+    paper = paper_axes(figure, below)
     plot_cm = width_cm - _LEFT_CM - _RIGHT_CM
-    axes = axes_at(figure, _LEFT_CM, _BOTTOM_CM, plot_cm, _PLOT_CM)
+    axes = axes_at(figure, _LEFT_CM, _BOTTOM_CM + below, plot_cm, _PLOT_CM)
     last = _last(bands, named, observed)
     peaks = _peaks(bands, band_width_per_cm)
     _draw_bands(axes, bands, peaks, last, band_width_per_cm, look)
@@ -98,7 +100,7 @@ def spectrum_figure(
         paper, 0.06, height - 0.3, chemical(complex_formula(report), report.fragment.charge), ha="left", va="center",
         fontsize=TEXT_POINTS + 1, gid="label head",
     )  # fmt: skip
-    _draw_notes(paper, bands, bool(observed), band_width_per_cm, look)
+    write_notes(paper, notes, look)
     return figure
 
 
@@ -216,8 +218,8 @@ def _draw_names(paper: Axes, named: Sequence[Band], last: float, plot_cm: float,
         )  # fmt: skip
 
 
-def _draw_notes(paper: Axes, bands: Sequence[Band], observed: bool, width: float, look: Look) -> None:
-    """What the marks mean, in one or two lines."""
+def _notes(bands: Sequence[Band], observed: bool, width: float) -> list[str]:
+    """What the marks mean."""
     notes = []
     if any((band.oscillator_strength or 0.0) > 0 for band in bands):
         notes.append(f"Gaussians of {width:,.0f} cm\N{SUPERSCRIPT MINUS}\N{SUPERSCRIPT ONE}")
@@ -229,9 +231,4 @@ def _draw_notes(paper: Axes, bands: Sequence[Band], observed: bool, width: float
         notes.append("tick: spin-forbidden")
     if observed:
         notes.append("diamond: observed")
-    lines = ["; ".join(notes[:2]), "; ".join(notes[2:])]
-    for k, line in enumerate(line for line in lines if line):
-        write(
-            paper, 0.06, 0.42 - 0.27 * k, line, ha="left", va="center", fontsize=SMALL_POINTS, color=look.muted,
-            gid="note",
-        )  # fmt: skip
+    return notes

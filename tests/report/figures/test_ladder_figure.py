@@ -40,7 +40,7 @@ def flat(axes, colour, width):
 
 
 @pytest.mark.parametrize(
-    ("name", "width"), [*((name, 8.4) for name in SIMPLE_TO_CROWDED), ("[FeO(OH2)5]2+", 17.4), ("VOCl3", 6.0)]
+    ("name", "width"), [*((name, 8.4) for name in SIMPLE_TO_CROWDED), ("[FeO(OH2)5]2+", 17.4), ("VOCl3", 8.0)]
 )
 def test_no_two_words_overlap(name, width):
     figure = ladder_figure(report(name), width_cm=width)
