@@ -49,7 +49,7 @@ def bond_entries(report: BondReport, channels: Sequence[ShownChannel], pictures:
 
 
 def first_channel(report: BondReport, channels: Sequence[ShownChannel]) -> ShownChannel | None:
-    """Channel chosen when the page opens: the heaviest pi channel of the shortest multiple bond, else the heaviest."""
+    """Channel chosen when the page opens: the heaviest pi channel of the first metal's shortest multiple bond."""
     if not channels:
         return None
     bonds = report.coordination.bonds
@@ -57,7 +57,8 @@ def first_channel(report: BondReport, channels: Sequence[ShownChannel]) -> Shown
         channels,
         key=lambda shown: (
             not bonds[shown.bond].may_be_multiple,
-            # Rounded, so that of equal bonds and channels the first is taken.
+            # Of several metals the first, and rounded, so that of equal bonds and channels the first is taken.
+            bonds[shown.bond].metal,
             round(bonds[shown.bond].length_A, 3),
             shown.bond,
             shown.channel.type != "pi",
@@ -172,6 +173,11 @@ def _bar(symmetry: str, weight: float, deviation: float | None) -> Markup:
 def _carriers(report: BondReport, shown: ShownChannel) -> Markup:
     heading = element("p", f"Levels that carry the {channel_name(report, shown)}", class_="carriers-head")
     rows = [_carrier(carrier) for carrier in shown.carriers]
+    if abs(shown.rest) >= 0.005:
+        share = f"{100 * shown.rest:.0f} %".replace("-", _MINUS)
+        rows.append(
+            element("li", element("span", "others", class_="level-name"), element("span", share, class_="share"))
+        )
     return markup([heading, element("ul", rows, class_="levels")])
 
 

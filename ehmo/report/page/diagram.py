@@ -21,20 +21,22 @@ _LEVEL = re.compile(
 )
 
 
-def diagram_figure(report: BondReport, shown: Collection[int]) -> Markup:
-    """Interaction diagram of the shortest multiple bond, its colours those of the page.
+def diagram_figure(report: BondReport, shown: Collection[int], bond: int | None = None) -> Markup:
+    """Interaction diagram of one bond, its colours those of the page.
 
     Parameters
     ----------
     report : BondReport
     shown : collection of int
         Orbitals that can be shown: their levels are buttons.
+    bond : int, optional
+        Place of the bond; by default that of `default_bond`.
 
     Returns
     -------
     html : Markup
     """
-    bond = default_bond(report)
+    bond = default_bond(report) if bond is None else bond
     svg = drawing(interaction_diagram(report, bond, width_cm=WIDTH_CM), "diagram")
     words = {k: level_in_words(level) for level in bond_interaction(report, bond).sets for k in level.orbitals}
 

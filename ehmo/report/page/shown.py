@@ -25,8 +25,14 @@ LEAST_WEIGHT: Final = 0.10
 LEAST_SHARE: Final = 0.05
 """Part of a channel from which a level is listed as carrying it."""
 
+MOST_CARRIERS: Final = 6
+"""Levels listed for one channel; the others stand as one sum."""
+
 MOST_CHANNELS: Final = 40
 """Channels with pictures; those of further bonds are listed by weight alone."""
+
+MOST_ORBITALS: Final = 60
+"""Orbitals that carry channels with pictures; a bond that would need more is left to its weights."""
 
 LEVELS: Final = (0.03, 0.05, 0.08, 0.12)
 """Amplitudes of the surfaces [bohr^-3/2]."""
@@ -78,6 +84,11 @@ class ShownChannel:
     carriers: tuple[Carrier, ...]
 
     @property
+    def rest(self) -> float:
+        """Share of all levels that are not listed."""
+        return 1.0 - sum(carrier.share for carrier in self.carriers)
+
+    @property
     def key(self) -> str:
         """Name of the channel within a page."""
         return f"channel-{self.bond}-{self.place}"
@@ -104,23 +115,29 @@ def shown_channels(report: BondReport) -> list[ShownChannel]:
     bonds = report.coordination.bonds
     ranked = sorted(report.distinct_bonds(), key=lambda k: (not bonds[k].may_be_multiple, bonds[k].length_A))
     found: list[ShownChannel] = []
+    orbitals_so_far: set[int] = set()
     for bond in ranked:
         listed = [channel for channel in report.orders[bond].channels if channel.weight >= LEAST_WEIGHT]
         if len(found) + len(listed) > MOST_CHANNELS:
             break
         sets = bond_interaction(report, bond).sets
         orbitals = channel_orbitals(bonds[bond], listed, report.basis, root, report.state)
-        found += [
+        added = [
             ShownChannel(bond, place, channel, own, _carriers(own, sets))
             for place, (channel, own) in enumerate(zip(listed, orbitals, strict=True))
         ]
+        needed = orbitals_so_far | {k for shown in added for one in shown.carriers for k in one.level.orbitals}
+        if found and len(needed) > MOST_ORBITALS:
+            continue
+        found, orbitals_so_far = found + added, needed
     return sorted(found, key=lambda shown: (shown.bond, shown.place))
 
 
 def _carriers(orbitals: ChannelOrbitals, sets: Sequence[OrbitalSet]) -> tuple[Carrier, ...]:
     # Of degenerate orbitals only the sum of the shares has a meaning.
     shares = [Carrier(level, float(orbitals.shares[list(level.orbitals)].sum())) for level in sets]
-    carriers = sorted((one for one in shares if abs(one.share) >= LEAST_SHARE), key=lambda one: -one.share)
+    strongest = sorted((one for one in shares if abs(one.share) >= LEAST_SHARE), key=lambda one: -abs(one.share))
+    carriers = sorted(strongest[:MOST_CARRIERS], key=lambda one: -one.share)
     if orbitals.couplings.min() < 0:
         opposed = next(level for level in sets if orbitals.antibonding in level.orbitals)
         if all(one.level is not opposed for one in carriers):

@@ -10,7 +10,7 @@ from ehmo.records.report import BondReport
 from ehmo.records.scan import Scan
 from ehmo.records.wording import electrons_in_words
 from ehmo.report.method import MethodParagraph, method_paragraph
-from ehmo.report.page.bonds import bond_entries
+from ehmo.report.page.bonds import bond_entries, first_channel
 from ehmo.report.page.diagram import diagram_figure
 from ehmo.report.page.downloads import cube_orbitals, file_links, packed_cubes
 from ehmo.report.page.formulas import formula_markup, formula_plain
@@ -69,6 +69,8 @@ def bond_page(
     view = page_view(report, table, channels, orbitals)
     method = method_paragraph(report, table)
     cubes = packed_cubes(report, table, cube_orbitals(report, channels))
+    first = first_channel(report, channels)
+    diagram = diagram_figure(report, orbitals, None if first is None else first.bond)
     bench = element(
         "div",
         element("div", bond_entries(report, channels, view.pictures), class_="entries"),
@@ -81,7 +83,7 @@ def bond_page(
     sections: list[Named] = [
         ("words", "In words", words_section(report)),
         ("bonds", "Bonds", bonds),
-        ("diagram", "Interaction diagram", section("diagram", "Interaction diagram", diagram_figure(report, orbitals))),
+        ("diagram", "Interaction diagram", section("diagram", "Interaction diagram", diagram)),
         ("orbitals", "Orbitals", orbitals_section(report, orbitals, view.pictures)),
         ("charges", "Charges", charges_section(report)),
         ("ladder", "Ladder", ladder_section(report)),
