@@ -113,7 +113,7 @@ def shown_channels(report: BondReport) -> list[ShownChannel]:
     """
     root = half_overlap(report.overlap)
     bonds = report.coordination.bonds
-    ranked = sorted(report.distinct_bonds(), key=lambda k: (not bonds[k].may_be_multiple, bonds[k].length_A))
+    ranked = sorted(report.distinct_bonds(), key=lambda k: (not bonds[k].may_be_multiple, k))  # by metal, then length
     found: list[ShownChannel] = []
     orbitals_so_far: set[int] = set()
     for bond in ranked:
