@@ -9,9 +9,14 @@ import numpy as np
 import pytest
 
 from ehmo import bond_report
+from ehmo.calculate.crystal import CrystalOptions
+from ehmo.calculate.crystal_report import crystal_report
 from ehmo.orbitals.parameters import load_parameters
+from ehmo.report.page.crystal import crystal_page
 from ehmo.report.page.shown import shown_channels
 from ehmo.report.page.whole import bond_page
+from ehmo.structure import crystal_contents
+from tests.crystal.test_report import RUTILE
 from tests.geometries import SPECIES
 from tests.report.page.browser import PATIENCE_MS, launcher
 from tests.report.page.test_markup import HOSTILE
@@ -229,3 +234,17 @@ def test_nothing_is_wider_than_the_window(browser, address, width):
     watched = Watched(browser, address)
     watched.tab.set_viewport_size({"width": width, "height": 800})
     assert watched.tab.evaluate("() => document.documentElement.scrollWidth") <= width
+
+
+def test_page_of_a_crystal_is_silent_and_gives_its_method(browser, tmp_path):
+    path = tmp_path / "rutile.cif"
+    path.write_text(RUTILE, encoding="utf-8")
+    report = crystal_report(crystal_contents(path), TABLE, crystal=CrystalOptions(mesh=(2, 2, 2)))
+    page = tmp_path / "rutile.html"
+    page.write_text(crystal_page(report, TABLE), encoding="utf-8")
+    watched = Watched(browser, page.as_uri())
+    watched.tab.locator("#copy-method").click()
+    watched.tab.wait_for_selector("#copied:not(:empty)")
+    assert watched.tab.locator("#bands svg").is_visible()
+    assert watched.said == []
+    assert watched.asked == [page.as_uri()]
