@@ -197,7 +197,8 @@ def slurm_engine(profile: SlurmProfile, *, time_limit_s: float | None = None) ->
             security=certificate.security,
             protocol="tls://",
             shared_temp_directory=words["local_directory"],
-            scheduler_options={"dashboard": False},
+            # Even without its pages the scheduler answers by HTTP: for this machine alone, on a port that is free.
+            scheduler_options={"dashboard": False, "dashboard_address": "127.0.0.1:0"},
             **words,
         )
         cluster.adapt(minimum_jobs=profile.least_jobs, maximum_jobs=profile.jobs)

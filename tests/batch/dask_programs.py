@@ -32,7 +32,17 @@ class DaskPrograms:
         self._file = folder / "scheduler.json"
         self._environment = {"PYTHONPATH": str(ROOT), **(environment or {})}
         self.workers: list[subprocess.Popen[bytes]] = []
-        words = ["--host", "127.0.0.1", "--port", "0", "--no-dashboard", "--scheduler-file", str(self._file)]
+        words = [
+            "--host",
+            "127.0.0.1",
+            "--port",
+            "0",
+            "--no-dashboard",
+            "--dashboard-address",
+            "127.0.0.1:0",
+            "--scheduler-file",
+            str(self._file),
+        ]
         self.scheduler = self._started("dask_scheduler", [*words, *(["--protocol", "tls"] if tls else [])])
         self.address = self._address()
 

@@ -21,6 +21,8 @@ from tests.batch.test_faults import SETTINGS, assert_right, rows
 
 pytest.importorskip("dask_jobqueue", reason="dask-jobqueue is not installed: pip install 'ehmo[cluster]'")
 
+psutil = pytest.importorskip("psutil", reason="psutil, which dask brings, is not installed")
+
 ROOT = Path(__file__).parents[2]
 
 PROFILE = """
@@ -158,6 +160,8 @@ def test_a_batch_on_slurm_with_a_job_killed_on_its_way(tmp_path, slurm, monkeypa
 
     engine = slurm_engine(loopback_profile(tmp_path), time_limit_s=120.0)
     with closing(engine), open_store(location, create=True) as store:
+        own = psutil.Process().net_connections("inet")
+        assert {one.laddr.ip for one in own if one.status == psutil.CONN_LISTEN} == {"127.0.0.1"}
         result = run_batch(work_items([str(path)]), store, engine, SETTINGS, on_progress=kill)
     assert killed
     assert (result.done, result.failed) == (120, 0)
