@@ -23,6 +23,7 @@ README = (ROOT / "README.md").read_text(encoding="utf-8")
 COMMANDS = [line.split("  #")[0] for line in README.splitlines() if line.startswith("ehmo ")]
 
 
+@pytest.mark.usefixtures("calibrated")
 def test_python_examples_give_what_they_show():
     blocks = re.findall(r"```python\n(.*?)```", README, re.DOTALL)
     example = doctest.DocTestParser().get_doctest("\n".join(blocks), {}, "README.md", "README.md", 0)

@@ -24,8 +24,8 @@ BUILT = (
     *("[VO(OH2)5]2+", "[FeO(OH2)5]2+", "VOCl3", "CrO2Cl2", "CrO3Cl -", "CrOF4", "ReO3F", "CH3ReO3", "OsO3N -"),
     *("[VOCl4]2-", "[MoOCl4]-", "[TcOCl4]-", "[ReOCl4]-", "[MoOCl5]2-", "[WOCl5]2-", "MoOCl4", "WOCl4", "OsOCl4"),
     *("[CrNCl4]2-", "[MoNCl4]-", "[RuNCl4]-"),
-    *("[V(OH2)6]2+", "[V(OH2)6]3+", "[Mn(OH2)6]2+", "[Fe(OH2)6]2+", "[Fe(OH2)6]3+", "[CrF6]3-"),
-    *("[FeCl(OH2)5]2+",),
+    *("[V(OH2)6]2+", "[V(OH2)6]3+", "[Mn(OH2)6]2+", "[Fe(OH2)6]2+", "[Fe(OH2)6]3+", "[MnO(NH2)4]-"),
+    *("[FeO(NH3)4(NCCH3)]2+", "trans-[RuO2(NH3)4]2+", "[RuO(NH3)5]2+"),
 )
 HEXACHLORO = (("[CrCl6]3-", "Cr", 2.335, -3, 3), ("[MnCl6]4-", "Mn", 2.54, -4, 5))
 """Regular octahedra with lengths typical of their salts (memory): name, metal, length, charge, unpaired electrons."""

@@ -40,10 +40,38 @@ def assumptions(
         f"unpaired electrons {electrons.unpaired_electrons}: {electrons.unpaired_reason}",
         *_ligand_charges(fragment, coordination),
     ]
+    said += calibrated_range(fragment, coordination, table)
     if table.inherited:
         keys = ", ".join(table.inherited)
         said.append(f"the table {table.name} does not state {keys}: taken from the standard set")
     return tuple(said)
+
+
+def calibrated_range(fragment: Fragment, coordination: Coordination, table: ParameterTable) -> tuple[str, ...]:
+    """For a set with two-body terms, which bonds lie in the range of lengths that it was fitted to; else nothing."""
+    if not table.repulsion:
+        return ()
+    inside, outside, missing = [], [], []
+    for bond in coordination.bonds:
+        ends = fragment.symbols[bond.metal], fragment.symbols[bond.donor]
+        label = f"{fragment.labels[bond.metal]}-{fragment.labels[bond.donor]}"
+        term = table.pair_repulsion(*ends)
+        if term is None:
+            missing.append("-".join(ends))
+        elif term.covers(bond.length_A):
+            inside.append(label)
+        else:
+            outside.append(f"{label} ({term.label} {term.lowest_A:g} to {term.highest_A:g} Å)")
+    parts = [
+        f"{words} {', '.join(dict.fromkeys(names))}"
+        for words, names in (
+            ("within its calibrated range of lengths", inside),
+            ("outside it", outside),
+            ("no lengths of", missing),
+        )
+        if names
+    ]
+    return (f"set {table.name}: {'; '.join(parts)}",) if parts else ()
 
 
 def _ligand_charges(fragment: Fragment, coordination: Coordination) -> tuple[str, ...]:

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from basis_params import ModelSettings, ParameterTable
 from ehmo.analysis.reactivity import donor_reactivity
 from ehmo.calculate.health import health_of, health_warnings
@@ -12,7 +14,7 @@ from ehmo.calculate.sites import metal_sites, molecule_symmetry, site_formal_ord
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.calculate.spin import settled_spin
 from ehmo.errors import EhmoError, InputError
-from ehmo.orbitals.parameters import load_parameters
+from ehmo.orbitals.parameters import AUTOMATIC, parameters_for, spin_parameters
 from ehmo.records.coordination import Coordination, ElectronAssignment
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
@@ -22,7 +24,7 @@ from ehmo.structure import assign_electrons, perceive
 
 
 def bond_report(
-    fragment: Fragment, params: str | ParameterTable = "standard", options: Options | None = None
+    fragment: Fragment, params: str | ParameterTable = AUTOMATIC, options: Options | None = None
 ) -> BondReport:
     """Bond report of a fragment.
 
@@ -31,7 +33,8 @@ def bond_report(
     fragment : Fragment
         Atoms; charge and unpaired electrons if known.
     params : str or ParameterTable
-        Name of a shipped set, path of a table, or a loaded table.
+        Name of a shipped set, path of a table, or a loaded table; "auto" takes the calibrated set where it has every
+        element, else `standard`.
     options : Options, optional
         Choices that override the fragment and the set.
 
@@ -46,7 +49,7 @@ def bond_report(
         if the charges do not converge; the message names the mend.
     """
     options = options or Options()
-    table = params if isinstance(params, ParameterTable) else load_parameters(params)
+    table = parameters_for(params, fragment.symbols)
     settings = effective_settings(table.settings, options)
     try:
         return _report(fragment, table, settings, options)
@@ -65,14 +68,19 @@ def _report(fragment: Fragment, table: ParameterTable, settings: ModelSettings, 
         fragment, coordination, options.charge, options.unpaired_electrons, options.oxidation_state
     )
     fragment = fragment.with_electrons(electrons.charge, electrons.unpaired_electrons)
-    bonding = calculate_bonding(fragment, coordination, table, settings, options)
-    if electrons.spin_candidates:
-        settled = settled_spin(fragment, coordination, electrons, bonding)
-        if settled.unpaired_electrons != electrons.unpaired_electrons:
-            fragment = fragment.with_electrons(settled.charge, settled.unpaired_electrons)
-            bonding = calculate_bonding(fragment, coordination, table, settings, options)
-        electrons = settled
-    return known_report(fragment, coordination, electrons, table, settings, options, bonding)
+    if not electrons.spin_candidates:
+        return known_report(fragment, coordination, electrons, table, settings, options)
+    first = spin_parameters(table)
+    constants = settings if first is table else effective_settings(first.settings, options)
+    bonding: Bonding | None = calculate_bonding(fragment, coordination, first, constants, options)
+    assert bonding is not None
+    settled = settled_spin(fragment, coordination, electrons, bonding)
+    if first is not table:
+        reason = f"{settled.unpaired_reason} (ladder of the set {first.name})"
+        settled = replace(settled, unpaired_reason=reason)
+    if first is not table or settled.unpaired_electrons != electrons.unpaired_electrons:
+        fragment, bonding = fragment.with_electrons(settled.charge, settled.unpaired_electrons), None
+    return known_report(fragment, coordination, settled, table, settings, options, bonding)
 
 
 def known_report(

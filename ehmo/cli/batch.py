@@ -117,7 +117,7 @@ def run(chosen: argparse.Namespace) -> str:
 
 def _settings(chosen: argparse.Namespace) -> BatchSettings:
     from ehmo.batch.items import BatchSettings, with_parameters
-    from ehmo.cli.extended import mesh_counts
+    from ehmo.cli.extended import mesh_counts, one_set
 
     return with_parameters(
         BatchSettings(
@@ -129,7 +129,7 @@ def _settings(chosen: argparse.Namespace) -> BatchSettings:
             max_atoms=chosen.max_atoms,
             max_bytes=chosen.max_bytes,
         ),
-        chosen.params,
+        one_set(chosen),
     )
 
 

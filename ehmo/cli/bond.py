@@ -15,6 +15,7 @@ from ehmo.cli.structures import add_structure_options, chosen_fragments, extende
 from ehmo.errors import EhmoError, InputError
 
 if TYPE_CHECKING:
+    from basis_params import ParameterTable
     from ehmo.records.fragment import Fragment
     from ehmo.records.options import Options
     from ehmo.records.report import BondReport
@@ -65,7 +66,12 @@ def add_calculation_options(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--oxidation-state", type=int, metavar="N", help="oxidation state of the one metal (default: by counting)"
     )
-    parser.add_argument("--params", default="standard", metavar="NAME|FILE", help="parameter set (default: standard)")
+    parser.add_argument(
+        "--params",
+        default="auto",
+        metavar="NAME|FILE",
+        help="parameter set (default: auto, the calibrated oxo for molecules of its elements, else standard)",
+    )
     parser.add_argument(
         "--charges",
         choices=("fixed", "self-consistent"),
@@ -138,7 +144,7 @@ def report_on(
 ) -> str:
     """Text for the terminal; the JSON document goes to its file, or replaces the text."""
     from ehmo.calculate import bond_report
-    from ehmo.orbitals.parameters import load_parameters
+    from ehmo.orbitals.parameters import parameters_for
 
     if chosen.json == "":
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
@@ -150,17 +156,20 @@ def report_on(
     if page:
         check_page(chosen, len(fragments), "choose one with --pick (--list shows them)")
         check_view()
-    options, table = options or calculation_options(chosen), load_parameters(chosen.params)
+    options = options or calculation_options(chosen)
     make: Callable[..., BondReport] = bond_report
     if chosen.spread is not None:
         from ehmo.studies.spread import spread_report
 
         make = partial(spread_report, draws=chosen.spread)
     reports: list[BondReport] = []
+    tables: list[ParameterTable] = []
     refused: dict[str, EhmoError] = {}
     for fragment in fragments:
+        table = parameters_for(chosen.params, fragment.symbols)
         try:
             reports.append(make(fragment, table, options))
+            tables.append(table)
         except EhmoError as error:
             # One molecule of a crystal, such as a cation without its hydrogens, must not hide the others.
             if fragment.crystal is None or len(fragments) == 1:
@@ -169,7 +178,7 @@ def report_on(
     if not reports:
         raise next(iter(refused.values()))
     if page:
-        write_page(chosen, reports[0], table, scan=scan)
+        write_page(chosen, reports[0], tables[0], scan=scan)
     if chosen.json is not None:
         from ehmo.report.document import json_text
 
@@ -177,7 +186,7 @@ def report_on(
         if chosen.json == "-":
             return document
         write_whole(chosen.json, document)
-    for_paper = paper_text(reports, table, chosen)
+    for_paper = paper_text(reports, tables, chosen)
     if for_paper is not None and not refused:
         return for_paper
     from ehmo.report.text import bond_text

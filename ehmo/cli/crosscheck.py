@@ -52,26 +52,27 @@ def add_command(commands: Any) -> None:
 def run(chosen: argparse.Namespace) -> str:
     """Comparison of each structure in the file."""
     from ehmo.calculate import bond_report
-    from ehmo.orbitals.parameters import load_parameters
+    from ehmo.orbitals.parameters import parameters_for
     from ehmo.structure import read_frames
     from ehmo.studies.crosscheck import crosscheck
 
     if chosen.json == "":
         raise InputError("--json needs a path", mend="give a file name, or - for the standard output")
-    options, table, cache = bond.calculation_options(chosen), load_parameters(chosen.params), _cache(chosen.cache)
+    options, cache = bond.calculation_options(chosen), _cache(chosen.cache)
     fragments = read_frames(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
     if chosen.page is not None:
         check_page(chosen, len(fragments), "give a file with one")
         check_view()
     found = []
     for fragment in fragments:
-        report = bond_report(fragment, table, options)
+        report = bond_report(fragment, chosen.params, options)
         try:
             found.append(crosscheck(report, chosen.theory, cache=cache, timeout_s=chosen.timeout, progress=_tell))
         except EhmoError as error:
             error.place = error.place or fragment.source
             raise
     if chosen.page is not None:
+        table = parameters_for(chosen.params, fragments[0].symbols)
         write_page(chosen, found[0].report, table, crosscheck=found[0])
     return _shown(found, chosen.json)
 

@@ -61,6 +61,11 @@ def clusters(crystals: Sequence[CrystalContents], chosen: argparse.Namespace) ->
     return [fragment for contents in crystals for fragment in metal_clusters(contents, chosen.cluster)]
 
 
+def one_set(chosen: argparse.Namespace) -> str:
+    """Set for crystals and batches, where one serves all: the one that was named, else `standard`."""
+    return "standard" if chosen.params == "auto" else str(chosen.params)
+
+
 def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namespace, options: Options) -> str:
     """Text for the terminal on each crystal; the JSON document goes to its file, or replaces the text."""
     from ehmo.calculate.crystal_report import crystal_report
@@ -71,7 +76,7 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
 
     if chosen.page is not None:
         check_page(chosen, len(crystals), "choose one with --pick (--list shows them)")
-    table, crystal = load_parameters(chosen.params), crystal_options(chosen)
+    table, crystal = load_parameters(one_set(chosen)), crystal_options(chosen)
     reports = [crystal_report(contents, table, options, crystal) for contents in crystals]
     if chosen.page is not None:
         write_crystal_page(chosen, reports[0], table)
@@ -82,7 +87,7 @@ def extended_report(crystals: Sequence[CrystalContents], chosen: argparse.Namesp
         if chosen.json == "-":
             return document
         write_whole(chosen.json, document)
-    for_paper = paper_text(reports, table, chosen)
+    for_paper = paper_text(reports, [table] * len(reports), chosen)
     if for_paper is not None:
         return for_paper
     from ehmo.report.bands_text import crystal_text

@@ -94,7 +94,7 @@ def _molecule(chosen: argparse.Namespace) -> Drawn:
 
     from ehmo.calculate import bond_report
     from ehmo.cli.ladder import observed_bands
-    from ehmo.orbitals.parameters import load_parameters
+    from ehmo.orbitals.parameters import parameters_for
 
     bands = observed_bands(chosen.bands)
     options = replace(
@@ -103,7 +103,7 @@ def _molecule(chosen: argparse.Namespace) -> Drawn:
         observed_terms=tuple(term for term, _ in bands),
     )
     fragment = _only(chosen_fragments(chosen), chosen)
-    table = load_parameters(chosen.params)
+    table = parameters_for(chosen.params, fragment.symbols)
     if chosen.spread is None:
         report = bond_report(fragment, table, options)
     else:
@@ -124,7 +124,7 @@ def _molecule(chosen: argparse.Namespace) -> Drawn:
 def _crystal(chosen: argparse.Namespace) -> Drawn:
     """Report of the one crystal that was chosen."""
     from ehmo.calculate.crystal_report import crystal_report
-    from ehmo.cli.extended import crystal_options
+    from ehmo.cli.extended import crystal_options, one_set
     from ehmo.orbitals.parameters import load_parameters
 
     found = extended_crystals(chosen)
@@ -134,7 +134,7 @@ def _crystal(chosen: argparse.Namespace) -> Drawn:
         )
     contents = _only(found, chosen)
     options = bond.calculation_options(chosen)
-    report = crystal_report(contents, load_parameters(chosen.params), options, crystal_options(chosen))
+    report = crystal_report(contents, load_parameters(one_set(chosen)), options, crystal_options(chosen))
     return report, {} if chosen.window is None else {"window_eV": _window(chosen.window)}
 
 

@@ -44,9 +44,9 @@ def check_paper_options(chosen: argparse.Namespace) -> None:
 
 
 def paper_text(
-    reports: Sequence[BondReport | CrystalReport], table: ParameterTable, chosen: argparse.Namespace
+    reports: Sequence[BondReport | CrystalReport], tables: Sequence[ParameterTable], chosen: argparse.Namespace
 ) -> str | None:
-    """Text that was asked for in place of the report; None if none was."""
+    """Text that was asked for in place of reports, each with its parameter set; None if none was."""
     if getattr(chosen, "table", None) is not None:
         from ehmo.report.bond_table import bond_table
 
@@ -59,7 +59,7 @@ def paper_text(
 
     found = [
         crystal_paragraph(report, table) if isinstance(report, CrystalReport) else method_paragraph(report, table)
-        for report in reports
+        for report, table in zip(reports, tables, strict=True)
     ]
     if chosen.cite == "bibtex":
         return bibtex(key for paragraph in found for key in paragraph.keys)

@@ -47,7 +47,7 @@ def add_command(commands: Any) -> None:
 def run(chosen: argparse.Namespace) -> str:
     """Text of the scan; the JSON file grows point by point, so that a run that was stopped can go on."""
     from ehmo.calculate import bond_report
-    from ehmo.orbitals.parameters import load_parameters
+    from ehmo.orbitals.parameters import parameters_for
     from ehmo.report.scan_document import scan_csv, scan_text_json
     from ehmo.report.scan_text import progress_line, scan_text
     from ehmo.structure import assign_electrons, perceive, read
@@ -56,8 +56,9 @@ def run(chosen: argparse.Namespace) -> str:
     for name in ("json", "csv"):
         if getattr(chosen, name) == "":
             raise InputError(f"--{name} needs a path", mend="give a file name")
-    options, table = bond.calculation_options(chosen), load_parameters(chosen.params)
+    options = bond.calculation_options(chosen)
     fragment = read(chosen.file, max_atoms=chosen.max_atoms, max_bytes=chosen.max_bytes)
+    table = parameters_for(chosen.params, fragment.symbols)
     coordination = perceive(fragment)
     electrons = assign_electrons(
         fragment, coordination, options.charge, options.unpaired_electrons, options.oxidation_state

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 from basis_params import ParameterTable
 from ehmo.calculate import bond_report, effective_settings
 from ehmo.errors import InputError
-from ehmo.orbitals.parameters import load_parameters
+from ehmo.orbitals.parameters import AUTOMATIC, parameters_for
 from ehmo.records.arrays import FloatArray
 from ehmo.records.fragment import Fragment
 from ehmo.records.options import Options
@@ -32,7 +32,7 @@ BoolArray = NDArray[np.bool_]
 
 def spread_report(
     fragment: Fragment,
-    params: str | ParameterTable = "standard",
+    params: str | ParameterTable = AUTOMATIC,
     options: Options | None = None,
     *,
     draws: int = DRAWS,
@@ -60,7 +60,7 @@ def spread_report(
         As `bond_report`; or if there are too few or too many draws, or none gives a result.
     """
     options = options or Options()
-    table = params if isinstance(params, ParameterTable) else load_parameters(params)
+    table = parameters_for(params, fragment.symbols)
     report = bond_report(fragment, table, options)
     spread = parameter_spread(report, table, options, draws=draws, seed=seed)
     lost = spread.draws - spread.used

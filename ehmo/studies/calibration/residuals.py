@@ -16,6 +16,9 @@ from ehmo.studies.calibration.training import TrainingStructure
 STEPS = {"h_ii": 0.02, "zeta": 0.003, "constant": 0.005}
 """Step of a derivative by each kind of parameter."""
 
+JUMP = 0.3
+"""Change by one step beyond which the step to the other side is looked at too [standard deviations]."""
+
 Progress = Callable[[str], None]
 
 
@@ -96,9 +99,15 @@ class Residuals:
                 structure = self.structures[name]
                 if parameter.elements and not parameter.elements & structure.elements:
                     continue
-                there = structure.values(table, self._of(places))
-                slope = (there - here[places]) / step / self._sds[places]
-                found[places, column] = np.nan_to_num(slope, nan=0.0)
+                change = (structure.values(table, self._of(places)) - here[places]) / self._sds[places]
+                if np.abs(np.nan_to_num(change)).max() > JUMP:
+                    # Another band or filling: the other side may have none.
+                    back = x.copy()
+                    back[column] -= step
+                    other = here[places] - structure.values(self.table(back), self._of(places))
+                    other = np.nan_to_num(other / self._sds[places], nan=np.inf)
+                    change = np.where(np.abs(other) < np.abs(np.nan_to_num(change)), other, change)
+                found[places, column] = np.nan_to_num(change / step, nan=0.0)
             found[n + column, column] = 1 / self._prior_sds[column]
         return found
 

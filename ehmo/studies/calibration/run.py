@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 
 import numpy as np
 
 import basis_params
-from basis_params import ParameterTable
+from basis_params import PairRepulsion, ParameterTable
 from ehmo.errors import InputError
 from ehmo.orbitals.parameters import load_parameters
 from ehmo.records.arrays import FloatArray
@@ -17,6 +18,12 @@ from ehmo.studies.calibration.progress import Progress
 from ehmo.studies.calibration.residuals import Residuals
 from ehmo.studies.calibration.tables import fitted_table, written_table
 from ehmo.studies.calibration.training import TrainingStructure, training_structures
+from ehmo.studies.calibration.two_body import (
+    fit_pairs,
+    mechanical_observables,
+    mechanical_value,
+    stretched_structures,
+)
 
 Say = Callable[[str], None]
 Keep = Callable[[Progress], None]
@@ -65,8 +72,10 @@ def calibrate(
     if spec.parameters and not electronic:
         raise InputError("no observable tells the parameters", place=spec.place, mend="add orders, charges or bands")
     residuals = Residuals(base, spec.parameters, structures, electronic, spec.unsettled)
-    fit, slopes = _fitted(residuals, progress, say, keep)
-    left_out = _left_out(residuals, fit, slopes, progress, say, keep) if leave_out else {}
+    fit, left_out = ElectronicFit(np.zeros(0), np.zeros((0, 0)), 0.0, 0), {}
+    if spec.parameters:
+        fit, slopes = _fitted(residuals, progress, say, keep)
+        left_out = _left_out(residuals, fit, slopes, progress, say, keep) if leave_out else {}
     tables = {"base": base, "trained": fitted_table(base, spec.parameters, fit.values)}
     rows = _compared(
         electronic,
@@ -74,8 +83,44 @@ def calibrate(
         tables,
         {species: fitted_table(base, spec.parameters, values) for species, values in left_out.items()},
     )
-    table = written_table(base, spec, fit)
-    return Calibration(spec, fit, rows, basis_params.format_table(table), _warnings(spec, fit))
+    terms: dict[str, PairRepulsion] = {}
+    if spec.pairs:
+        say("forces and force constants of the two-body terms")
+        mechanical, terms = _mechanical(spec, structures, tables, leave_out=leave_out)
+        rows += mechanical
+    table = written_table(base, spec, fit, terms.values())
+    return Calibration(spec, fit, rows, basis_params.format_table(table), _warnings(spec, fit, rows))
+
+
+def _mechanical(
+    spec: CalibrationSpec,
+    structures: dict[str, TrainingStructure],
+    tables: dict[str, ParameterTable],
+    *,
+    leave_out: bool,
+) -> tuple[tuple[Fitted, ...], dict[str, PairRepulsion]]:
+    """Two-body terms, and lengths and wavenumbers beside what they give; electronic parameters stay as they are."""
+    trained = tables["trained"]
+    stretched = stretched_structures(spec, structures, trained)
+    observables = mechanical_observables(spec, stretched)
+    terms = fit_pairs(spec, stretched, observables)
+    rows = []
+    for species in dict.fromkeys(o.species for o in observables):
+        without: dict[str, PairRepulsion] = {}
+        if leave_out:
+            without = fit_pairs(spec, stretched, [o for o in observables if o.species != species])
+        for o in (o for o in observables if o.species == species):
+            one = stretched[o.structure]
+            needed = {pair.label for place, pair in enumerate(spec.pairs) if place in one.pair_of}
+            rows.append(
+                Fitted(
+                    o,
+                    mechanical_value(o, one, tables["base"]),
+                    mechanical_value(o, one, replace(trained, repulsion=terms)),
+                    mechanical_value(o, one, replace(trained, repulsion=without)) if needed <= without.keys() else None,
+                )
+            )
+    return tuple(rows), terms
 
 
 def _fitted(residuals: Residuals, progress: Progress, say: Say, keep: Keep | None) -> tuple[ElectronicFit, FloatArray]:
@@ -138,11 +183,11 @@ def _compared(
     )
 
 
-def _warnings(spec: CalibrationSpec, fit: ElectronicFit) -> tuple[str, ...]:
+def _warnings(spec: CalibrationSpec, fit: ElectronicFit, rows: tuple[Fitted, ...]) -> tuple[str, ...]:
     found = []
-    idle = sum(o.quantity in MECHANICAL for o in spec.observables)
-    if idle and not spec.pairs:
-        found.append(f"{idle} lengths and stretching wavenumbers are not used: no two-body term is fitted")
+    idle = len(spec.observables) - len(rows)
+    if idle:
+        found.append(f"{idle} lengths and stretching wavenumbers are not used: no two-body term of theirs is fitted")
     for parameter, value in zip(spec.parameters, fit.values.tolist(), strict=True):
         room = min(value - parameter.lowest, parameter.highest - value)
         if room < 1e-3 * (parameter.highest - parameter.lowest):

@@ -67,11 +67,11 @@ def read_spec(path: str | Path) -> CalibrationSpec:
     hashed = [text, base.content_sha256, *(_text(path.parent / name) for name in tables)]
     hashed += [_text(Path(name)) for name in structure_files]
     parameters = tuple(p for entry in keys.entries("fit", _FIT) for p in _parameters(entry, base))
-    pairs = tuple(pair for entry in keys.entries("repulsion", _REPULSION) for pair in _pairs(entry))
+    pairs = tuple(pair for entry in keys.entries("repulsion", _REPULSION) for pair in _pairs(entry, base))
     if not parameters and not pairs:
         raise keys.fault("fit", "nothing is to be fitted", "add an entry [[fit]] with a parameter, or [[repulsion]]")
     _distinct([parameter.name for parameter in parameters], keys, "fit")
-    _distinct([pair.label for pair in pairs], keys, "repulsion")
+    _distinct(["-".join(sorted((pair.first, pair.second), reverse=True)) for pair in pairs], keys, "repulsion")
     return CalibrationSpec(
         name=name,
         edition=keys.text("edition", "1"),
@@ -169,11 +169,13 @@ def _shell(entry: Keys, base: ParameterTable, words: str) -> tuple[str, int, int
     raise entry.fault("of", f"the base has no shell {words!r}", "write element and shell, as in V 3d")
 
 
-def _pairs(entry: Keys) -> Iterator[FreePair]:
+def _pairs(entry: Keys, base: ParameterTable) -> Iterator[FreePair]:
     for words in entry.texts("pairs"):
         first, _, second = words.partition("-")
         if not first or not second:
             raise entry.fault("pairs", f"{words!r} is no pair of elements", "write them as in V-O")
+        for symbol in (first, second):
+            element_parameters(base, symbol)
         yield FreePair(first, second, entry.number("decay_per_A", above=0.0), entry.number("decay_sd", 0.0, lowest=0.0))
 
 

@@ -21,6 +21,7 @@ from ehmo.records.options import Options
 from ehmo.records.report import BondReport
 from ehmo.records.symmetry import Symmetry
 from ehmo.structure import assign_electrons, perceive, read_frames
+from ehmo.studies.calibration.modes import kind_and_phase
 
 ALLOWED_STRENGTH = 1e-3
 """Oscillator strength from which a charge-transfer band counts as allowed."""
@@ -164,7 +165,7 @@ def _check(observable: Observable, structure: TrainingStructure, place: str) -> 
         "length": labels | {bond.kind.value for bond in bonds},
         "stretching wavenumber": {bond.kind.value for bond in bonds},
     }
-    of = observable.of.removesuffix(" in phase").removesuffix(" out of phase")
+    of, _ = kind_and_phase(observable.of)
     if observable.quantity in known and of not in known[observable.quantity]:
         raise InputError(
             f"line {observable.line} of the observables: {observable.structure} has no {of!r}",
