@@ -180,10 +180,10 @@ class BondReport:
         """Share of each shell of an atom in a hybrid, such as ``{"3d": 0.93, "4p": 0.07}``."""
         functions = self.basis.functions_of(atom)
         shells = self.basis.shell_of[functions]
-        return {
-            self.basis.shell_label(int(shell)): float((hybrid[shells == shell] ** 2).sum())
-            for shell in dict.fromkeys(shells)
-        }
+        # Functions of a shell stand together.
+        starts = np.flatnonzero(np.diff(shells, prepend=-1))
+        shares: list[float] = np.add.reduceat(hybrid * hybrid, starts).tolist()
+        return dict(zip(map(self.basis.shell_label, shells[starts].tolist()), shares, strict=True))
 
     def site_of(self, metal: int) -> MetalSite:
         """Site of one metal."""
