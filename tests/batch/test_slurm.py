@@ -77,7 +77,7 @@ def test_an_interpreter_with_a_blank_in_its_path_is_quoted(tmp_path):
         ('account = "a b"', "account"),
         ('interface = "lo`x`"', "interface"),
         ('python = "python; rm x"', "python"),
-        ('folder = "/tmp/a b"', "folder"),
+        ('folder = "/scratch/a b"', "folder"),
         ('options = ["--wrap=a\\nreboot"]', "options"),
         ('options = ["reboot"]', "options"),
         ('options = ["--a b"]', "options"),
