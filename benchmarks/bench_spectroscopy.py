@@ -12,8 +12,8 @@ from benchmarks.bench_calculation import TABLE, calculation
 from benchmarks.pairs import seconds, timed_in_turn
 from benchmarks.systems import VANADYL, vanadyl_in_water
 from ehmo.analysis.symmetry import shape_measures
-from ehmo.calculate.report import bond_report
 from ehmo.calculate.orbital_labels import sphere_irreps
+from ehmo.calculate.report import bond_report
 from ehmo.calculate.sites import site_formal_orders, site_ladders, sphere_symmetries
 from ehmo.calculate.spectroscopy import spectroscopy
 from ehmo.records.options import Options
