@@ -197,6 +197,7 @@ def charge_transfer_bands(
     first, second = first[order], second[order]
     listed = (strengths[first, second] >= LISTED_STRENGTH) | (np.arange(len(first)) < _LOWEST_LISTED)
     closed_shell = bool(np.allclose(state.occupations[0], state.occupations[1]))
+    given, taken = _set_means(metal_shares[rows], sources), _set_means(metal_shares[columns], targets)
     bands = []
     for source, target in zip(first[listed].tolist(), second[listed].tolist(), strict=True):
         transfer = _Transfer(
@@ -205,7 +206,8 @@ def charge_transfer_bands(
             float(gaps[source, target]),
             float(strengths[source, target]),
             by_axis[:, source, target],
-            metal_shares,
+            given[source],
+            taken[target],
         )
         bands.append(_transfer_band(labels, transfer, closed_shell=closed_shell))
     return tuple(bands)
@@ -220,12 +222,9 @@ class _Transfer:
     gap_eV: float
     strength: float
     by_axis: FloatArray
-    metal_shares: FloatArray
-
-    @property
-    def on_metal(self) -> tuple[float, float]:
-        """Metal share of the set that gives and of the one that takes the electron."""
-        return float(self.metal_shares[self.source].mean()), float(self.metal_shares[self.target].mean())
+    share_before: float
+    share_after: float
+    """Metal share of the set that gives and of the one that takes the electron."""
 
 
 def transfer_direction(before: float, after: float) -> TransferDirection:
@@ -270,6 +269,14 @@ def _set_starts(state: ElectronicState, labels: OrbitalLabels, orbitals: IntArra
     return np.concatenate([[0], 1 + np.flatnonzero(gap | (names[1:] != names[:-1]))])
 
 
+def _set_means(values: FloatArray, starts: IntArray) -> list[float]:
+    """Mean of each set of neighbours."""
+    if not len(starts):
+        return []
+    means: list[float] = (np.add.reduceat(values, starts) / np.diff(starts, append=len(values))).tolist()
+    return means
+
+
 def _members(orbitals: IntArray, starts: IntArray, place: int) -> IntArray:
     stop = starts[place + 1] if place + 1 < len(starts) else len(orbitals)
     return orbitals[starts[place] : stop]
@@ -294,8 +301,8 @@ def _transfer_band(labels: OrbitalLabels, transfer: _Transfer, *, closed_shell: 
         ", ".join(letters),
         transfer.strength,
         (int(source[0]), int(target[0])),
-        transfer_direction(*transfer.on_metal),
-        transfer.on_metal[1] - transfer.on_metal[0],
+        transfer_direction(transfer.share_before, transfer.share_after),
+        transfer.share_after - transfer.share_before,
     )
 
 
