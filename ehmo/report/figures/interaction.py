@@ -96,10 +96,7 @@ def interaction_diagram(
     InputError
         If the report has no such bond.
     """
-    place = default_bond(report) if bond is None else bond
-    if not 0 <= place < len(report.orders):
-        raise InputError(f"there is no bond number {place}", mend=f"give 0 to {len(report.orders) - 1}")
-    found = bond_interaction(report, place)
+    found = bond_interaction(report, chosen_bond(report, bond))
     layout = _laid_out(found, top_of_interest(report), width_cm)
     figure = new_figure(width_cm, layout.height, layout=None)
     axes = paper_axes(figure)
@@ -109,6 +106,14 @@ def interaction_diagram(
     _draw_parts(axes, found, layout, look)
     _draw_words(axes, report, found, layout, look)
     return figure
+
+
+def chosen_bond(report: BondReport, bond: int | None) -> int:
+    """Place of the bond of a figure: the one asked for, else that of `default_bond`; an error if there is none."""
+    place = default_bond(report) if bond is None else bond
+    if not 0 <= place < len(report.orders):
+        raise InputError(f"there is no bond number {place}", mend=f"give 0 to {len(report.orders) - 1}")
+    return place
 
 
 def default_bond(report: BondReport) -> int:

@@ -10,13 +10,12 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from ehmo.analysis.interaction import bond_interaction
-from ehmo.errors import InputError
 from ehmo.records.electronic import NO_ELECTRON
 from ehmo.records.interaction import OrbitalSet
 from ehmo.records.report import BondReport
 from ehmo.report.figures.canvas import COLUMN_CM, SMALL_POINTS, TEXT_POINTS, drawn, new_figure, paper_axes
 from ehmo.report.figures.energy_axis import EnergyAxis, energy_axis
-from ehmo.report.figures.interaction import default_bond, top_of_interest
+from ehmo.report.figures.interaction import chosen_bond, top_of_interest
 from ehmo.report.figures.levels import LABEL_CM
 from ehmo.report.figures.markup import NOTE_CM, chemical, irrep, joined, note_lines, part, write, write_notes
 from ehmo.report.figures.markup import width_cm as width_of
@@ -82,9 +81,7 @@ def overlap_population(
     InputError
         If the report has no such bond.
     """
-    place = default_bond(report) if bond is None else bond
-    if not 0 <= place < len(report.orders):
-        raise InputError(f"there is no bond number {place}", mend=f"give 0 to {len(report.orders) - 1}")
+    place = chosen_bond(report, bond)
     found = bond_interaction(report, place)
     top = top_of_interest(report)
     every = [_bar(level, len(found.bonds)) for level in found.sets]
